@@ -1,0 +1,128 @@
+package boundary
+
+import (
+	"math"
+
+	"nearmargin/setting/sphere"
+)
+
+// Place is a position in both forms that the search needs.
+type Place struct {
+	LonLat sphere.LonLat
+	Vec    sphere.Vec
+}
+
+// PlaceAt returns the place at a position. Longitude may be in any range that
+// [sphere.WrapLon] takes; latitude must be within [-90, 90].
+func PlaceAt(p sphere.LonLat) Place {
+	p.Lon = sphere.WrapLon(p.Lon)
+	return Place{p, sphere.FromLonLat(p)}
+}
+
+// Hit is a boundary found near a place.
+type Hit struct {
+	Boundary *Boundary
+	// DistanceKm is the length of the WGS84 geodesic to Nearest.
+	DistanceKm float64
+	// AzimuthDeg is that geodesic's azimuth at the place, [0, 360); NaN at distance 0.
+	AzimuthDeg float64
+	// Nearest is the point of the boundary that is nearest to the place.
+	Nearest sphere.LonLat
+	// PathAzimuthDeg is the azimuth of the boundary at Nearest in the direction of
+	// its path, [0, 360).
+	PathAzimuthDeg float64
+	// NearestVec is Nearest as a unit vector.
+	NearestVec sphere.Vec
+	// Along is the unit vector along the path at Nearest.
+	Along sphere.Vec
+}
+
+// BoundaryAzimuthDeg returns the azimuth of the boundary as a line without
+// direction, [0, 180).
+func (h *Hit) BoundaryAzimuthDeg() float64 {
+	return math.Mod(h.PathAzimuthDeg, 180)
+}
+
+// nearTie is how much farther than the nearest on the sphere a boundary may be
+// and still be compared on the ellipsoid: the two distances differ by 0.56 % at
+// the most.
+const nearTie = 0.01
+
+// coincideKm is the difference in distance that counts as none: 1 µm.
+const coincideKm = 1e-9
+
+// Locate returns the plate under a place and the boundary nearest to it.
+//
+// Method: the nearest leg on the sphere decides the plate. Every leg within 1 %
+// of its distance that bounds the same plate is then compared by the length of
+// the WGS84 geodesic to its nearest point. Ties go to the line that the line of
+// sight meets more squarely, then to the lower id.
+//
+// Accuracy: the nearest point is that on the sphere; over a geodesic the true
+// minimum is nearer by 16 m at the most in 99 of 100 places.
+func (n *Network) Locate(p Place) (plate string, nearest Hit) {
+	first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
+	side := n.side(p.Vec, first)
+	d := 2 * math.Asin(math.Min(1, math.Sqrt(first.chordSq)/2))
+	var r rivals
+	n.collect(n.all, p.Vec, reachOfRad(d*(1+nearTie)+1e-12), &r)
+
+	best, bestKm, bestAz := first, math.Inf(1), math.NaN()
+	for i := 0; i < r.n; i++ {
+		f := r.list[i]
+		l := &n.legs[f.leg]
+		if f != first && l.left != side && l.right != side {
+			continue
+		}
+		km, az := bestKm, bestAz
+		if math.IsInf(bestKm, 1) || l.foot(p.Vec, f.where) != n.legs[best.leg].foot(p.Vec, best.where) {
+			km, az = sphere.Inverse(p.LonLat, l.foot(p.Vec, f.where).LonLat())
+		}
+		if km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, f, best) {
+			best, bestKm, bestAz = f, km, az
+		}
+	}
+	return n.plates[side], n.hit(p, best, bestKm, bestAz)
+}
+
+// NearestOf returns the boundary of one type that is nearest to a place, within
+// maxKm, and whether there is one. With a role other than [AnyRole] it must have
+// the plate of that code on one side, and in that part.
+func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm float64) (Hit, bool) {
+	f := filter{noPlate, role}
+	if role != AnyRole {
+		if f.plate = n.plateIndex(plate); f.plate == noPlate {
+			return Hit{}, false
+		}
+	}
+	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
+	got, ok := n.nearest(n.byType[t], p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
+	if !ok {
+		return Hit{}, false
+	}
+	l := &n.legs[got.leg]
+	km, az := sphere.Inverse(p.LonLat, l.foot(p.Vec, got.where).LonLat())
+	if km > maxKm {
+		return Hit{}, false
+	}
+	return n.hit(p, got, km, az), true
+}
+
+func (n *Network) hit(p Place, f found, km, az float64) Hit {
+	l := &n.legs[f.leg]
+	q := l.foot(p.Vec, f.where)
+	along := l.arc.Tangent(q)
+	h := Hit{
+		Boundary:       n.boundaries[l.boundary],
+		DistanceKm:     km,
+		AzimuthDeg:     az,
+		Nearest:        q.LonLat(),
+		NearestVec:     q,
+		Along:          along,
+		PathAzimuthDeg: q.Azimuth(along),
+	}
+	if km < 1e-6 { // a millimetre: no direction to speak of
+		h.AzimuthDeg = math.NaN()
+	}
+	return h
+}

@@ -1,0 +1,169 @@
+package boundary
+
+import "nearmargin/setting/sphere"
+
+// Role says which part a plate must play at a boundary that is looked for.
+type Role uint8
+
+// The roles.
+const (
+	AnyRole    Role = iota
+	Bounding        // the plate is on one side of the boundary
+	Overriding      // the other plate goes down
+	Subducting      // the plate goes down
+)
+
+// filter is what a leg must meet to be found.
+type filter struct {
+	plate uint8
+	role  Role
+}
+
+func (f filter) passes(l *leg) bool {
+	if f.role == AnyRole {
+		return true
+	}
+	if l.left != f.plate && l.right != f.plate {
+		return false
+	}
+	switch f.role {
+	case Overriding:
+		return l.sinks != noPlate && l.sinks != f.plate
+	case Subducting:
+		return l.sinks == f.plate
+	}
+	return true
+}
+
+// found is a leg that was found, and where on it the nearest point lies.
+type found struct {
+	leg     int32
+	where   sphere.Where
+	chordSq float64
+}
+
+// nearest returns the leg nearest to p among those that pass, within the reach.
+// Ties go by squareness of the line of sight, then by the boundary's id.
+func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found, bool) {
+	best := found{leg: -1}
+	if len(t.branches) == 0 {
+		return best, false
+	}
+	var stack [64]int32
+	depth := 0
+	at := int32(0)
+	if within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
+		return best, false
+	}
+	for {
+		b := &t.branches[at]
+		if b.right == 0 {
+			for _, i := range t.order[b.from:b.to] {
+				l := &n.legs[i]
+				d, w := l.chordSq(p)
+				if d > within.chordSq || !f.passes(l) {
+					continue
+				}
+				if best.leg >= 0 && d == best.chordSq && !n.squarer(p, found{i, w, d}, best) {
+					continue
+				}
+				best = found{i, w, d}
+				within = reachOf(d)
+			}
+		} else {
+			// the nearer child first, so that the reach shrinks soon
+			left, right := at+1, b.right
+			cl, cr := p.Dot(t.branches[left].centre), p.Dot(t.branches[right].centre)
+			if cr > cl {
+				left, right, cl, cr = right, left, cr, cl
+			}
+			if !within.beyond(&t.branches[right], cr) {
+				stack[depth] = right
+				depth++
+			}
+			if !within.beyond(&t.branches[left], cl) {
+				at = left
+				continue
+			}
+		}
+		for {
+			if depth == 0 {
+				return best, best.leg >= 0
+			}
+			depth--
+			at = stack[depth]
+			if b := &t.branches[at]; !within.beyond(b, p.Dot(b.centre)) {
+				break
+			}
+		}
+	}
+}
+
+// squarer reports whether a wins a tie against b at the same distance from p.
+func (n *Network) squarer(p sphere.Vec, a, b found) bool {
+	la, lb := &n.legs[a.leg], &n.legs[b.leg]
+	sa, sb := la.squareness(p, la.foot(p, a.where)), lb.squareness(p, lb.foot(p, b.where))
+	if sa != sb {
+		return sa > sb
+	}
+	ia, ib := n.boundaries[la.boundary].ID(), n.boundaries[lb.boundary].ID()
+	if ia != ib {
+		return ia < ib
+	}
+	return a.leg < b.leg
+}
+
+// maxRivals bounds how many legs are compared on the ellipsoid.
+const maxRivals = 96
+
+// rivals is a list of legs that lie about as near as the nearest.
+type rivals struct {
+	list [maxRivals]found
+	n    int
+}
+
+// collect gathers every leg of the tree that lies within the reach of p. Where
+// there are more than maxRivals, the nearest of those met are kept.
+func (n *Network) collect(t *tree, p sphere.Vec, within reach, out *rivals) {
+	out.n = 0
+	var stack [64]int32
+	depth := 0
+	if len(t.branches) > 0 {
+		depth = 1
+	}
+	for depth > 0 {
+		depth--
+		at := stack[depth]
+		b := &t.branches[at]
+		if within.beyond(b, p.Dot(b.centre)) {
+			continue
+		}
+		if b.right != 0 {
+			stack[depth], stack[depth+1] = b.right, at+1
+			depth += 2
+			continue
+		}
+		for _, i := range t.order[b.from:b.to] {
+			if d, w := n.legs[i].chordSq(p); d <= within.chordSq {
+				out.add(found{i, w, d})
+			}
+		}
+	}
+}
+
+func (r *rivals) add(f found) {
+	if r.n < maxRivals {
+		r.list[r.n] = f
+		r.n++
+		return
+	}
+	worst := 0
+	for i := range r.list {
+		if r.list[i].chordSq > r.list[worst].chordSq {
+			worst = i
+		}
+	}
+	if f.chordSq < r.list[worst].chordSq {
+		r.list[worst] = f
+	}
+}

@@ -1,0 +1,139 @@
+package boundary
+
+import (
+	"cmp"
+	"math"
+	"slices"
+
+	"nearmargin/setting/sphere"
+)
+
+// tree is a flat bounding-volume tree over legs: every branch holds a spherical
+// cap around what lies below it. Its children follow it in the array, the left
+// one at once, the right one at skip.
+//
+// The bounds are caps rather than boxes in longitude and latitude because a cap
+// has no seam at ±180° and no singular poles, and its lower bound on distance is
+// one dot product.
+type tree struct {
+	branches []branch
+	order    []int32 // leg numbers in the order of the leaves
+}
+
+type branch struct {
+	centre     sphere.Vec
+	cosR, sinR float64 // of the cap's angular radius
+	right      int32   // index of the right child; 0 in a leaf
+	from, to   int32   // of a leaf: its part of order
+}
+
+// leafLegs is the number of legs below which a branch is not split further; 4
+// was the fastest of 2, 4, 8 and 16 in BenchmarkNearest.
+const leafLegs = 4
+
+// newTree builds the tree over the legs whose numbers are given.
+func newTree(legs []leg, which []int32) *tree {
+	t := &tree{order: slices.Clone(which)}
+	if len(which) > 0 {
+		t.build(legs, 0, len(which))
+	}
+	return t
+}
+
+func (t *tree) build(legs []leg, from, to int) {
+	part := t.order[from:to]
+	at := len(t.branches)
+	t.branches = append(t.branches, capOver(legs, part))
+	if len(part) <= leafLegs {
+		t.branches[at].from, t.branches[at].to = int32(from), int32(to)
+		return
+	}
+	axis := widestAxis(legs, part)
+	slices.SortStableFunc(part, func(a, b int32) int {
+		return cmp.Compare(axis(legs[a].arc.Midpoint()), axis(legs[b].arc.Midpoint()))
+	})
+	mid := from + len(part)/2
+	t.build(legs, from, mid)
+	t.branches[at].right = int32(len(t.branches))
+	t.build(legs, mid, to)
+}
+
+// capOver returns a cap that holds the legs: around the mean of their middles,
+// out to the farthest end. An arc shorter than a half turn lies within a cap of
+// less than a quarter turn whenever both its ends do; larger caps take the whole
+// sphere, which is right if not tight.
+func capOver(legs []leg, part []int32) branch {
+	var sum sphere.Vec
+	for _, i := range part {
+		sum = sum.Add(legs[i].arc.A).Add(legs[i].arc.B)
+	}
+	c := sum.Unit()
+	r := 0.0
+	for _, i := range part {
+		r = max(r, sphere.Angle(c, legs[i].arc.A), sphere.Angle(c, legs[i].arc.B))
+	}
+	r += 1e-12
+	if c == (sphere.Vec{}) || r >= math.Pi/2 {
+		return branch{centre: sphere.Vec{X: 1}, cosR: -1, sinR: 0}
+	}
+	return branch{centre: c, cosR: math.Cos(r), sinR: math.Sin(r)}
+}
+
+func widestAxis(legs []leg, part []int32) func(sphere.Vec) float64 {
+	axes := []func(sphere.Vec) float64{
+		func(v sphere.Vec) float64 { return v.X },
+		func(v sphere.Vec) float64 { return v.Y },
+		func(v sphere.Vec) float64 { return v.Z },
+	}
+	best, widest := axes[0], -1.0
+	for _, axis := range axes {
+		lo, hi := math.Inf(1), math.Inf(-1)
+		for _, i := range part {
+			x := axis(legs[i].arc.Midpoint())
+			lo, hi = min(lo, x), max(hi, x)
+		}
+		if hi-lo > widest {
+			best, widest = axis, hi-lo
+		}
+	}
+	return best
+}
+
+// reach is a distance in the forms in which branches are compared with it.
+type reach struct {
+	chordSq    float64
+	cosD, sinD float64
+}
+
+// slack keeps rounding from cutting off a branch that touches the reach.
+const slack = 4e-15
+
+// maxChordSq is the square of the longest chord, the diameter.
+const maxChordSq = 4
+
+func reachOf(chordSq float64) reach {
+	if chordSq >= maxChordSq {
+		return reach{maxChordSq, -1, 0}
+	}
+	return reach{chordSq, 1 - chordSq/2, math.Sqrt(chordSq * (1 - chordSq/4))}
+}
+
+// reachOfRad returns the reach of an angle in radians.
+func reachOfRad(rad float64) reach {
+	if rad >= math.Pi {
+		return reachOf(maxChordSq)
+	}
+	c := 2 * math.Sin(rad/2)
+	return reachOf(c * c)
+}
+
+// beyond reports whether the whole cap, whose centre is at the angle with the
+// given cosine, lies farther away than the reach.
+func (r *reach) beyond(b *branch, cosAngle float64) bool {
+	// The cap is beyond where angle > d + radius. That cannot be where d + radius
+	// is a half turn or more: then sin(d+radius) is not positive.
+	if r.sinD*b.cosR+r.cosD*b.sinR <= 0 {
+		return false
+	}
+	return cosAngle < r.cosD*b.cosR-r.sinD*b.sinR-slack
+}
