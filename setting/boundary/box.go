@@ -36,10 +36,7 @@ func (b Box) parts() []orb.Bound {
 		return []orb.Bound{span(-180, 180)}
 	}
 	w, e := sphere.WrapLon(b.West), sphere.WrapLon(b.East)
-	if b.West == -180 {
-		w = -180
-	}
-	if w > e {
+	if w > e { // also where West is -180: what lies on that meridian is at +180
 		return []orb.Bound{span(w, 180), span(-180, e)}
 	}
 	return []orb.Bound{span(w, e)}
@@ -70,28 +67,23 @@ func (n *Network) Within(b Box) ([]*Boundary, error) {
 // legMeetsBox reports whether a great-circle arc has a point in a box of
 // meridians and parallels.
 //
-// Method: an end lies inside, or the arc crosses one of the two meridians
-// between the parallels, or one of the two parallels between the meridians.
+// Method: an end lies inside, or the arc meets one of the two meridians between
+// the parallels, or one of the two parallels between the meridians. What touches
+// the box meets it, as far as rounding allows.
 func legMeetsBox(l *leg, b orb.Bound) bool {
 	if b.Contains(point(l.arc.A)) || b.Contains(point(l.arc.B)) {
 		return true
 	}
-	// each meridian in two halves: from pole to pole it would be no arc
-	middle := (b.Min[1] + b.Max[1]) / 2
 	for _, lon := range []float64{b.Min[0], b.Max[0]} {
-		for _, lat := range []float64{b.Min[1], b.Max[1]} {
-			side, ok := sphere.NewArc(sphere.FromLonLat(sphere.LonLat{Lon: lon, Lat: lat}), sphere.FromLonLat(sphere.LonLat{Lon: lon, Lat: middle}))
-			if !ok {
-				continue
-			}
-			if _, crosses := l.arc.Cross(&side); crosses {
+		for _, q := range meetMeridian(&l.arc, lon) {
+			if lat := q.LonLat().Lat; lat >= b.Min[1]-touchDeg && lat <= b.Max[1]+touchDeg {
 				return true
 			}
 		}
 	}
 	for _, lat := range []float64{b.Min[1], b.Max[1]} {
-		for _, q := range crossParallel(&l.arc, lat) {
-			if lon := q.LonLat().Lon; lon >= b.Min[0] && lon <= b.Max[0] {
+		for _, q := range meetParallel(&l.arc, lat) {
+			if lon := q.LonLat().Lon; lon >= b.Min[0]-touchDeg && lon <= b.Max[0]+touchDeg {
 				return true
 			}
 		}
@@ -104,9 +96,39 @@ func point(v sphere.Vec) orb.Point {
 	return orb.Point{p.Lon, p.Lat}
 }
 
-// crossParallel returns the points, at most two, in which the arc meets the
+// Rounding allowed where an arc touches a box: in degrees, and as an angle along
+// the arc.
+const (
+	touchDeg   = 1e-9
+	alongArcOK = -1e-12
+)
+
+// covers reports whether the point q of the arc's great circle lies on the arc.
+func covers(s *sphere.Arc, q sphere.Vec) bool {
+	return s.A.Cross(q).Dot(s.N) >= alongArcOK && q.Cross(s.B).Dot(s.N) >= alongArcOK
+}
+
+// meetMeridian returns the point in which the arc meets the meridian, if any; at
+// a pole it may return both signs' points. None where the arc runs along it.
+func meetMeridian(s *sphere.Arc, lon float64) []sphere.Vec {
+	sin, cos := math.Sincos(lon * math.Pi / 180)
+	q := s.N.Cross(sphere.Vec{X: -sin, Y: cos}) // on both great circles
+	if q.Norm() < 1e-12 {
+		return nil
+	}
+	q = q.Unit()
+	var out []sphere.Vec
+	for _, q := range []sphere.Vec{q, q.Scale(-1)} {
+		if q.Dot(sphere.Vec{X: cos, Y: sin}) >= alongArcOK && covers(s, q) {
+			out = append(out, q)
+		}
+	}
+	return out
+}
+
+// meetParallel returns the points, at most two, in which the arc meets the
 // parallel.
-func crossParallel(s *sphere.Arc, lat float64) []sphere.Vec {
+func meetParallel(s *sphere.Arc, lat float64) []sphere.Vec {
 	// On the great circle, q(t) = u cos t + w sin t with u, w orthonormal and u the
 	// northernmost point; its height is u.Z cos t.
 	north := sphere.Vec{Z: 1}
@@ -120,7 +142,7 @@ func crossParallel(s *sphere.Arc, lat float64) []sphere.Vec {
 	var out []sphere.Vec
 	for _, t := range []float64{t, -t} {
 		q := u.Scale(math.Cos(t)).Add(w.Scale(math.Sin(t)))
-		if s.A.Cross(q).Dot(s.N) >= 0 && q.Cross(s.B).Dot(s.N) >= 0 {
+		if covers(s, q) {
 			out = append(out, q)
 		}
 	}

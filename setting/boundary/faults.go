@@ -113,17 +113,23 @@ func sameEnds(a, b *leg) bool {
 
 // legsAround returns the legs that may lie within 10 m of an arc.
 func (n *Network) legsAround(s *sphere.Arc, out []int32) []int32 {
-	const margin = 1e-3 // degrees: more than 10 m up to 84° of latitude, where boxes are wide
+	const margin = 2e-4 // degrees of latitude: more than 10 m
 	for _, box := range boxes(s) {
-		wide := margin
-		if box.Max[1] > 84 || box.Min[1] < -84 {
-			wide = 1
-		}
-		n.boxes.Search([2]float64{box.Min[0] - wide, box.Min[1] - margin}, [2]float64{box.Max[0] + wide, box.Max[1] + margin},
-			func(_, _ [2]float64, i int32) bool {
+		// the same in longitude; towards a pole the meridians draw together
+		poleward := min(90, max(box.Max[1], -box.Min[1])+margin)
+		wide := min(360, margin/math.Cos(poleward*math.Pi/180))
+		south, north := box.Min[1]-margin, box.Max[1]+margin
+		// and the same places with other longitudes, for what lies across ±180°
+		for _, turn := range []float64{0, -360, 360} {
+			w, e := box.Min[0]-wide+turn, box.Max[0]+wide+turn
+			if e < -180 || w > 180 {
+				continue
+			}
+			n.boxes.Search([2]float64{w, south}, [2]float64{e, north}, func(_, _ [2]float64, i int32) bool {
 				out = append(out, i)
 				return true
 			})
+		}
 	}
 	slices.Sort(out)
 	return slices.Compact(out)

@@ -63,31 +63,41 @@ const coincideKm = 1e-9
 func (n *Network) Locate(p Place) (plate string, nearest Hit) {
 	first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
 	side := n.side(p.Vec, first)
+	return n.plates[side], n.refine(n.all, p, filter{side, Bounding}, first)
+}
+
+// refine compares the leg that is nearest on the sphere with those of the tree
+// that pass and lie within 1 % of its distance, by the length of the WGS84
+// geodesic.
+func (n *Network) refine(t *tree, p Place, f filter, first found) Hit {
 	d := 2 * math.Asin(math.Min(1, math.Sqrt(first.chordSq)/2))
 	var r rivals
-	n.collect(n.all, p.Vec, reachOfRad(d*(1+nearTie)+1e-12), &r)
+	n.collect(t, p.Vec, f, reachOfRad(d*(1+nearTie)+1e-12), &r)
 
-	best, bestKm, bestAz := first, math.Inf(1), math.NaN()
+	best, foot := first, n.legs[first.leg].foot(p.Vec, first.where)
+	bestKm, bestAz := sphere.Inverse(p.LonLat, foot.LonLat())
 	for i := 0; i < r.n; i++ {
-		f := r.list[i]
-		l := &n.legs[f.leg]
-		if f != first && l.left != side && l.right != side {
+		other := r.list[i]
+		if other.leg == first.leg {
 			continue
 		}
+		q := n.legs[other.leg].foot(p.Vec, other.where)
 		km, az := bestKm, bestAz
-		if math.IsInf(bestKm, 1) || l.foot(p.Vec, f.where) != n.legs[best.leg].foot(p.Vec, best.where) {
-			km, az = sphere.Inverse(p.LonLat, l.foot(p.Vec, f.where).LonLat())
+		if q != foot { // two legs share most nearest points: a vertex
+			km, az = sphere.Inverse(p.LonLat, q.LonLat())
 		}
-		if km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, f, best) {
-			best, bestKm, bestAz = f, km, az
+		if km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, other, best) {
+			best, foot, bestKm, bestAz = other, q, km, az
 		}
 	}
-	return n.plates[side], n.hit(p, best, bestKm, bestAz)
+	return n.hit(p, best, bestKm, bestAz)
 }
 
 // NearestOf returns the boundary of one type that is nearest to a place, within
 // maxKm, and whether there is one. With a role other than [AnyRole] it must have
 // the plate of that code on one side, and in that part.
+//
+// Near ties are compared on WGS84 as in [Network.Locate].
 func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm float64) (Hit, bool) {
 	f := filter{noPlate, role}
 	if role != AnyRole {
@@ -100,12 +110,11 @@ func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm floa
 	if !ok {
 		return Hit{}, false
 	}
-	l := &n.legs[got.leg]
-	km, az := sphere.Inverse(p.LonLat, l.foot(p.Vec, got.where).LonLat())
-	if km > maxKm {
+	h := n.refine(n.byType[t], p, f, got)
+	if h.DistanceKm > maxKm {
 		return Hit{}, false
 	}
-	return n.hit(p, got, km, az), true
+	return h, true
 }
 
 func (n *Network) hit(p Place, f found, km, az float64) Hit {

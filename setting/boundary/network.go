@@ -1,6 +1,7 @@
 package boundary
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 
@@ -30,12 +31,7 @@ func NewNetwork(boundaries []*Boundary) (*Network, error) {
 	if len(boundaries) == 0 {
 		return nil, fmt.Errorf("the network has no boundaries")
 	}
-	slices.SortFunc(n.boundaries, func(a, b *Boundary) int {
-		if a.ID() < b.ID() {
-			return -1
-		}
-		return 1
-	})
+	slices.SortFunc(n.boundaries, func(a, b *Boundary) int { return cmp.Compare(a.ID(), b.ID()) })
 	for i, b := range n.boundaries {
 		if _, twice := n.byID[b.ID()]; twice {
 			return nil, fmt.Errorf("boundary %q: the id stands twice", b.ID())

@@ -2,6 +2,7 @@ package boundary
 
 import (
 	"cmp"
+	"math"
 	"slices"
 
 	"nearmargin/setting/sphere"
@@ -69,16 +70,22 @@ func nodeKey(p sphere.LonLat) sphere.LonLat {
 // the node itself it is the sector clockwise from north.
 func (v *node) sector(p sphere.Vec) uint8 {
 	az := v.vec.Azimuth(p.Sub(v.vec))
+	if math.IsNaN(az) {
+		az = 0
+	}
 	last := &v.spokes[len(v.spokes)-1]
 	plate := last.right // from the last spoke through north to the first
 	for i := range v.spokes {
-		if v.spokes[i].azimuth > az { // false for NaN
+		if v.spokes[i].azimuth > az {
 			break
 		}
 		plate = v.spokes[i].right
 	}
 	return plate
 }
+
+// onLineSq is the square of the chord below which a place counts as on a line.
+const onLineSq = 1e-30
 
 // side returns the plate that p lies on, given the leg nearest to it.
 //
@@ -87,8 +94,8 @@ func (v *node) sector(p sphere.Vec) uint8 {
 // both normals, which is right everywhere that the vertex is nearest (the
 // two-dimensional case of Baerentzen & Aanaes 2005, Signed distance computation
 // using the angle weighted pseudonormal, IEEE TVCG 11, 243); at a node the
-// sector between the lines around it. A place on the line itself counts to the
-// left plate.
+// sector between the lines around it. A place on the line itself, within 6 nm,
+// counts to the left plate.
 func (n *Network) side(p sphere.Vec, f found) uint8 {
 	l := &n.legs[f.leg]
 	normal := l.arc.N
@@ -97,6 +104,8 @@ func (n *Network) side(p sphere.Vec, f found) uint8 {
 		return n.nodes[l.nodeA].sector(p)
 	case f.where == sphere.AtB && l.nodeB >= 0:
 		return n.nodes[l.nodeB].sector(p)
+	case f.chordSq <= onLineSq:
+		return l.left
 	case f.where == sphere.AtA:
 		normal = normal.Add(n.legs[f.leg-1].arc.N)
 	case f.where == sphere.AtB:

@@ -1,6 +1,10 @@
 package boundary
 
-import "nearmargin/setting/sphere"
+import (
+	"math"
+
+	"nearmargin/setting/sphere"
+)
 
 // Role says which part a plate must play at a boundary that is looked for.
 type Role uint8
@@ -99,11 +103,15 @@ func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found,
 	}
 }
 
+// squareTie is the difference in squareness that counts as none: what rounding
+// makes of two lines that are met equally squarely.
+const squareTie = 1e-9
+
 // squarer reports whether a wins a tie against b at the same distance from p.
 func (n *Network) squarer(p sphere.Vec, a, b found) bool {
 	la, lb := &n.legs[a.leg], &n.legs[b.leg]
 	sa, sb := la.squareness(p, la.foot(p, a.where)), lb.squareness(p, lb.foot(p, b.where))
-	if sa != sb {
+	if math.Abs(sa-sb) > squareTie {
 		return sa > sb
 	}
 	ia, ib := n.boundaries[la.boundary].ID(), n.boundaries[lb.boundary].ID()
@@ -122,9 +130,9 @@ type rivals struct {
 	n    int
 }
 
-// collect gathers every leg of the tree that lies within the reach of p. Where
-// there are more than maxRivals, the nearest of those met are kept.
-func (n *Network) collect(t *tree, p sphere.Vec, within reach, out *rivals) {
+// collect gathers every leg of the tree that passes and lies within the reach of
+// p. Where there are more than maxRivals, the nearest of those met are kept.
+func (n *Network) collect(t *tree, p sphere.Vec, f filter, within reach, out *rivals) {
 	out.n = 0
 	var stack [64]int32
 	depth := 0
@@ -144,7 +152,7 @@ func (n *Network) collect(t *tree, p sphere.Vec, within reach, out *rivals) {
 			continue
 		}
 		for _, i := range t.order[b.from:b.to] {
-			if d, w := n.legs[i].chordSq(p); d <= within.chordSq {
+			if d, w := n.legs[i].chordSq(p); d <= within.chordSq && f.passes(&n.legs[i]) {
 				out.add(found{i, w, d})
 			}
 		}

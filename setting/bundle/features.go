@@ -155,42 +155,6 @@ func onArc(a, q, b sphere.LonLat) bool {
 	return ok && math.Abs(arc.Side(sphere.FromLonLat(q))) < 3e-8
 }
 
-// cutPath cuts a path where it crosses ±180°.
-func cutPath(path []sphere.LonLat) [][]sphere.LonLat {
-	var out [][]sphere.LonLat
-	part := []sphere.LonLat{path[0]}
-	for i := 1; i < len(path); i++ {
-		a, b := path[i-1], path[i]
-		if math.Abs(b.Lon-a.Lon) > 180 && math.Abs(a.Lon) != 180 && math.Abs(b.Lon) != 180 {
-			lat := crossingLat(a, b)
-			edge := math.Copysign(180, a.Lon)
-			part = append(part, sphere.LonLat{Lon: edge, Lat: lat})
-			out = append(out, part)
-			part = []sphere.LonLat{{Lon: -edge, Lat: lat}}
-		} else if math.Abs(b.Lon-a.Lon) > 180 && a.Lon == 180 && len(part) == 1 {
-			part[0].Lon = -180
-		} else if math.Abs(b.Lon-a.Lon) > 180 && b.Lon == 180 {
-			b.Lon = -180
-		} else if math.Abs(b.Lon-a.Lon) > 180 && a.Lon == 180 {
-			out = append(out, part)
-			part = []sphere.LonLat{{Lon: -180, Lat: a.Lat}}
-		}
-		part = append(part, b)
-	}
-	return append(out, part)
-}
-
-// crossingLat returns the latitude, to six decimals, at which the arc crosses ±180°.
-func crossingLat(a, b sphere.LonLat) float64 {
-	arc, _ := sphere.NewArc(sphere.FromLonLat(a), sphere.FromLonLat(b))
-	q := arc.N.Cross(sphere.Vec{Y: 1}) // the plane of the meridians 0° and 180° has the normal Y
-	if q.X > 0 {
-		q = q.Scale(-1)
-	}
-	lat := q.Unit().LonLat().Lat
-	return math.Round(lat*1e6) / 1e6
-}
-
 // writeBoundaries encodes boundaries.geojson, one feature a line.
 func writeBoundaries(list []*boundary.Boundary) ([]byte, error) {
 	features := make([]feature[boundaryProperties], len(list))
@@ -202,7 +166,7 @@ func writeBoundaries(list []*boundary.Boundary) ([]byte, error) {
 		if s := b.Subducting(); s != "" {
 			p.Subducting = &s
 		}
-		features[i] = feature[boundaryProperties]{Type: "Feature", Properties: p, Geometry: lineGeometry(b.Path())}
+		features[i] = feature[boundaryProperties]{Type: "Feature", Properties: p, Geometry: lineGeometry(b)}
 	}
 	return writeCollection(features)
 }
@@ -237,8 +201,8 @@ func marshal(v any) ([]byte, error) {
 }
 
 // lineGeometry returns a LineString, or a MultiLineString cut at ±180°.
-func lineGeometry(path []sphere.LonLat) geometry {
-	parts := cutPath(path)
+func lineGeometry(b *boundary.Boundary) geometry {
+	parts := b.Parts()
 	if len(parts) == 1 {
 		return geometry{"LineString", appendPositions(nil, parts[0])}
 	}

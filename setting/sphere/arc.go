@@ -49,13 +49,18 @@ const (
 // Special cases: where p is a pole of the great circle every point of the arc is
 // equally far and A is returned.
 //
-// Accuracy: the foot is good to about 1e-15 of the radius for places more than a
-// millimetre away from the pole of the great circle.
+// Accuracy: the distance is good to about 1e-15 rad; to 1e-10 rad within a
+// millimetre of a pole of the great circle, and to 1e-8 rad where the nearest
+// point is an end close to the antipode of p. The foot itself is good to
+// 1e-15/sin δ, with δ the angle from p to the pole of the great circle.
 func (s *Arc) Nearest(p Vec) (Vec, Where) {
 	q := p.Sub(s.N.Scale(s.N.Dot(p)))
 	if l := q.Norm(); l > 1e-10 {
 		if s.A.Cross(q).Dot(s.N) > 0 && q.Cross(s.B).Dot(s.N) > 0 {
-			return q.Scale(1 / l), Inside
+			// close to the pole of the circle q is short, and rounding has left a part
+			// of it along N that counts: take it off again
+			q = q.Scale(1 / l)
+			return q.Sub(s.N.Scale(s.N.Dot(q))).Unit(), Inside
 		}
 	}
 	if s.A.Sub(p).normSq() <= s.B.Sub(p).normSq() {
@@ -86,15 +91,20 @@ func (s *Arc) At(t float64) Vec {
 	return s.A.Scale(math.Sin((1-t)*l) / sin).Add(s.B.Scale(math.Sin(t*l) / sin)).Unit()
 }
 
+// onCircle is the distance from a great circle below which a place counts as on
+// it: about 6 nm, a few times the rounding of a unit vector.
+const onCircle = 1e-15
+
 // Cross returns the point in which two arcs cross, and whether they do. Arcs
-// that share an end, touch with an end or lie on one great circle do not cross.
+// that share an end, touch with an end (within 6 nm) or lie on one great circle
+// do not cross.
 func (s *Arc) Cross(t *Arc) (Vec, bool) {
 	if s.A == t.A || s.A == t.B || s.B == t.A || s.B == t.B {
 		return Vec{}, false // rounding would put the shared end on either side
 	}
 	a, b := t.N.Dot(s.A), t.N.Dot(s.B)
 	c, d := s.N.Dot(t.A), s.N.Dot(t.B)
-	if a*b >= 0 || c*d >= 0 {
+	if !apart(a, b) || !apart(c, d) {
 		return Vec{}, false
 	}
 	q := s.N.Cross(t.N).Unit()
@@ -106,4 +116,9 @@ func (s *Arc) Cross(t *Arc) (Vec, bool) {
 		return Vec{}, false
 	}
 	return q, true
+}
+
+// apart reports whether two heights above a plane lie on different sides of it.
+func apart(a, b float64) bool {
+	return a > onCircle && b < -onCircle || a < -onCircle && b > onCircle
 }

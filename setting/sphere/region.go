@@ -18,7 +18,7 @@ type ring []Vec // closed: the last vertex is the first
 
 // NewRegion builds a region from an outer ring and any holes, each a closed list
 // of at least four positions of which the last repeats the first. The outer ring
-// must fit into a hemisphere.
+// must fit into the hemisphere around the mean of its positions.
 func NewRegion(rings ...[]LonLat) (*Region, error) {
 	r := &Region{}
 	for i, pts := range rings {
@@ -30,6 +30,9 @@ func NewRegion(rings ...[]LonLat) (*Region, error) {
 		}
 		v := make(ring, len(pts))
 		for j, p := range pts {
+			if !(p.Lat >= -90 && p.Lat <= 90) || math.IsNaN(p.Lon) || math.IsInf(p.Lon, 0) {
+				return nil, fmt.Errorf("ring %d, position %d (%g, %g) is not a longitude and a latitude in degrees", i+1, j+1, p.Lon, p.Lat)
+			}
 			v[j] = FromLonLat(p)
 		}
 		r.rings = append(r.rings, v)
@@ -46,7 +49,7 @@ func NewRegion(rings ...[]LonLat) (*Region, error) {
 		r.cosCap = min(r.cosCap, v.Dot(r.centre))
 	}
 	if r.cosCap < 0.01 {
-		return nil, fmt.Errorf("ring 1 does not fit into a hemisphere")
+		return nil, fmt.Errorf("ring 1 does not fit into the hemisphere around its middle")
 	}
 	return r, nil
 }

@@ -1,0 +1,149 @@
+package api
+
+import (
+	_ "embed"
+	"net/http"
+
+	"github.com/labstack/echo/v4"
+
+	"nearmargin/setting"
+)
+
+type modelRef struct {
+	ID      string `json:"id"`
+	Edition string `json:"edition"`
+	SHA256  string `json:"sha256"`
+}
+
+func refOf(m *setting.Model) modelRef { return modelRef{m.ID(), m.Edition(), m.SHA256()} }
+
+type plateInfo struct {
+	Code    string  `json:"code"`
+	Name    string  `json:"name"`
+	AreaKm2 float64 `json:"area_km2"`
+	// MotionModels names the motion models that have an angular velocity for it.
+	MotionModels []string `json:"motion_models"`
+}
+
+type platesInfo struct {
+	Plates []plateInfo `json:"plates"`
+	Model  modelRef    `json:"model"`
+}
+
+// plates lists the plates of a model.
+func (s *Server) plates(c echo.Context) error {
+	q := newQuery(c.Request().URL.RawQuery, "model")
+	if err := q.err(); err != nil {
+		return err
+	}
+	m, err := s.findModel(q.text("model"))
+	if err != nil {
+		return err
+	}
+	areas := m.Network().PlateAreasKm2()
+	out := platesInfo{Model: refOf(m)}
+	for _, p := range m.Plates() {
+		info := plateInfo{Code: p.Code, Name: p.Name, AreaKm2: float64(int64(areas[p.Code] + 0.5)), MotionModels: []string{}}
+		for _, name := range m.MotionNames() {
+			if mm, _ := m.Motion(name); mm.Has(p.Code) {
+				info.MotionModels = append(info.MotionModels, name)
+			}
+		}
+		out.Plates = append(out.Plates, info)
+	}
+	return sendJSON(c, out)
+}
+
+type motionModelInfo struct {
+	Name       string `json:"name"`
+	Title      string `json:"title"`
+	Frame      string `json:"frame"`
+	TimeSpan   string `json:"time_span"`
+	Citation   string `json:"citation"`
+	RelativeTo string `json:"relative_to,omitempty"`
+	Plates     int    `json:"plates"`
+}
+
+type modelInfo struct {
+	modelRef
+	Title         string            `json:"title"`
+	Licence       string            `json:"licence"`
+	Citations     []string          `json:"citations"`
+	Active        bool              `json:"active"`
+	DefaultMotion string            `json:"default_motion"`
+	MotionModels  []motionModelInfo `json:"motion_models"`
+	Plates        int               `json:"plates"`
+	Boundaries    int               `json:"boundaries"`
+	Junctions     int               `json:"triple_junctions"`
+	Zones         int               `json:"diffuse_zones"`
+	Hotspots      int               `json:"hotspots"`
+}
+
+type modelsInfo struct {
+	Models  []modelInfo `json:"models"`
+	Version string      `json:"version"`
+	Commit  string      `json:"commit"`
+}
+
+func (s *Server) infoOf(m *setting.Model) modelInfo {
+	info := modelInfo{
+		modelRef: refOf(m), Title: m.Title(), Licence: m.Licence(), Citations: m.Citations(),
+		Active: m == s.cfg.Models.Active(), DefaultMotion: m.DefaultMotion(),
+		Plates: len(m.Plates()), Boundaries: len(m.Network().Boundaries()), Junctions: len(m.Junctions()),
+		Zones: len(m.Zones()), Hotspots: len(m.Hotspots()),
+	}
+	for _, name := range m.MotionNames() {
+		mm, _ := m.Motion(name)
+		i := mm.Info()
+		info.MotionModels = append(info.MotionModels, motionModelInfo{i.Name, i.Title, i.Frame, i.TimeSpan, i.Citation, i.RelativeTo, len(mm.Entries())})
+	}
+	return info
+}
+
+// models lists the models that are loaded.
+func (s *Server) models(c echo.Context) error {
+	if err := newQuery(c.Request().URL.RawQuery).err(); err != nil {
+		return err
+	}
+	out := modelsInfo{Version: s.cfg.Version, Commit: s.cfg.Commit}
+	for _, m := range s.cfg.Models.All() {
+		out.Models = append(out.Models, s.infoOf(m))
+	}
+	return sendJSON(c, out)
+}
+
+// model describes one model.
+func (s *Server) model(c echo.Context) error {
+	if err := newQuery(c.Request().URL.RawQuery).err(); err != nil {
+		return err
+	}
+	m, err := s.findModel(c.Param("id"))
+	if err != nil {
+		return err
+	}
+	return sendJSON(c, s.infoOf(m))
+}
+
+// health says that the process runs.
+func (s *Server) health(c echo.Context) error {
+	return sendJSON(c, map[string]string{"status": "ok"})
+}
+
+// ready says that requests are answered, and from which model.
+func (s *Server) ready(c echo.Context) error {
+	return sendJSON(c, struct {
+		Status string   `json:"status"`
+		Model  modelRef `json:"model"`
+	}{"ready", refOf(s.cfg.Models.Active())})
+}
+
+//go:embed openapi.json
+var openapiDocument []byte
+
+// OpenAPI returns the OpenAPI 3.1 document of the service.
+func OpenAPI() []byte { return openapiDocument }
+
+// openapi sends the description of the service.
+func (s *Server) openapi(c echo.Context) error {
+	return c.Blob(http.StatusOK, echo.MIMEApplicationJSON, openapiDocument)
+}

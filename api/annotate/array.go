@@ -1,0 +1,48 @@
+package annotate
+
+import (
+	"context"
+	"encoding/json"
+	"fmt"
+	"io"
+)
+
+// annotateArray answers for a short JSON array of objects, as apps send it.
+func annotateArray(_ context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
+	var st Stats
+	body, err := io.ReadAll(io.LimitReader(in, MaxArrayBytes+1))
+	if err != nil {
+		return st, err
+	}
+	if len(body) > MaxArrayBytes {
+		return st, &InputError{Line: 1, Detail: fmt.Sprintf("the array is longer than %d bytes; send NDJSON or CSV", MaxArrayBytes)}
+	}
+	var items []json.RawMessage
+	if err := json.Unmarshal(body, &items); err != nil || items == nil {
+		if fault := jsonFault(body); fault != nil {
+			return st, &InputError{Line: 1, Detail: fault.Error()}
+		}
+		return st, &InputError{Line: 1, Detail: `the body must be a JSON array of objects with lon and lat, such as [{"lon":-72.4,"lat":-36.1}]`}
+	}
+	if len(items) > MaxArray {
+		return st, &InputError{Pointer: fmt.Sprintf("/%d", MaxArray), Detail: fmt.Sprintf("the array has %d elements and %d are the limit; send NDJSON or CSV", len(items), MaxArray)}
+	}
+	k := &asker{o: o}
+	b := []byte{'['}
+	for i, raw := range items {
+		if raw[0] != '{' {
+			return st, &InputError{Pointer: fmt.Sprintf("/%d", i), Detail: "an element must be an object with lon and lat"}
+		}
+		if i > 0 {
+			b = append(b, ',', '\n')
+		}
+		st.Rows++
+		var ok bool
+		if b, ok = k.object(b, raw); !ok {
+			st.Errors++
+		}
+	}
+	b = append(b, ']', '\n')
+	_, err = out.Write(b)
+	return st, err
+}

@@ -1,0 +1,212 @@
+package annotate
+
+import (
+	"encoding/json"
+	"errors"
+	"fmt"
+	"regexp"
+
+	"github.com/tidwall/gjson"
+
+	"nearmargin/api/wire"
+	"nearmargin/setting"
+)
+
+// The members that are added to an object.
+const (
+	memberAnswer = "tectonic"
+	memberError  = "tectonic_error"
+)
+
+// asker answers for JSON objects and features, one after the other.
+type asker struct {
+	o      *Options
+	answer setting.Answer
+}
+
+// object appends raw, a valid JSON object, with the answer added. It reports
+// whether there is one.
+func (k *asker) object(b []byte, raw []byte) ([]byte, bool) {
+	obj := gjson.ParseBytes(raw)
+	if obj.Get("type").Str == "Feature" && obj.Get("geometry").Exists() {
+		return k.feature(b, raw)
+	}
+	s, err := k.siteOf(obj)
+	if err == nil {
+		err = k.o.Lookup.At(s, &k.answer)
+	}
+	b = append(b, '{')
+	b = appendMembers(b, obj)
+	return append(k.appendResult(b, err), '}'), err == nil
+}
+
+// appendMembers appends the members of an object as they are spelt, those that
+// are ours left out. Each is followed by a comma.
+func appendMembers(b []byte, obj gjson.Result) []byte {
+	obj.ForEach(func(key, value gjson.Result) bool {
+		if key.Str != memberAnswer && key.Str != memberError {
+			b = append(b, key.Raw...)
+			b = append(b, ':')
+			b = append(b, value.Raw...)
+			b = append(b, ',')
+		}
+		return true
+	})
+	return b
+}
+
+// appendResult appends the answer, or the reason why there is none, as a member.
+func (k *asker) appendResult(b []byte, err error) []byte {
+	if err != nil {
+		b = append(b, `"`+memberError+`":`...)
+		return wire.AppendString(b, err.Error())
+	}
+	b = append(b, `"`+memberAnswer+`":`...)
+	return wire.AppendAnswer(b, &k.answer)
+}
+
+func (k *asker) siteOf(obj gjson.Result) (setting.Site, error) {
+	lon, err := member(obj, k.o.LonColumn, "longitude", lonName)
+	if err != nil {
+		return setting.Site{}, err
+	}
+	lat, err := member(obj, k.o.LatColumn, "latitude", latName)
+	if err != nil {
+		return setting.Site{}, err
+	}
+	return k.withExtras(obj, lon, lat)
+}
+
+// withExtras adds depth and uncertainty, where asked for, from an object's members.
+func (k *asker) withExtras(obj gjson.Result, lon, lat string) (setting.Site, error) {
+	var extra [2]string
+	for i, name := range [...]string{k.o.DepthColumn, k.o.UncertaintyColumn} {
+		if name == "" || name == ThirdCoordinate {
+			continue
+		}
+		var err error
+		if extra[i], err = member(obj, name, name, nil); err != nil && !errors.Is(err, errMissing) {
+			return setting.Site{}, err
+		}
+	}
+	return site(lon, lat, extra[0], extra[1], false)
+}
+
+// member returns the text of a number member: the one named, or else the only
+// one whose name fits.
+func member(obj gjson.Result, given, what string, fits *regexp.Regexp) (string, error) {
+	var found gjson.Result
+	name, twice := "", ""
+	obj.ForEach(func(key, value gjson.Result) bool {
+		if given != "" && key.Str != given || given == "" && !fits.MatchString(key.Str) {
+			return true
+		}
+		if name != "" {
+			twice = key.Str
+			return false
+		}
+		name, found = key.Str, value
+		return true
+	})
+	switch {
+	case twice != "":
+		return "", fmt.Errorf("members %q and %q could both be the %s", clip(name), clip(twice), what)
+	case name == "":
+		return "", fmt.Errorf("%s %w: there is no such member", what, errMissing)
+	}
+	return numberText(found, name)
+}
+
+// numberText returns the text of a JSON number, or of a string that may hold
+// one; "" for null.
+func numberText(v gjson.Result, name string) (string, error) {
+	switch v.Type {
+	case gjson.Number:
+		return v.Raw, nil
+	case gjson.String:
+		return v.Str, nil
+	case gjson.Null:
+		return "", nil
+	}
+	return "", fmt.Errorf("%s is %s; it must be a number", clip(name), clip(v.Raw))
+}
+
+// feature appends a GeoJSON Feature with the answer among its properties.
+func (k *asker) feature(b []byte, raw []byte) ([]byte, bool) {
+	f := gjson.ParseBytes(raw)
+	s, err := k.siteOfFeature(f)
+	if err == nil {
+		err = k.o.Lookup.At(s, &k.answer)
+	}
+	b = append(b, '{')
+	done := false
+	f.ForEach(func(key, value gjson.Result) bool {
+		b = append(b, key.Raw...)
+		b = append(b, ':')
+		if key.Str == "properties" && !done {
+			done = true
+			b = append(b, '{')
+			if value.IsObject() {
+				b = appendMembers(b, value)
+			}
+			b = append(k.appendResult(b, err), '}')
+		} else {
+			b = append(b, value.Raw...)
+		}
+		b = append(b, ',')
+		return true
+	})
+	if !done {
+		b = append(b, `"properties":{`...)
+		b = append(k.appendResult(b, err), '}', ',')
+	}
+	b[len(b)-1] = '}'
+	return b, err == nil
+}
+
+func (k *asker) siteOfFeature(f gjson.Result) (setting.Site, error) {
+	if t := f.Get("type"); t.Str != "Feature" {
+		return setting.Site{}, fmt.Errorf(`type is %s; it must be "Feature"`, orMissing(t.Raw))
+	}
+	g := f.Get("geometry")
+	if !g.IsObject() {
+		return setting.Site{}, fmt.Errorf("geometry is %s; it must be a Point", orMissing(clip(g.Raw)))
+	}
+	if t := g.Get("type"); t.Str != "Point" {
+		return setting.Site{}, fmt.Errorf("geometry is %s; only a Point has an answer", orMissing(clip(t.Raw)))
+	}
+	c := g.Get("coordinates").Array()
+	if len(c) < 2 || c[0].Type != gjson.Number || c[1].Type != gjson.Number {
+		return setting.Site{}, errors.New("coordinates must be at least two numbers, longitude and latitude")
+	}
+	s, err := k.withExtras(f.Get("properties"), c[0].Raw, c[1].Raw)
+	if err != nil || k.o.DepthColumn != ThirdCoordinate {
+		return s, err
+	}
+	if len(c) < 3 {
+		return s, nil
+	}
+	s.DepthKm, err = parseNumber(c[2].Raw, false)
+	return s, err
+}
+
+func orMissing(raw string) string {
+	if raw == "" {
+		return "missing"
+	}
+	return raw
+}
+
+// jsonFault says what is wrong with JSON text, and where.
+func jsonFault(raw []byte) error {
+	var syntax *json.SyntaxError
+	var v any
+	err := json.Unmarshal(raw, &v)
+	if errors.As(err, &syntax) {
+		return fmt.Errorf("not JSON: %v, at byte %d", syntax, syntax.Offset)
+	}
+	if err != nil {
+		return fmt.Errorf("not JSON: %w", err)
+	}
+	return nil
+}

@@ -1,0 +1,116 @@
+package api
+
+import (
+	"encoding/json"
+	"io"
+	"log/slog"
+	"net/http"
+	"time"
+
+	"github.com/labstack/echo/v4"
+	"github.com/prometheus/client_golang/prometheus"
+
+	"nearmargin/setting"
+)
+
+// Models is where a handler finds the model to answer from.
+type Models interface {
+	// Active returns the model used where a request names none.
+	Active() *setting.Model
+	// Find returns the model named by "id" (its active edition) or "id@edition".
+	Find(ref string) (*setting.Model, bool)
+	// All returns every edition that is loaded, the active one first.
+	All() []*setting.Model
+}
+
+// Config is what a server is built from; every field is needed.
+type Config struct {
+	Models   Models
+	Log      *slog.Logger
+	Registry *prometheus.Registry
+	Version  string // of the program
+	Commit   string
+}
+
+// Server answers HTTP requests. It holds no state of its own.
+type Server struct {
+	cfg     Config
+	metrics *metrics
+	echo    *echo.Echo
+}
+
+// New builds a server with all routes.
+func New(cfg Config) *Server {
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), echo: echo.New()}
+	e := s.echo
+	e.HideBanner, e.HidePort = true, true
+	e.IPExtractor = echo.ExtractIPDirect()
+	e.HTTPErrorHandler = s.handleError
+	e.Use(s.observe)
+	for path, h := range map[string]echo.HandlerFunc{
+		"/v1/point":      s.point,
+		"/v1/boundaries": s.boundaries,
+		"/v1/plates":     s.plates,
+		"/v1/models":     s.models,
+		"/v1/models/:id": s.model,
+		"/healthz":       s.health,
+		"/readyz":        s.ready,
+		"/metrics":       s.metrics.handler(cfg.Registry),
+		"/openapi.json":  s.openapi,
+	} {
+		e.GET(path, h)
+		e.HEAD(path, h)
+	}
+	e.POST("/v1/annotate", s.annotate)
+	return s
+}
+
+// ServeHTTP answers one request.
+func (s *Server) ServeHTTP(w http.ResponseWriter, r *http.Request) { s.echo.ServeHTTP(w, r) }
+
+// handleError sends the problem document for an error, once.
+func (s *Server) handleError(err error, c echo.Context) {
+	p := problemOf(err)
+	if p.Status >= http.StatusInternalServerError {
+		s.cfg.Log.Error("request failed", "path", c.Path(), "error", err)
+	}
+	if c.Response().Committed {
+		return
+	}
+	if err := writeProblem(c, p); err != nil {
+		s.cfg.Log.Warn("problem document not sent", "error", err)
+	}
+}
+
+// observe counts and logs a request.
+func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
+	return func(c echo.Context) error {
+		start := time.Now()
+		if err := next(c); err != nil {
+			c.Error(err)
+		}
+		took := time.Since(start)
+		route := c.Path()
+		if route == "" || c.Response().Status == http.StatusNotFound && route != "/v1/models/:id" {
+			route = "none"
+		}
+		s.metrics.request(route, c.Request().Method, c.Response().Status, took)
+		s.cfg.Log.Info("request", "method", c.Request().Method, "route", route, "status", c.Response().Status,
+			"bytes", c.Response().Size, "ms", float64(took.Microseconds())/1000)
+		return nil
+	}
+}
+
+// encodeJSON writes a value without escaping <, > and &.
+func encodeJSON(w io.Writer, v any) error {
+	e := json.NewEncoder(w)
+	e.SetEscapeHTML(false)
+	return e.Encode(v)
+}
+
+// sendJSON sends a value as JSON.
+func sendJSON(c echo.Context, v any) error {
+	c.Response().Header().Set(echo.HeaderContentType, echo.MIMEApplicationJSON)
+	c.Response().WriteHeader(http.StatusOK)
+	return encodeJSON(c.Response(), v)
+}
