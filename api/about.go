@@ -87,7 +87,7 @@ type modelsInfo struct {
 
 func (s *Server) infoOf(m *setting.Model) modelInfo {
 	info := modelInfo{
-		modelRef: refOf(m), Title: m.Title(), Licence: m.Licence(), Citations: m.Citations(),
+		modelRef: refOf(m), Title: m.Title(), Licence: m.Licence(), Citations: append([]string{}, m.Citations()...),
 		Active: m == s.cfg.Models.Active(), DefaultMotion: m.DefaultMotion(),
 		Plates: len(m.Plates()), Boundaries: len(m.Network().Boundaries()), Junctions: len(m.Junctions()),
 		Zones: len(m.Zones()), Hotspots: len(m.Hotspots()),

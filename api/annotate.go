@@ -1,9 +1,9 @@
 package api
 
 import (
-	"context"
 	"errors"
 	"fmt"
+	"io"
 	"mime"
 	"net/http"
 	"strings"
@@ -39,22 +39,43 @@ func (s *Server) annotate(c echo.Context) error {
 	if err := http.NewResponseController(c.Response().Writer).EnableFullDuplex(); err != nil && !errors.Is(err, http.ErrNotSupported) {
 		return err
 	}
-	st, err := annotate.Run(c.Request().Context(), c.Request().Body, &batchWriter{c: c, contentType: contentType}, format, annotate.Options{
+	ctx, body := c.Request().Context(), &batchReader{r: c.Request().Body}
+	st, err := annotate.Run(ctx, body, &batchWriter{c: c, contentType: contentType}, format, annotate.Options{
 		Lookup:    l,
 		LonColumn: q.text("lon_column"), LatColumn: q.text("lat_column"),
 		DepthColumn: q.text("depth_column"), UncertaintyColumn: q.text("uncertainty_column"),
 		Prefix: q.text("prefix"),
 	})
 	s.metrics.batch(string(format), st)
-	if err != nil && c.Response().Committed {
-		// The status is out. A broken body is the one way left to tell the reader
-		// that the answer is not whole.
-		if !errors.Is(err, context.Canceled) {
+	switch {
+	case err == nil:
+		return nil
+	case c.Response().Committed || ctx.Err() != nil:
+		// The status is out, or nobody is left to read it. A broken body is the one
+		// way left to tell the reader that the answer is not whole.
+		if ctx.Err() == nil {
 			s.cfg.Log.Warn("batch cut short", "rows", st.Rows, "error", err)
 		}
 		panic(http.ErrAbortHandler)
+	case body.err != nil:
+		return badRequest(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body breaks off: %v; send it whole", body.err)})
 	}
 	return err
+}
+
+// batchReader remembers the fault that ended a body, so that a client which
+// breaks off is not taken for a fault of the service.
+type batchReader struct {
+	r   io.Reader
+	err error
+}
+
+func (b *batchReader) Read(p []byte) (int, error) {
+	n, err := b.r.Read(p)
+	if err != nil && err != io.EOF {
+		b.err = err
+	}
+	return n, err
 }
 
 // batchFormat returns the format that a request's content type asks for, and the
@@ -64,19 +85,20 @@ func batchFormat(r *http.Request) (annotate.Format, string, error) {
 	media, params, err := mime.ParseMediaType(given)
 	format, ok := annotateTypes[media]
 	if err != nil || !ok {
-		return "", "", unsupported("content type %.60q cannot be annotated; send text/csv, application/x-ndjson, application/geo+json or application/json", given)
+		return "", "", unsupported(echo.HeaderContentType, "content type %.60q cannot be annotated; send text/csv, application/x-ndjson, application/geo+json or application/json", given)
 	}
 	if cs := params["charset"]; cs != "" && !strings.EqualFold(cs, "utf-8") && !strings.EqualFold(cs, "us-ascii") {
-		return "", "", unsupported("charset %.40q is not read; send UTF-8", cs)
+		return "", "", unsupported(echo.HeaderContentType, "charset %.40q is not read; send UTF-8", cs)
 	}
 	if enc := r.Header.Get(echo.HeaderContentEncoding); enc != "" && enc != "identity" {
-		return "", "", unsupported("content encoding %.40q is not read; send the body as it is", enc)
+		return "", "", unsupported(echo.HeaderContentEncoding, "content encoding %.40q is not read; send the body as it is", enc)
 	}
 	return format, media, nil
 }
 
-func unsupported(format string, args ...any) *Problem {
-	return newProblem(http.StatusUnsupportedMediaType, "unsupported-media-type", "The body cannot be read", fmt.Sprintf(format, args...))
+func unsupported(header, format string, args ...any) *Problem {
+	detail := fmt.Sprintf(format, args...)
+	return newProblem(http.StatusUnsupportedMediaType, "unsupported-media-type", "The body cannot be read", detail, FieldFault{Parameter: header, Detail: detail})
 }
 
 // batchWriter sends the header with the first bytes, so that a fault found

@@ -2,7 +2,6 @@ package api
 
 import (
 	"net/http"
-	"strconv"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -24,7 +23,7 @@ type metrics struct {
 func newMetrics(reg *prometheus.Registry, models Models, version, commit string) *metrics {
 	m := &metrics{
 		requests: prometheus.NewCounterVec(prometheus.CounterOpts{
-			Name: "nearmargin_http_requests_total", Help: "Requests answered, by route, method and status.",
+			Name: "nearmargin_http_requests_total", Help: "Requests answered, by route, method and status (aborted: the answer was broken off).",
 		}, []string{"route", "method", "status"}),
 		seconds: prometheus.NewHistogramVec(prometheus.HistogramOpts{
 			Name: "nearmargin_http_request_duration_seconds", Help: "Time from the request's header to the end of its answer.",
@@ -50,11 +49,11 @@ var knownMethods = map[string]bool{
 	http.MethodDelete: true, http.MethodPatch: true, http.MethodOptions: true,
 }
 
-func (m *metrics) request(route, method string, status int, took time.Duration) {
+func (m *metrics) request(route, method, status string, took time.Duration) {
 	if !knownMethods[method] {
 		method = "other"
 	}
-	m.requests.WithLabelValues(route, method, strconv.Itoa(status)).Inc()
+	m.requests.WithLabelValues(route, method, status).Inc()
 	m.seconds.WithLabelValues(route).Observe(took.Seconds())
 }
 

@@ -57,6 +57,9 @@ func problemOf(err error) *Problem {
 	case errors.As(err, &field):
 		return badRequest(FieldFault{Parameter: field.Field, Detail: field.Detail})
 	case errors.As(err, &input):
+		if input.TooLarge {
+			return newProblem(http.StatusRequestEntityTooLarge, "too-large", "The body is too large", input.Detail, inputFault(input))
+		}
 		return badRequest(inputFault(input))
 	case errors.As(err, &binding):
 		return badRequest(FieldFault{Parameter: binding.Field, Detail: fmt.Sprint(binding.Message)})
@@ -77,9 +80,11 @@ func inputFault(e *annotate.InputError) FieldFault {
 func statusProblem(status int) *Problem {
 	switch status {
 	case http.StatusNotFound:
-		return newProblem(status, "not-found", "There is nothing at this path", "See /openapi.json for the paths there are.")
+		const detail = "See /openapi.json for the paths there are."
+		return newProblem(status, "not-found", "There is nothing at this path", detail, FieldFault{Parameter: "path", Detail: detail})
 	case http.StatusMethodNotAllowed:
-		return newProblem(status, "method-not-allowed", "The path does not take this method", "The Allow header lists the methods it takes.")
+		const detail = "The Allow header lists the methods it takes."
+		return newProblem(status, "method-not-allowed", "The path does not take this method", detail, FieldFault{Parameter: "method", Detail: detail})
 	}
 	return newProblem(status, "http-"+fmt.Sprint(status), http.StatusText(status), "")
 }

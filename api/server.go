@@ -5,6 +5,7 @@ import (
 	"io"
 	"log/slog"
 	"net/http"
+	"strconv"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -85,18 +86,24 @@ func (s *Server) handleError(err error, c echo.Context) {
 // observe counts and logs a request.
 func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
-		start := time.Now()
+		start, whole := time.Now(), false
+		defer func() { // also where a handler breaks the answer off
+			took := time.Since(start)
+			route, status := c.Path(), strconv.Itoa(c.Response().Status)
+			if route == "" || c.Response().Status == http.StatusNotFound && route != "/v1/models/:id" {
+				route = "none"
+			}
+			if !whole {
+				status = "aborted"
+			}
+			s.metrics.request(route, c.Request().Method, status, took)
+			s.cfg.Log.Info("request", "method", c.Request().Method, "route", route, "status", status,
+				"bytes", c.Response().Size, "ms", float64(took.Microseconds())/1000)
+		}()
 		if err := next(c); err != nil {
 			c.Error(err)
 		}
-		took := time.Since(start)
-		route := c.Path()
-		if route == "" || c.Response().Status == http.StatusNotFound && route != "/v1/models/:id" {
-			route = "none"
-		}
-		s.metrics.request(route, c.Request().Method, c.Response().Status, took)
-		s.cfg.Log.Info("request", "method", c.Request().Method, "route", route, "status", c.Response().Status,
-			"bytes", c.Response().Size, "ms", float64(took.Microseconds())/1000)
+		whole = true
 		return nil
 	}
 }

@@ -15,7 +15,7 @@ func annotateArray(_ context.Context, in io.Reader, out io.Writer, o *Options) (
 		return st, err
 	}
 	if len(body) > MaxArrayBytes {
-		return st, &InputError{Line: 1, Detail: fmt.Sprintf("the array is longer than %d bytes; send NDJSON or CSV", MaxArrayBytes)}
+		return st, &InputError{Line: 1, TooLarge: true, Detail: fmt.Sprintf("the array is longer than %d bytes; send NDJSON or CSV", MaxArrayBytes)}
 	}
 	var items []json.RawMessage
 	if err := json.Unmarshal(body, &items); err != nil || items == nil {

@@ -72,6 +72,10 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 		if err != nil {
 			return st, csvFault(err)
 		}
+		if n := len(row); g.ended && strings.IndexByte(row[n-1], '\n') >= 0 && g.last != '"' {
+			line, _ := j.in.FieldPos(n - 1)
+			return st, badLine(line, "a quotation mark is not closed; it takes in the rest of the input")
+		}
 		st.Rows++
 		if !j.row(row) {
 			st.Errors++
@@ -105,6 +109,7 @@ func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
 		skipped = int64(n)
 		head = head[n:]
 	}
+	head = bytes.TrimLeft(head, "\r\n") // blank lines are skipped
 	line, quoted := head, false
 	for i, c := range head {
 		if c == '"' {

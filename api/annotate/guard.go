@@ -3,6 +3,7 @@ package annotate
 import (
 	"errors"
 	"io"
+	"slices"
 )
 
 // errRowTooLong stops a reader that is asked for more than one row may have.
@@ -15,6 +16,8 @@ type guard struct {
 	read   int64
 	marked int64
 	limit  int64
+	ended  bool // the end has been met
+	last   byte // the last byte that ends no line
 }
 
 // mark says that the input has been dealt with up to an offset.
@@ -26,5 +29,12 @@ func (g *guard) Read(p []byte) (int, error) {
 	}
 	n, err := g.r.Read(p)
 	g.read += int64(n)
+	g.ended = err == io.EOF
+	for _, c := range slices.Backward(p[:n]) {
+		if c != '\r' && c != '\n' {
+			g.last = c
+			break
+		}
+	}
 	return n, err
 }

@@ -67,6 +67,7 @@ type InputError struct {
 	Pointer   string // JSON pointer, "" where it has none
 	Line      int    // from 1, 0 where it has none
 	Detail    string // what was wrong and what would be right
+	TooLarge  bool   // the input is longer than its form may be
 }
 
 func (e *InputError) Error() string {

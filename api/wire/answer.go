@@ -74,8 +74,8 @@ func AppendAnswer(b []byte, a *setting.Answer) []byte {
 
 func appendSite(b []byte, s *setting.Site) []byte {
 	o := open(b)
-	o.num("lon", s.Lon, 6)
-	o.num("lat", s.Lat, 6)
+	o.num("lon", roundLon(s.Lon, decimalsSite), decimalsSite)
+	o.num("lat", s.Lat, decimalsSite)
 	o.num("depth_km", s.DepthKm, 3)
 	o.num("uncertainty_km", s.UncertaintyKm, 3)
 	return o.close()
@@ -134,7 +134,7 @@ func appendBoundary(b []byte, x *setting.BoundaryAnswer) []byte {
 
 func appendPosition(b []byte, p sphere.LonLat) []byte {
 	b = append(b, '[')
-	b = appendRounded(b, p.Lon, decimalsPosition)
+	b = appendRounded(b, roundLon(p.Lon, decimalsPosition), decimalsPosition)
 	b = append(b, ',')
 	b = appendRounded(b, p.Lat, decimalsPosition)
 	return append(b, ']')

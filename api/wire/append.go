@@ -13,21 +13,33 @@ const (
 	decimalsDeg      = 1
 	decimalsRate     = 2
 	decimalsPosition = 4
+	decimalsSite     = 6
 )
 
 var pow10 = [...]float64{1, 10, 100, 1e3, 1e4, 1e5, 1e6}
 
 // appendRounded appends a number with no more than the decimals given and no
-// trailing zeros; nothing for NaN.
+// trailing zeros; nothing for one that is not finite.
 func appendRounded(b []byte, x float64, decimals int) []byte {
-	if math.IsNaN(x) {
+	if !finite(x) {
 		return b
 	}
-	x = math.Round(x*pow10[decimals]) / pow10[decimals]
-	if x == 0 {
-		x = 0 // no minus zero
+	return strconv.AppendFloat(b, rounded(x, decimals), 'f', -1, 64)
+}
+
+func finite(x float64) bool { return x-x == 0 }
+
+// rounded rounds to a number of decimals; never to minus zero.
+func rounded(x float64, decimals int) float64 {
+	return math.Round(x*pow10[decimals])/pow10[decimals] + 0
+}
+
+// roundLon rounds a longitude within (-180, 180] so that it stays there.
+func roundLon(deg float64, decimals int) float64 {
+	if x := rounded(deg, decimals); x > -180 {
+		return x
 	}
-	return strconv.AppendFloat(b, x, 'f', -1, 64)
+	return 180
 }
 
 // roundAzimuth rounds an azimuth so that it stays below 360.
@@ -82,10 +94,10 @@ func (o *object) boolean(k string, v bool) {
 	o.b = strconv.AppendBool(o.b, v)
 }
 
-// num writes null for NaN.
+// num writes null for a number that is not finite.
 func (o *object) num(k string, x float64, decimals int) {
 	o.key(k)
-	if math.IsNaN(x) {
+	if !finite(x) {
 		o.b = append(o.b, "null"...)
 		return
 	}

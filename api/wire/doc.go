@@ -4,6 +4,6 @@
 // words and numbers.
 //
 // Kilometres have two decimals, σ in kilometres one, degrees one, rates in mm/yr
-// two, positions four (11 m). NaN, the domain's "absent", is null in JSON and
+// two, positions four (11 m), the site's own six. NaN, the domain's "absent", is null in JSON and
 // empty in a table.
 package wire

@@ -38,10 +38,26 @@ func (n *Network) Faults() []Fault {
 	out = append(out, n.nodeFaults()...)
 	out = append(out, n.legFaults()...)
 	out = append(out, n.partFaults()...)
-	if len(out) == 0 { // areas mean nothing while rings are open
-		out = append(out, n.areaFaults()...)
+	// areas mean nothing while rings are open; exchanged ones are closed, though
+	// the plates around every junction disagree
+	if len(out) == 0 || n.exchanged() {
+		out = append(n.areaFaults(), out...)
 	}
 	return out
+}
+
+// exchanged reports whether the plates around every node would agree if left and
+// right were exchanged everywhere.
+func (n *Network) exchanged() bool {
+	for i := range n.nodes {
+		spokes := n.nodes[i].spokes
+		for j := range spokes {
+			if len(spokes) == 1 || spokes[j].left != spokes[(j+1)%len(spokes)].right {
+				return false
+			}
+		}
+	}
+	return true
 }
 
 func (n *Network) nodeFaults() []Fault {

@@ -26,10 +26,15 @@ func newLeg(arc sphere.Arc) leg {
 	return leg{arc: arc, fromA: arc.N.Cross(arc.A), fromB: arc.B.Cross(arc.N)}
 }
 
+// atEnd is how far beyond an end a foot must lie to count as inside the leg, as
+// an angle: 6 nm, so that rounding does not take a place on a vertex, or one
+// square to it, off the vertex.
+const atEnd = 1e-15
+
 // chordSq returns the square of the chord from p to the nearest point of the
 // leg, a measure that grows with the distance and is exact for small ones.
 func (l *leg) chordSq(p sphere.Vec) (float64, sphere.Where) {
-	if p.Dot(l.fromA) > 0 && p.Dot(l.fromB) > 0 {
+	if p.Dot(l.fromA) > atEnd && p.Dot(l.fromB) > atEnd {
 		h := p.Dot(l.arc.N)
 		h2 := h * h
 		// chord² = 2(1-cos d) with sin d = |h|, without the loss of digits in 1-cos

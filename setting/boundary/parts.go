@@ -23,8 +23,9 @@ func cutPath(path []sphere.LonLat) [][]sphere.LonLat {
 			case a.Lon == 180 && len(part) == 1: // starts on the edge
 				part[0].Lon = -180
 			case a.Lon == 180: // a vertex on the edge
+				edge := part[len(part)-1].Lon
 				out = append(out, part)
-				part = []sphere.LonLat{{Lon: -180, Lat: a.Lat}}
+				part = []sphere.LonLat{{Lon: -edge, Lat: a.Lat}}
 			default:
 				lat := crossingLat(a, b)
 				edge := math.Copysign(180, part[len(part)-1].Lon)
