@@ -3,6 +3,7 @@ package api
 import (
 	_ "embed"
 	"net/http"
+	"net/url"
 
 	"github.com/labstack/echo/v4"
 
@@ -75,6 +76,7 @@ type modelInfo struct {
 	Plates        int               `json:"plates"`
 	Boundaries    int               `json:"boundaries"`
 	Junctions     int               `json:"triple_junctions"`
+	Slabs         int               `json:"slabs"`
 	Zones         int               `json:"diffuse_zones"`
 	Hotspots      int               `json:"hotspots"`
 }
@@ -90,7 +92,7 @@ func (s *Server) infoOf(m *setting.Model) modelInfo {
 		modelRef: refOf(m), Title: m.Title(), Licence: m.Licence(), Citations: append([]string{}, m.Citations()...),
 		Active: m == s.cfg.Models.Active(), DefaultMotion: m.DefaultMotion(),
 		Plates: len(m.Plates()), Boundaries: len(m.Network().Boundaries()), Junctions: len(m.Junctions()),
-		Zones: len(m.Zones()), Hotspots: len(m.Hotspots()),
+		Slabs: len(m.Slabs()), Zones: len(m.Zones()), Hotspots: len(m.Hotspots()),
 	}
 	for _, name := range m.MotionNames() {
 		mm, _ := m.Motion(name)
@@ -117,7 +119,13 @@ func (s *Server) model(c echo.Context) error {
 	if err := newQuery(c.Request().URL.RawQuery).err(); err != nil {
 		return err
 	}
-	m, err := s.findModel(c.Param("id"))
+	id := c.Param("id")
+	if c.Request().URL.RawPath != "" { // the router has matched the path as it was sent
+		if plain, err := url.PathUnescape(id); err == nil {
+			id = plain
+		}
+	}
+	m, err := s.findModel(id)
 	if err != nil {
 		return err
 	}

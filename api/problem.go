@@ -40,7 +40,11 @@ func newProblem(status int, kind, title, detail string, faults ...FieldFault) *P
 
 // badRequest returns the problem for faults of a request's syntax or ranges.
 func badRequest(faults ...FieldFault) *Problem {
-	return newProblem(http.StatusBadRequest, "invalid-request", "The request is not valid", faults[0].Detail, faults...)
+	detail := faults[0].Detail
+	if p := faults[0].Parameter; p != "" {
+		detail = p + ": " + detail
+	}
+	return newProblem(http.StatusBadRequest, "invalid-request", "The request is not valid", detail, faults...)
 }
 
 // problemOf turns any error into a problem document. The cause of an internal
@@ -91,11 +95,11 @@ func statusProblem(status int) *Problem {
 
 // writeProblem sends the problem document for an error.
 func writeProblem(c echo.Context, p *Problem) error {
+	c.Response().Header().Set(echo.HeaderContentType, "application/problem+json")
+	c.Response().Header().Set("X-Content-Type-Options", "nosniff")
 	if c.Request().Method == http.MethodHead {
 		return c.NoContent(p.Status)
 	}
-	c.Response().Header().Set(echo.HeaderContentType, "application/problem+json")
-	c.Response().Header().Set("X-Content-Type-Options", "nosniff")
 	c.Response().WriteHeader(p.Status)
 	return encodeJSON(c.Response(), p)
 }

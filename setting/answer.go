@@ -20,9 +20,10 @@ type Answer struct {
 	Alternatives List[Alternative]
 
 	Nearest      BoundaryAnswer
-	Controlling  BoundaryAnswer // the boundary that decides the label
-	IsControlled bool           // false in an interior: Controlling means nothing
-	Nearby       List[Nearby]   // the nearest boundary of every other type; empty in a brief answer
+	Controlling  BoundaryAnswer   // the boundary that decides the label
+	IsControlled bool             // false in an interior: Controlling means nothing
+	Slabs        List[SlabAnswer] // every slab below the site, the one that decides first
+	Nearby       List[Nearby]     // the nearest boundary of every other type; empty in a brief answer
 	Junction     JunctionAnswer
 	NearJunction bool // Junction means something; always false in a brief answer
 	Zone         *Zone
@@ -103,7 +104,8 @@ const (
 	NoteZoneTotal     NoteCode = "rate_total_across_zone"
 	NoteZeroZero      NoteCode = "zero_coordinates" // 0, 0 is often a missing value
 	NoteNoSlabs       NoteCode = "no_slabs_in_model"
-	NoteUnknownUpper  NoteCode = "polarity_unknown" // which side of a convergent boundary is the upper
+	NoteOtherPlates   NoteCode = "controlling_boundary_of_other_plates"
+	NoteFixedDepth    NoteCode = "depth_may_be_fixed" // 10 and 33 km
 )
 
 // Note is a remark on an answer: a code and what it speaks of.

@@ -4,16 +4,21 @@ import (
 	"math"
 
 	"nearmargin/setting/boundary"
+	"nearmargin/setting/slab"
 )
 
 // Reason is why a label was given: a rule and the numbers it compared.
 type Reason struct {
 	Rule     RuleID
-	Limit    LimitID // meaningful where Boundary is not nil
-	Boundary *boundary.Boundary
-	Km       float64 // distance to it
+	Limit    LimitID
 	LimitVal float64
-	AgeMyr   float64 // of the sea floor, for the rule on ridge flanks
+	Boundary *boundary.Boundary // nil where none decided
+	Km       float64            // distance to it
+	AgeMyr   float64            // of the sea floor, for the rule on ridge flanks
+	Slab     *slab.Slab         // nil where none decided
+	DepthKm  float64            // of its top
+	SigmaKm  float64            // 1σ of that depth
+	PastKm   float64            // how far past the slab's rim the site is, 0 above it
 }
 
 // Alternative is another label that is met within 1σ.
@@ -32,13 +37,16 @@ const (
 	CauseSite      CauseKind = 2 // the site, by its own σ
 	CauseLimit     CauseKind = 3 // a limit of the rule table, by its σ
 	CauseOtherSide CauseKind = 4 // the plate, where the side is uncertain
+	CauseDepth     CauseKind = 5 // the depth of a slab's top, by its σ
+	CauseRule      CauseKind = 6 // nothing: the rule itself allows both
+	CauseSlabEnd   CauseKind = 7 // the site lies past a slab's lateral end
 )
 
 // Cause is what was moved, by how much, to meet an alternative.
 type Cause struct {
 	Kind  CauseKind
-	By    float64 // signed: km, or Myr for the limit on age
-	Name  string  // the boundary's name, the limit's, or the other plate's code
+	By    float64 // signed: km, or the unit of the limit
+	Name  string  // the boundary's name, the slab's, the limit's, or the other plate's code
 	Rule  RuleID  // the rule that then decides
 	Limit LimitID
 }
@@ -46,21 +54,27 @@ type Cause struct {
 // classify labels the site and works out how sure the label is.
 func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	var e evidence
-	l.gather(p, a.Plate.Code, a.Zone, &e)
+	l.gather(p, a.Plate.Code, a, &e)
 	v, rule := e.decide()
 	a.Label, a.Family = v.label, v.label.family(e.zone)
 	a.Reasons.add(e.reason(v, rule))
-	if v.by != noSource {
-		a.IsControlled = true
-		a.Controlling = l.boundaryAnswer(a, e.hit[v.by])
+	l.control(a, &e, v)
+	first := v.slab
+	if first < 0 {
+		first = e.decidingSlab()
 	}
+	l.addSlabs(p, a, &e, first)
 
+	if v.also != NoLabel {
+		a.alternative(v.also, Cause{Kind: CauseRule, Rule: rule, Limit: v.limit}, e.zone)
+	}
 	e.vary(a)
+	e.pastEnds(a)
 	if a.SideUncertain && l.m.plates[a.plateAcross] != nil {
 		var o evidence
-		l.gather(p, a.plateAcross, a.Zone, &o)
+		l.gather(p, a.plateAcross, a, &o)
 		v, rule := o.decide()
-		a.alternative(v, Cause{Kind: CauseOtherSide, Name: a.plateAcross, Rule: rule, Limit: v.limit}, o.zone)
+		a.alternative(v.label, Cause{Kind: CauseOtherSide, Name: a.plateAcross, Rule: rule, Limit: v.limit}, o.zone)
 	}
 
 	a.Confidence = High
@@ -76,61 +90,107 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	}
 }
 
-// vary moves every distance, the site and every limit by one σ either way, one
-// at a time, and notes each other label that is met.
+// control gives the boundary that decides: the rule's own, or the nearest that
+// the deciding slab goes down from.
+func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
+	switch {
+	case v.by != noSource:
+		a.IsControlled = true
+		a.Controlling = l.boundaryAnswer(a, e.hit[v.by])
+	case v.slab >= 0 && !math.IsInf(e.slabs[v.slab].trenchKm, 1):
+		a.IsControlled = true
+		a.Controlling = l.boundaryAnswer(a, e.slabs[v.slab].trench)
+	}
+}
+
+// vary moves every distance, every slab's depth, the site and every limit by one
+// σ either way, one at a time, and notes each other label that is met.
 func (e *evidence) vary(a *Answer) {
 	try := func(c Cause) {
 		v, rule := e.decide()
 		if v.label != a.Label {
 			c.Rule, c.Limit = rule, v.limit
-			a.alternative(v, c, e.zone)
+			a.alternative(v.label, c, e.zone)
 		}
 	}
 	for s := range sources {
-		km := e.km[s]
-		if math.IsInf(km, 1) {
-			continue
+		e.varyOne(&e.km[s], e.sigma[s], Cause{Kind: CauseDistance}, e.nameOf(s), try)
+		e.varyOne(&e.km[s], a.Site.sigmaKm(), Cause{Kind: CauseSite}, e.nameOf(s), try)
+	}
+	for i := range e.slabs[:e.nSlabs] {
+		s := &e.slabs[i]
+		e.varyOne(&s.z, s.sigma, Cause{Kind: CauseDepth}, s.slab.Name, try)
+		if !math.IsInf(s.trenchKm, 1) {
+			e.varyOne(&s.trenchKm, s.trench.Boundary.SigmaKm(), Cause{Kind: CauseDistance}, s.trench.Boundary.Name(), try)
 		}
-		for _, c := range [...]Cause{{Kind: CauseDistance, By: e.sigma[s]}, {Kind: CauseSite, By: a.Site.sigmaKm()}} {
-			if c.By == 0 {
-				continue
-			}
-			c.Name = e.hit[s].Boundary.Name()
-			for _, sign := range [...]float64{1, -1} {
-				e.km[s] = max(0, km+sign*c.By)
-				try(Cause{Kind: c.Kind, By: sign * c.By, Name: c.Name})
-			}
-		}
-		e.km[s] = km
 	}
 	for i := range Limits {
-		value := e.limit[i]
-		for _, sign := range [...]float64{1, -1} {
-			e.limit[i] = value + sign*Limits[i].Sigma
-			try(Cause{Kind: CauseLimit, By: sign * Limits[i].Sigma, Name: Limits[i].Name})
+		e.varyOne(&e.limit[i], Limits[i].Sigma, Cause{Kind: CauseLimit}, Limits[i].Name, try)
+	}
+}
+
+func (e *evidence) nameOf(s int) string {
+	if math.IsInf(e.km[s], 1) {
+		return ""
+	}
+	return e.hit[s].Boundary.Name()
+}
+
+// varyOne moves one quantity by σ either way, tries the rules, and puts it back.
+func (e *evidence) varyOne(x *float64, sigma float64, c Cause, name string, try func(Cause)) {
+	value := *x
+	if sigma == 0 || math.IsInf(value, 1) {
+		return
+	}
+	c.Name = name
+	for _, by := range [...]float64{sigma, -sigma} {
+		*x, c.By = max(0, value+by), by
+		try(c)
+	}
+	*x = value
+}
+
+// pastEnds notes what a slab past whose lateral end the site lies would make of it.
+func (e *evidence) pastEnds(a *Answer) {
+	for i := range e.slabs[:e.nSlabs] {
+		s := &e.slabs[i]
+		if s.beyond != slab.PastEnd || s.slab.Kind != slab.Subduction || s.outKm > e.limit[limitPastRim] {
+			continue
 		}
-		e.limit[i] = value
+		if label, _, limit := e.slabLabel(s); label != NoLabel {
+			a.alternative(label, Cause{Kind: CauseSlabEnd, By: s.outKm, Name: s.slab.Name, Rule: ruleSlabDepth, Limit: limit}, e.zone)
+		}
 	}
 }
 
 // alternative notes a label met, once.
-func (a *Answer) alternative(v verdict, c Cause, zone ZoneKind) {
-	if v.label == a.Label {
+func (a *Answer) alternative(label Label, c Cause, zone ZoneKind) {
+	if label == a.Label {
 		return
 	}
 	for _, have := range a.Alternatives.All() {
-		if have.Label == v.label {
+		if have.Label == label {
 			return
 		}
 	}
-	a.Alternatives.add(Alternative{v.label, v.label.family(zone), c})
+	a.Alternatives.add(Alternative{label, label.family(zone), c})
 }
 
 // reason puts a verdict's numbers together.
 func (e *evidence) reason(v verdict, rule RuleID) Reason {
-	r := Reason{Rule: rule, Limit: v.limit, AgeMyr: math.NaN()}
-	if v.by != noSource {
-		r.Boundary, r.Km, r.LimitVal = e.hit[v.by].Boundary, e.km[v.by], e.limit[v.limit]
+	r := Reason{Rule: rule, Limit: v.limit, LimitVal: e.limit[v.limit], AgeMyr: math.NaN()}
+	switch {
+	case v.by != noSource:
+		r.Boundary, r.Km = e.hit[v.by].Boundary, e.km[v.by]
+	case v.slab >= 0:
+		s := &e.slabs[v.slab]
+		r.Slab, r.DepthKm, r.SigmaKm, r.PastKm = s.slab, s.z, s.sigma, s.outKm
+		if !math.IsInf(s.trenchKm, 1) {
+			r.Boundary, r.Km = s.trench.Boundary, s.trenchKm
+		}
+		if v.limit == limitArcMin {
+			r.LimitVal *= s.slab.ArcMinDepthKm
+		}
 	}
 	switch rule {
 	case ruleTrench:

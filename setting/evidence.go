@@ -19,8 +19,8 @@ const (
 	sourceRift       source = 5
 	sourceConvergent source = 6
 	sourceCollision  source = 7
-	numSources              = 8
-	noSource         source = numSources
+	numSources       source = 8
+	noSource                = numSources
 )
 
 // sources says where to look for each.
@@ -28,16 +28,15 @@ var sources = [numSources]struct {
 	kind    boundary.Type
 	role    boundary.Role
 	reachKm float64
-	name    string
 }{
-	{boundary.Subduction, boundary.Overriding, 800, "subduction boundary, on the overriding plate"},
-	{boundary.Subduction, boundary.Subducting, 300, "subduction boundary, on the subducting plate"},
-	{boundary.SpreadingRidge, boundary.Bounding, 500, "spreading ridge"},
-	{boundary.OceanicTransform, boundary.Bounding, 100, "oceanic transform"},
-	{boundary.ContinentalTransform, boundary.Bounding, 150, "continental transform"},
-	{boundary.ContinentalRift, boundary.Bounding, 200, "continental rift"},
-	{boundary.OceanicConvergent, boundary.Bounding, 250, "oceanic convergence"},
-	{boundary.ContinentalConvergent, boundary.Bounding, 800, "continental convergence"},
+	{boundary.Subduction, boundary.Overriding, 700},
+	{boundary.Subduction, boundary.Subducting, 250},
+	{boundary.SpreadingRidge, boundary.Bounding, 500},
+	{boundary.OceanicTransform, boundary.Bounding, 150},
+	{boundary.ContinentalTransform, boundary.Bounding, 160},
+	{boundary.ContinentalRift, boundary.Bounding, 200},
+	{boundary.OceanicConvergent, boundary.Bounding, 250},
+	{boundary.ContinentalConvergent, boundary.Bounding, 800},
 }
 
 // evidence is all that the rules compare, for one plate.
@@ -47,10 +46,16 @@ type evidence struct {
 	limit [numLimits]float64
 	hit   [numSources]boundary.Hit
 
-	flankKmPerMyr float64 // half spreading rate along the direction of spreading; NaN where unknown
+	flankKmPerMyr float64 // half spreading rate; NaN where unknown
 	flankCos      float64 // distance along the spreading direction = km × flankCos
+	onLand        bool    // the site lies on land near a spreading ridge
+	trenchSquare  float64 // sine of the angle between the trench and the line of sight: 1 square to it
+	trenchHasSlab bool    // a slab surface goes down from the nearest trench
 	collisionSide side
 	zone          ZoneKind
+
+	slabs  [maxSlabs]slabEvidence
+	nSlabs int
 }
 
 // side says on which side of a convergent boundary the plate is.
@@ -63,11 +68,11 @@ const (
 )
 
 // gather collects the evidence for a plate at a place.
-func (l *Lookup) gather(p boundary.Place, plate string, zone *Zone, e *evidence) {
+func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) {
 	e.limit = limitValues()
 	e.zone = NoKind
-	if zone != nil {
-		e.zone = zone.Kind
+	if a.Zone != nil {
+		e.zone = a.Zone.Kind
 	}
 	for s := range sources {
 		src := &sources[s]
@@ -78,17 +83,36 @@ func (l *Lookup) gather(p boundary.Place, plate string, zone *Zone, e *evidence)
 		}
 		e.hit[s], e.km[s], e.sigma[s] = hit, hit.DistanceKm, hit.Boundary.SigmaKm()
 	}
-	e.gatherFlank(l, plate)
+	e.gatherTrench(l, p)
+	e.gatherFlank(l, p, plate)
 	e.gatherCollision(plate)
+	e.gatherSlabs(l, p)
+}
+
+// gatherTrench works out how squarely the nearest trench is seen, and whether a
+// slab surface goes down from it.
+func (e *evidence) gatherTrench(l *Lookup, p boundary.Place) {
+	e.trenchSquare, e.trenchHasSlab = 1, false
+	if math.IsInf(e.km[sourceOverriding], 1) {
+		return
+	}
+	h := &e.hit[sourceOverriding]
+	e.trenchHasSlab = l.m.slabOf[h.Boundary.ID()]
+	sight := p.Vec.Sub(h.NearestVec.Scale(p.Vec.Dot(h.NearestVec)))
+	if n := sight.Norm(); n > 0 {
+		c := sight.Dot(h.Along) / n
+		e.trenchSquare = math.Sqrt(math.Max(0, 1-c*c))
+	}
 }
 
 // gatherFlank works out how fast the sea floor moves away from the nearest
 // ridge, and how much of the distance to it lies along that direction.
-func (e *evidence) gatherFlank(l *Lookup, plate string) {
+func (e *evidence) gatherFlank(l *Lookup, p boundary.Place, plate string) {
 	e.flankKmPerMyr, e.flankCos = math.NaN(), 1
 	if math.IsInf(e.km[sourceRidge], 1) {
 		return
 	}
+	e.onLand = l.m.landAt(p.Vec)
 	h := &e.hit[sourceRidge]
 	across, _ := h.Boundary.Opposite(plate)
 	m := l.relative(across, plate, h)

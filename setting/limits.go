@@ -10,20 +10,28 @@ const (
 	limitOceanTransform  LimitID = 2
 	limitLandTransform   LimitID = 3
 	limitRift            LimitID = 4
-	limitForearc         LimitID = 5
-	limitArc             LimitID = 6
-	limitBackArc         LimitID = 7
-	limitOuterRise       LimitID = 8
-	limitFlankAge        LimitID = 9
-	limitFlank           LimitID = 10
-	limitConvergent      LimitID = 11
-	limitCollisionUpper  LimitID = 12
-	limitCollisionLower  LimitID = 13
-	limitCollisionEither LimitID = 14
-	limitCollisionZone   LimitID = 15
+	limitSpreadingDepth  LimitID = 5
+	limitSlabForearc     LimitID = 6
+	limitArcMin          LimitID = 7
+	limitSlabArc         LimitID = 8
+	limitSlabArcMaybe    LimitID = 9
+	limitSlabBackArc     LimitID = 10
+	limitSlabTrench      LimitID = 11
+	limitPastRim         LimitID = 12
+	limitForearc         LimitID = 13
+	limitArc             LimitID = 14
+	limitBackArc         LimitID = 15
+	limitOuterRise       LimitID = 16
+	limitFlankAge        LimitID = 17
+	limitFlank           LimitID = 18
+	limitConvergent      LimitID = 19
+	limitCollisionUpper  LimitID = 20
+	limitCollisionLower  LimitID = 21
+	limitCollisionEither LimitID = 22
+	limitCollisionZone   LimitID = 23
 )
 
-const numLimits = 16
+const numLimits = 24
 
 // Limit is one number of the rule table with its own uncertainty.
 type Limit struct {
@@ -31,7 +39,7 @@ type Limit struct {
 	Name  string
 	Value float64
 	Sigma float64 // 1σ, in the unit of Value
-	Unit  string  // "km" or "Myr"
+	Unit  string  // "km", "Myr" or "×"
 	Why   string  // where the number comes from
 }
 
@@ -45,6 +53,14 @@ var Limits = [numLimits]Limit{
 	{limitOceanTransform, "transform_oceanic", 30, 30 * fifteen, "km", "common practice: width of a fracture zone's valley and ridges"},
 	{limitLandTransform, "transform_continental", 50, 50 * fifteen, "km", "common practice: width of a continental fault system"},
 	{limitRift, "rift", 75, 75 * fifteen, "km", "common practice: rift valley and shoulders"},
+	{limitSpreadingDepth, "back_arc_spreading_depth", 40, 40 * fifteen, "km", "depth of the slab's top; common practice: thicker than the upper plate's crust"},
+	{limitSlabForearc, "slab_forearc", 60, 60 * fifteen, "km", "depth of the slab's top; common practice"},
+	{limitArcMin, "slab_arc_min", 1, fifteen, "×", "times the slab's own arc_min_depth_km, 60 to 100 km"},
+	{limitSlabArc, "slab_arc", 170, 170 * fifteen, "km", "depth of the slab's top; segments of arcs lie 70 to 170 km above it (Syracuse and Abers 2006)"},
+	{limitSlabArcMaybe, "slab_arc_maybe", 240, 240 * fifteen, "km", "depth of the slab's top; 95th percentile of Holocene arc volcanoes"},
+	{limitSlabBackArc, "slab_back_arc", 350, 350 * fifteen, "km", "depth of the slab's top; common practice"},
+	{limitSlabTrench, "slab_trench", 550, 550 * fifteen, "km", "distance from the trench; common practice"},
+	{limitPastRim, "slab_past_rim", 100, 100 * fifteen, "km", "common practice: how far the depth at the down-dip rim says something"},
 	{limitForearc, "forearc", 140, 40, "km", "volcanic front 103 to 353 km from the trench in the 5th to 95th percentile of Holocene arc volcanoes"},
 	{limitArc, "volcanic_arc", 350, 40, "km", "as for the forearc"},
 	{limitBackArc, "back_arc", 550, 40, "km", "common practice"},

@@ -95,15 +95,26 @@ func (l *Lookup) reset(s Site, a *Answer) {
 	a.Reasons.clear()
 	a.Alternatives.clear()
 	a.Nearby.clear()
+	a.Slabs.clear()
 	a.Notes.clear()
 	a.NearJunction, a.IsControlled = false, false
 }
 
-// boundaryAnswer adds σ and the motion to a hit on a boundary of the site's plate.
+// boundaryAnswer adds σ and the motion to a hit on a boundary. The motion is seen
+// from the site's plate; where the boundary does not bound that, as may be with
+// the trench of a slab, from the plate that does not go down.
 func (l *Lookup) boundaryAnswer(a *Answer, h boundary.Hit) BoundaryAnswer {
 	out := BoundaryAnswer{Hit: h, SigmaKm: math.Hypot(h.Boundary.SigmaKm(), a.Site.sigmaKm())}
-	across, _ := h.Boundary.Opposite(a.Plate.Code)
-	out.Motion = l.relative(across, a.Plate.Code, &h)
+	from := a.Plate.Code
+	across, ok := h.Boundary.Opposite(from)
+	if !ok {
+		from = h.Boundary.Left()
+		if from == h.Boundary.Subducting() {
+			from = h.Boundary.Right()
+		}
+		across, _ = h.Boundary.Opposite(from)
+	}
+	out.Motion = l.relative(across, from, &h)
 	return out
 }
 

@@ -7,6 +7,7 @@ import (
 
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/motion"
+	"nearmargin/setting/slab"
 	"nearmargin/setting/sphere"
 )
 
@@ -33,6 +34,8 @@ type Contents struct {
 	DefaultMotion               string
 	Zones                       []*Zone
 	Hotspots                    []Hotspot
+	Slabs                       []*slab.Slab
+	Land                        []*Land // land near spreading ridges
 }
 
 // Model is one edition of everything that an answer rests on.
@@ -43,10 +46,16 @@ type Model struct {
 	motions   map[string]*motion.Model
 	junctions []Junction
 	hotspots  []sphere.Vec
+	// slabGroups holds, for each slab, the boundaries it goes down from; slabOf says
+	// of which boundaries there is a slab.
+	slabGroups []*boundary.Group
+	slabOf     map[string]bool
 }
 
 // NewModel checks that the parts fit together and builds a model from them.
 func NewModel(c Contents) (*Model, error) {
+	c.Slabs = slices.Clone(c.Slabs)
+	slices.SortFunc(c.Slabs, func(a, b *slab.Slab) int { return strings.Compare(a.ID, b.ID) })
 	m := &Model{c: c, plates: map[string]*Plate{}, motions: map[string]*motion.Model{}}
 	switch {
 	case c.ID == "" || strings.ContainsAny(c.ID, "@/ "):
@@ -86,11 +95,40 @@ func NewModel(c Contents) (*Model, error) {
 	if m.motions[c.DefaultMotion] == nil {
 		return nil, fmt.Errorf("the default motion model %q is not among the model's: %s", c.DefaultMotion, strings.Join(m.MotionNames(), ", "))
 	}
+	if err := m.tieSlabs(); err != nil {
+		return nil, err
+	}
 	m.nameJunctions()
 	for _, h := range c.Hotspots {
 		m.hotspots = append(m.hotspots, sphere.FromLonLat(h.At))
 	}
 	return m, nil
+}
+
+// tieSlabs ties each slab to its boundaries and plates.
+func (m *Model) tieSlabs() error {
+	m.slabOf = map[string]bool{}
+	ids := map[string]bool{}
+	for _, s := range m.c.Slabs {
+		if ids[s.ID] {
+			return fmt.Errorf("slab %q stands twice", s.ID)
+		}
+		ids[s.ID] = true
+		for _, code := range [...]string{s.Subducting, s.Overriding} {
+			if m.plates[code] == nil {
+				return fmt.Errorf("slab %q: plate %q is not in the table of plates", s.ID, code)
+			}
+		}
+		g, err := m.network.Group(s.BoundaryIDs)
+		if err != nil {
+			return fmt.Errorf("slab %q: boundary_ids: %w", s.ID, err)
+		}
+		m.slabGroups = append(m.slabGroups, g)
+		for _, id := range s.BoundaryIDs {
+			m.slabOf[id] = true
+		}
+	}
+	return nil
 }
 
 // nameJunctions names the network's triple junctions: as the model says, else
@@ -145,6 +183,12 @@ func (m *Model) Zones() []*Zone { return slices.Clone(m.c.Zones) }
 
 // Hotspots returns the hotspots.
 func (m *Model) Hotspots() []Hotspot { return slices.Clone(m.c.Hotspots) }
+
+// Slabs returns the slabs. They must not be changed.
+func (m *Model) Slabs() []*slab.Slab { return slices.Clone(m.c.Slabs) }
+
+// Land returns the outlines of land near spreading ridges.
+func (m *Model) Land() []*Land { return slices.Clone(m.c.Land) }
 
 // DefaultMotion returns the name of the motion model used where none is asked for.
 func (m *Model) DefaultMotion() string { return m.c.DefaultMotion }

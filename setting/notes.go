@@ -24,8 +24,16 @@ func (l *Lookup) addNotes(a *Answer) {
 	if a.Zone != nil && a.Nearest.Motion.Known {
 		a.Notes.add(Note{NoteZoneTotal, a.Zone.Name, ""})
 	}
-	if a.IsControlled && a.Family == SubductionFamily {
-		a.Notes.add(Note{Code: NoteNoSlabs})
+	if a.IsControlled {
+		if b := a.Controlling.Boundary; b.Left() != a.Plate.Code && b.Right() != a.Plate.Code {
+			a.Notes.add(Note{NoteOtherPlates, b.Left(), b.Right()})
+		}
+		if a.Family == SubductionFamily && len(l.m.c.Slabs) == 0 {
+			a.Notes.add(Note{Code: NoteNoSlabs})
+		}
+	}
+	if d := a.Site.DepthKm; a.Slabs.Len() > 0 && (d == 10 || d == 33) {
+		a.Notes.add(Note{Code: NoteFixedDepth})
 	}
 	a.Notes.add(Note{Code: NoteScreening})
 }

@@ -1,25 +1,29 @@
 package setting
 
-import "math"
+import (
+	"math"
+
+	"nearmargin/setting/slab"
+)
 
 // RuleID names a rule; answers and the printed table use it.
 type RuleID uint8
 
-// The rules, in the order in which they are tried. Rules on slabs take their
-// place between ruleOnBoundary and ruleTrenchDistance.
+// The rules, in the order in which they are tried.
 const (
 	ruleTrench         RuleID = 0
 	ruleOnBoundary     RuleID = 1
-	ruleTrenchDistance RuleID = 2
-	ruleOuterRise      RuleID = 3
-	ruleRidgeFlank     RuleID = 4
-	ruleConvergent     RuleID = 5
-	ruleCollision      RuleID = 6
-	ruleZone           RuleID = 7
-	ruleInterior       RuleID = 8
+	ruleSlabDepth      RuleID = 2
+	ruleTrenchDistance RuleID = 3
+	ruleOuterRise      RuleID = 4
+	ruleRidgeFlank     RuleID = 5
+	ruleConvergent     RuleID = 6
+	ruleCollision      RuleID = 7
+	ruleZone           RuleID = 8
+	ruleInterior       RuleID = 9
 )
 
-const numRules = 9
+const numRules = 10
 
 // Rule is one row of the rule table.
 type Rule struct {
@@ -34,34 +38,46 @@ type Rule struct {
 // verdict is what a rule decides.
 type verdict struct {
 	label   Label
-	by      source  // the boundary that decides; noSource in an interior
+	also    Label   // another label that the rule itself allows; NoLabel for none
+	by      source  // the boundary that decides; noSource where a slab or nothing does
+	slab    int     // the slab that decides, an index into evidence.slabs; -1 for none
 	limit   LimitID // the limit compared with
 	neverHi bool    // the rule allows medium confidence at the most
 }
+
+// decided returns a verdict by a boundary.
+func decided(label Label, by source, limit LimitID) (verdict, bool) {
+	return verdict{label: label, by: by, slab: -1, limit: limit}, true
+}
+
+var undecided = verdict{by: noSource, slab: -1}
 
 // Rules is the rule table: the first rule that decides gives the label.
 var Rules = [numRules]Rule{
 	{ruleTrench, "trench", []Label{Trench}, []LimitID{limitTrench},
 		"within the larger of the limit and 1σ of a subduction boundary", decideTrench},
-	{ruleOnBoundary, "on_boundary", []Label{RidgeAxis, TransformZone, ContinentalRift},
-		[]LimitID{limitRidgeAxis, limitOceanTransform, limitLandTransform, limitRift},
-		"within the limit of a spreading ridge, transform or rift; of several the smallest distance/limit, a ridge or rift before a transform where the two are equal within 1σ", decideOnBoundary},
+	{ruleOnBoundary, "on_boundary", []Label{RidgeAxis, TransformZone, ContinentalRift, BackArcSpreading},
+		[]LimitID{limitRidgeAxis, limitOceanTransform, limitLandTransform, limitRift, limitSpreadingDepth},
+		"within the limit of a spreading ridge, transform or rift; of several the smallest distance/limit, a ridge or rift before a transform where the two are equal within 1σ. Over a subducting slab a ridge is back-arc spreading where the slab is deeper than the limit, and a transform or rift decides only within its 1σ", decideOnBoundary},
+	{ruleSlabDepth, "slab_depth", []Label{Forearc, VolcanicArc, BackArc},
+		[]LimitID{limitSlabForearc, limitArcMin, limitSlabArc, limitSlabArcMaybe, limitSlabBackArc, limitSlabTrench, limitPastRim},
+		"over a subducting slab, by the depth of its top; of two slabs one in the arc band decides, else the shallowest. Past the down-dip rim the rim's depth counts, up to the limit and never high; past a lateral end it gives an alternative", decideSlab},
 	{ruleTrenchDistance, "trench_distance", []Label{Forearc, VolcanicArc, BackArc},
 		[]LimitID{limitForearc, limitArc, limitBackArc},
-		"on the overriding side of a subduction boundary, by distance from the trench (no slab surface is known)", decideTrenchDistance},
+		"on the overriding side of a subduction boundary, by distance from the trench where no slab surface is known; where one is, only between the trench and its start", decideTrenchDistance},
 	{ruleOuterRise, "outer_rise", []Label{OuterRise}, []LimitID{limitOuterRise},
 		"on the subducting plate, seaward of the trench", decideOuterRise},
 	{ruleRidgeFlank, "ridge_flank", []Label{RidgeFlank}, []LimitID{limitFlankAge, limitFlank},
-		"sea floor younger than the limit at half the spreading rate, measured along the spreading direction, within the limit of the ridge", decideRidgeFlank},
+		"sea floor younger than the limit at half the spreading rate, measured along the spreading direction, within the limit of the ridge; on land never high", decideRidgeFlank},
 	{ruleConvergent, "convergent_margin", []Label{ConvergentMargin}, []LimitID{limitConvergent},
 		"within the limit of oceanic convergence", decideConvergent},
 	{ruleCollision, "collision_zone", []Label{CollisionZone},
 		[]LimitID{limitCollisionUpper, limitCollisionLower, limitCollisionEither, limitCollisionZone},
-		"within the limit of continental convergence for the side the site is on, or in a diffuse zone of kind collision with such a boundary within the limit", decideCollision},
+		"within the limit of continental convergence for the side the site is on, above a collision slab, or in a diffuse zone of kind collision with such a boundary within the limit", decideCollision},
 	{ruleZone, "deforming_zone", []Label{DeformingZone}, nil,
 		"inside another zone of diffuse deformation; the family follows its kind", decideZone},
 	{ruleInterior, "plate_interior", []Label{PlateInterior}, nil,
-		"none of the above; earthquakes and volcanism within plates are possible all the same", decideInterior},
+		"none of the above; inside a zone or near a hotspot never high. Earthquakes and volcanism within plates are possible all the same", decideInterior},
 }
 
 // decide runs the rules in order and returns the first verdict.
@@ -71,7 +87,7 @@ func (e *evidence) decide() (verdict, RuleID) {
 			return v, RuleID(i)
 		}
 	}
-	return verdict{label: PlateInterior, by: noSource}, ruleInterior
+	return undecided, ruleInterior // not reached: the last rule always decides
 }
 
 func decideTrench(e *evidence) (verdict, bool) {
@@ -80,9 +96,9 @@ func decideTrench(e *evidence) (verdict, bool) {
 		s = sourceSubducting
 	}
 	if e.km[s] <= max(e.limit[limitTrench], e.sigma[s]) {
-		return verdict{label: Trench, by: s, limit: limitTrench}, true
+		return decided(Trench, s, limitTrench)
 	}
-	return verdict{}, false
+	return undecided, false
 }
 
 // onBoundary pairs each source that rule 2 looks at with its limit and label,
@@ -100,11 +116,18 @@ var onBoundary = [...]struct {
 }
 
 func decideOnBoundary(e *evidence) (verdict, bool) {
+	over := e.decidingSlab()
+	if over >= 0 && e.slabs[over].beyond != slab.NotBeyond {
+		over = -1
+	}
 	best, bestRatio := -1, math.Inf(1)
 	for i := range onBoundary {
 		c := &onBoundary[i]
 		ratio := e.km[c.by] / e.limit[c.limit]
 		if ratio > 1 {
+			continue
+		}
+		if over >= 0 && !e.overSlab(c.by, over) {
 			continue
 		}
 		if best >= 0 && c.fault && !onBoundary[best].fault {
@@ -116,43 +139,98 @@ func decideOnBoundary(e *evidence) (verdict, bool) {
 		}
 	}
 	if best < 0 {
-		return verdict{}, false
+		return undecided, false
 	}
 	c := &onBoundary[best]
-	return verdict{label: c.label, by: c.by, limit: c.limit}, true
+	v := verdict{label: c.label, by: c.by, slab: -1, limit: c.limit}
+	if over >= 0 {
+		if c.by == sourceRidge {
+			v.label = BackArcSpreading
+		} else {
+			v.also, _, _ = e.slabLabel(&e.slabs[over])
+		}
+	}
+	return v, true
 }
 
+// overSlab reports whether a boundary may decide although a slab is below: a
+// ridge where the slab is deep enough, a rift or transform within its own 1σ.
+func (e *evidence) overSlab(by source, over int) bool {
+	if by == sourceRidge {
+		return e.slabs[over].z > e.limit[limitSpreadingDepth]
+	}
+	return e.km[by] <= e.sigma[by]
+}
+
+func decideSlab(e *evidence) (verdict, bool) {
+	i := e.decidingSlab()
+	if i < 0 {
+		return undecided, false
+	}
+	s := &e.slabs[i]
+	label, also, limit := e.slabLabel(s)
+	if label == NoLabel {
+		return undecided, false
+	}
+	return verdict{label: label, also: also, by: noSource, slab: i, limit: limit, neverHi: s.beyond != slab.NotBeyond}, true
+}
+
+// minTrenchSquare is the sine of the smallest angle between a trench and the line
+// of sight to it at which distance from the trench says something: a place off
+// the end of a trench is not above its slab.
+const minTrenchSquare = 0.75
+
 func decideTrenchDistance(e *evidence) (verdict, bool) {
+	if e.trenchSquare < minTrenchSquare {
+		return undecided, false
+	}
+	if e.trenchHasSlab && !e.beforeSlab() {
+		return undecided, false
+	}
 	for _, band := range [...]struct {
 		limit LimitID
 		label Label
 	}{{limitForearc, Forearc}, {limitArc, VolcanicArc}, {limitBackArc, BackArc}} {
 		if e.km[sourceOverriding] < e.limit[band.limit] {
-			return verdict{label: band.label, by: sourceOverriding, limit: band.limit}, true
+			return decided(band.label, sourceOverriding, band.limit)
+		}
+		if e.trenchHasSlab { // up the dip from where the slab is known
+			break
 		}
 	}
-	return verdict{}, false
+	return undecided, false
+}
+
+// beforeSlab reports whether the site lies up the dip of a slab that is known,
+// between the trench and its first contour.
+func (e *evidence) beforeSlab() bool {
+	for i := range e.slabs[:e.nSlabs] {
+		if e.slabs[i].beyond == slab.BeforeStart {
+			return true
+		}
+	}
+	return false
 }
 
 func decideOuterRise(e *evidence) (verdict, bool) {
 	if e.km[sourceSubducting] <= e.limit[limitOuterRise] {
-		return verdict{label: OuterRise, by: sourceSubducting, limit: limitOuterRise}, true
+		return decided(OuterRise, sourceSubducting, limitOuterRise)
 	}
-	return verdict{}, false
+	return undecided, false
 }
 
 func decideRidgeFlank(e *evidence) (verdict, bool) {
 	if e.km[sourceRidge] <= e.limit[limitFlank] && e.flankAge() < e.limit[limitFlankAge] { // false for NaN
-		return verdict{label: RidgeFlank, by: sourceRidge, limit: limitFlankAge}, true
+		return verdict{label: RidgeFlank, by: sourceRidge, slab: -1, limit: limitFlankAge, neverHi: e.onLand}, true
 	}
-	return verdict{}, false
+	return undecided, false
 }
 
 func decideConvergent(e *evidence) (verdict, bool) {
 	if e.km[sourceConvergent] <= e.limit[limitConvergent] {
-		return verdict{label: ConvergentMargin, by: sourceConvergent, limit: limitConvergent}, true
+		return decided(ConvergentMargin, sourceConvergent, limitConvergent)
 	}
-	return verdict{}, false
+	return undecided, false
 }
 
 func decideCollision(e *evidence) (verdict, bool) {
@@ -163,19 +241,35 @@ func decideCollision(e *evidence) (verdict, bool) {
 	case sideLower:
 		limit = limitCollisionLower
 	}
-	if e.km[sourceCollision] > e.limit[limit] && e.zone == CollisionKind {
-		limit = limitCollisionZone
-	}
 	if e.km[sourceCollision] <= e.limit[limit] {
-		return verdict{label: CollisionZone, by: sourceCollision, limit: limit}, true
+		return decided(CollisionZone, sourceCollision, limit)
 	}
-	return verdict{}, false
+	for i := range e.slabs[:e.nSlabs] {
+		if s := &e.slabs[i]; s.slab.Kind == slab.Collision && s.beyond == slab.NotBeyond {
+			return verdict{label: CollisionZone, by: noSource, slab: i}, true
+		}
+	}
+	if e.zone == CollisionKind && e.km[sourceCollision] <= e.limit[limitCollisionZone] {
+		return decided(CollisionZone, sourceCollision, limitCollisionZone)
+	}
+	return undecided, false
 }
 
 func decideZone(e *evidence) (verdict, bool) {
-	return verdict{label: DeformingZone, by: noSource}, e.zone != NoKind
+	return verdict{label: DeformingZone, also: e.deepSlab(), by: noSource, slab: -1}, e.zone != NoKind
 }
 
 func decideInterior(e *evidence) (verdict, bool) {
-	return verdict{label: PlateInterior, by: noSource}, true
+	return verdict{label: PlateInterior, also: e.deepSlab(), by: noSource, slab: -1}, true
+}
+
+// deepSlab returns BackArc where a slab is below that is too deep or too far to
+// decide, else NoLabel.
+func (e *evidence) deepSlab() Label {
+	if i := e.decidingSlab(); i >= 0 {
+		if label, also, _ := e.slabLabel(&e.slabs[i]); label == NoLabel {
+			return also
+		}
+	}
+	return NoLabel
 }

@@ -14,10 +14,12 @@ func (r *Reason) Text() string { return string(r.AppendText(nil)) }
 
 // AppendText appends what Text returns.
 func (r *Reason) AppendText(b []byte) []byte {
-	if r.Boundary == nil {
-		if r.Rule == ruleZone {
-			return append(b, "inside a zone of diffuse deformation"...)
-		}
+	switch {
+	case r.Slab != nil:
+		return r.appendSlab(b)
+	case r.Boundary == nil && r.Rule == ruleZone:
+		return append(b, "inside a zone of diffuse deformation"...)
+	case r.Boundary == nil:
 		return append(b, "farther from every boundary than its rule reaches; earthquakes and volcanism within plates are possible all the same"...)
 	}
 	switch r.Rule {
@@ -26,14 +28,14 @@ func (r *Reason) AppendText(b []byte) []byte {
 	case ruleOuterRise:
 		b = append(b, "on the subducting plate, "...)
 	}
-	b = strconv.AppendFloat(b, r.Km, 'f', 1, 64)
-	b = append(b, " km from "...)
+	b = appendKm(b, r.Km, 1)
+	b = append(b, " from "...)
 	b = append(b, r.Boundary.Name()...)
 	switch r.Rule {
 	case ruleRidgeFlank:
 		b = append(b, ": at half the present spreading rate the sea floor is "...)
 		b = strconv.AppendFloat(b, r.AgeMyr, 'f', 1, 64)
-		b = append(b, " Myr old, less than "...)
+		b = append(b, " Myr old; the limit is "...)
 		b = strconv.AppendFloat(b, r.LimitVal, 'f', 0, 64)
 		return append(b, " Myr"...)
 	case ruleConvergent:
@@ -43,12 +45,44 @@ func (r *Reason) AppendText(b []byte) []byte {
 		b = append(b, article(r.Boundary.Type())...)
 	}
 	b = append(b, "; the limit is "...)
-	b = strconv.AppendFloat(b, r.LimitVal, 'f', 0, 64)
-	b = append(b, " km"...)
+	b = appendKm(b, r.LimitVal, 0)
 	if r.Rule == ruleTrenchDistance {
-		b = append(b, ", and no slab surface is known here"...)
+		b = append(b, ", and no slab surface is known below"...)
 	}
 	return b
+}
+
+// appendSlab is AppendText where a slab decided.
+func (r *Reason) appendSlab(b []byte) []byte {
+	if r.PastKm > 0 {
+		b = appendKm(b, r.PastKm, 1)
+		b = append(b, " past the down-dip rim of slab "...)
+		b = append(b, r.Slab.Name...)
+		b = append(b, ", whose top is there at "...)
+	} else {
+		b = append(b, "the top of slab "...)
+		b = append(b, r.Slab.Name...)
+		b = append(b, " lies at "...)
+	}
+	b = strconv.AppendFloat(b, r.DepthKm, 'f', 0, 64)
+	b = append(b, " ± "...)
+	b = strconv.AppendFloat(b, r.SigmaKm, 'f', 0, 64)
+	b = append(b, " km depth"...)
+	if r.Rule == ruleSlabDepth {
+		b = append(b, "; the limit is "...)
+		b = appendKm(b, r.LimitVal, 0)
+	}
+	if r.Boundary != nil {
+		b = append(b, "; "...)
+		b = appendKm(b, r.Km, 1)
+		b = append(b, " from "...)
+		b = append(b, r.Boundary.Name()...)
+	}
+	return b
+}
+
+func appendKm(b []byte, km float64, decimals int) []byte {
+	return append(strconv.AppendFloat(b, km, 'f', decimals, 64), " km"...)
 }
 
 // article names a type of boundary as a noun.
@@ -82,6 +116,12 @@ func (a *Alternative) Text() string {
 		return fmt.Sprintf("met with the site %.1f km %s %s (1σ of the site)", math.Abs(c.By), map[bool]string{true: "farther from", false: "nearer to"}[c.By > 0], c.Name)
 	case CauseLimit:
 		return fmt.Sprintf("met with the limit %q moved by %+.3g %s (1σ of the limit)", c.Name, c.By, limitUnit(c.Name))
+	case CauseDepth:
+		return fmt.Sprintf("met with the top of slab %s %.0f km %s (1σ of its depth)", c.Name, math.Abs(c.By), map[bool]string{true: "deeper", false: "shallower"}[c.By > 0])
+	case CauseRule:
+		return fmt.Sprintf("the rule %q allows both here", Rules[c.Rule].Name)
+	case CauseSlabEnd:
+		return fmt.Sprintf("%.0f km past the lateral end of slab %s", c.By, c.Name)
 	}
 	return fmt.Sprintf("met on plate %s: the side is uncertain", c.Name)
 }
@@ -125,6 +165,10 @@ func (n *Note) Text() string {
 		return "Longitude and latitude are both 0, which often stands for a missing value."
 	case NoteNoSlabs:
 		return "This edition of the model holds no slab surfaces: near trenches the setting goes by distance."
+	case NoteOtherPlates:
+		return fmt.Sprintf("The controlling boundary lies between plates %s and %s, not on the site's own; its motion is that of the plate that goes down as seen from the other.", n.A, n.B)
+	case NoteFixedDepth:
+		return "Depths of 10 and 33 km are often fixed by convention rather than measured: the relation to the slab may mean nothing."
 	}
 	return string(n.Code)
 }

@@ -72,7 +72,7 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 		if err != nil {
 			return st, csvFault(err)
 		}
-		if n := len(row); g.ended && strings.IndexByte(row[n-1], '\n') >= 0 && g.last != '"' {
+		if n := len(row); g.ended && skipped+j.in.InputOffset() == g.read && strings.IndexByte(row[n-1], '\n') >= 0 && g.last != '"' {
 			line, _ := j.in.FieldPos(n - 1)
 			return st, badLine(line, "a quotation mark is not closed; it takes in the rest of the input")
 		}

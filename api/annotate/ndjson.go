@@ -23,7 +23,6 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 	var buf []byte
 	line := 0
 	for sc.Scan() {
-		line++
 		if line%256 == 0 {
 			if err := ctx.Err(); err != nil {
 				return st, err
@@ -32,6 +31,7 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 				o.Progress(st)
 			}
 		}
+		line++
 		raw := sc.Bytes()
 		if line == 1 {
 			raw = bytes.TrimPrefix(raw, byteOrderMark)

@@ -2,6 +2,7 @@ package wire
 
 import (
 	"nearmargin/setting"
+	"nearmargin/setting/slab"
 	"nearmargin/setting/sphere"
 )
 
@@ -30,7 +31,7 @@ func AppendAnswer(b []byte, a *setting.Answer) []byte {
 	o.key("nearby_boundaries")
 	o.b = appendNearby(o.b, a.Nearby.All())
 	o.key("slabs")
-	o.b = append(o.b, "[]"...)
+	o.b = appendSlabs(o.b, a.Slabs.All())
 	o.key("triple_junction")
 	o.b = appendJunction(o.b, a)
 	o.key("diffuse_zone")
@@ -173,6 +174,37 @@ func appendNearby(b []byte, list []setting.Nearby) []byte {
 		b = o.close()
 	}
 	return append(b, ']')
+}
+
+func appendSlabs(b []byte, list []setting.SlabAnswer) []byte {
+	b = append(b, '[')
+	for i := range list {
+		x := &list[i]
+		if i > 0 {
+			b = append(b, ',')
+		}
+		o := open(b)
+		o.str("slab", x.Slab.ID)
+		o.str("name", x.Slab.Name)
+		o.str("kind", x.Slab.Kind.String())
+		o.num("depth_km", x.DepthKm, decimalsDepth)
+		o.num("sigma_km", x.SigmaKm, decimalsSigma)
+		o.num("dip_deg", x.DipDeg, decimalsDeg)
+		o.num("dip_azimuth_deg", roundAzimuth(x.DipAzimuthDeg, 360), decimalsDeg)
+		o.strOrNull("site_relation", relation(x.Relation))
+		o.num("clearance_km", x.ClearanceKm, decimalsDepth)
+		o.num("distance_3d_km", x.Distance3DKm, decimalsDepth)
+		b = o.close()
+	}
+	return append(b, ']')
+}
+
+// relation returns the word for a relation, "" for none.
+func relation(r slab.Relation) string {
+	if r == slab.NoRelation {
+		return ""
+	}
+	return r.String()
 }
 
 func appendJunction(b []byte, a *setting.Answer) []byte {

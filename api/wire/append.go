@@ -10,6 +10,7 @@ import (
 const (
 	decimalsKm       = 2
 	decimalsSigma    = 1
+	decimalsDepth    = 1
 	decimalsDeg      = 1
 	decimalsRate     = 2
 	decimalsPosition = 4

@@ -107,6 +107,10 @@ func (c *Cells) Set(a *setting.Answer) {
 			b = appendMotionCell(b, i, &n.Motion)
 		case colControlID, colControlType, colControlDistance:
 			b = appendControlCell(b, i, a)
+		case colSlab, colSlabDepth, colSlabSigma, colSlabDip, colSiteRelation, colClearance:
+			if a.Slabs.Len() > 0 {
+				b = appendSlabCell(b, i, &a.Slabs.All()[0])
+			}
 		case colDiffuseZone:
 			if a.Zone != nil {
 				b = append(b, a.Zone.Name...)
@@ -171,4 +175,20 @@ func appendControlCell(b []byte, col int, a *setting.Answer) []byte {
 		return append(b, a.Controlling.Boundary.Type().String()...)
 	}
 	return appendRounded(b, a.Controlling.DistanceKm, decimalsKm)
+}
+
+func appendSlabCell(b []byte, col int, s *setting.SlabAnswer) []byte {
+	switch col {
+	case colSlab:
+		return append(b, s.Slab.ID...)
+	case colSlabDepth:
+		return appendRounded(b, s.DepthKm, decimalsDepth)
+	case colSlabSigma:
+		return appendRounded(b, s.SigmaKm, decimalsSigma)
+	case colSlabDip:
+		return appendRounded(b, s.DipDeg, decimalsDeg)
+	case colSiteRelation:
+		return append(b, relation(s.Relation)...)
+	}
+	return appendRounded(b, s.ClearanceKm, decimalsDepth)
 }

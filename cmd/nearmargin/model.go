@@ -36,8 +36,8 @@ func modelCheck(p *program, _ context.Context, f *flags) error {
 			fmt.Fprintf(p.stdout, "plate %s (%s) bounds nothing\n", pl.Code, pl.Name)
 		}
 	}
-	fmt.Fprintf(p.stdout, "%s: %d plates, %d boundaries, %d triple junctions, %d zones, %d hotspots, %d motion models; sha256 %s\n",
-		m.Ref(), len(m.Plates()), len(m.Network().Boundaries()), len(m.Junctions()), len(m.Zones()), len(m.Hotspots()), len(m.MotionNames()), m.SHA256())
+	fmt.Fprintf(p.stdout, "%s: %d plates, %d boundaries, %d triple junctions, %d slabs, %d zones, %d hotspots, %d motion models; sha256 %s\n",
+		m.Ref(), len(m.Plates()), len(m.Network().Boundaries()), len(m.Junctions()), len(m.Slabs()), len(m.Zones()), len(m.Hotspots()), len(m.MotionNames()), m.SHA256())
 	if n := len(faults) + unbounded; n > 0 {
 		return fmt.Errorf("%d faults", n)
 	}

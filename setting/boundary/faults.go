@@ -157,8 +157,7 @@ func (n *Network) partFaults() []Fault {
 	for i := range parent {
 		parent[i] = int32(i)
 	}
-	var root func(i int32) int32
-	root = func(i int32) int32 {
+	root := func(i int32) int32 {
 		for parent[i] != i {
 			parent[i] = parent[parent[i]]
 			i = parent[i]

@@ -105,12 +105,17 @@ func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm floa
 			return Hit{}, false
 		}
 	}
+	return n.nearestIn(n.byType[t], p, f, maxKm)
+}
+
+// nearestIn returns the boundary of a tree that passes and is nearest to a place.
+func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64) (Hit, bool) {
 	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
-	got, ok := n.nearest(n.byType[t], p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
+	got, ok := n.nearest(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
 	if !ok {
 		return Hit{}, false
 	}
-	h := n.refine(n.byType[t], p, f, got)
+	h := n.refine(t, p, f, got)
 	if h.DistanceKm > maxKm {
 		return Hit{}, false
 	}

@@ -1,49 +1,7 @@
 package boundary
 
-import (
-	"math"
+import "nearmargin/setting/sphere"
 
-	"nearmargin/setting/sphere"
-)
-
-// Parts returns the path cut where it crosses ±180°, as GeoJSON wants it: each
-// part stays on one side, and the cuts stand in both, at 180 and -180, with
-// their latitude to six decimals.
-func (b *Boundary) Parts() [][]sphere.LonLat { return cutPath(b.spec.Path) }
-
-func cutPath(path []sphere.LonLat) [][]sphere.LonLat {
-	var out [][]sphere.LonLat
-	part := []sphere.LonLat{path[0]}
-	for i := 1; i < len(path); i++ {
-		a, b := path[i-1], path[i]
-		if math.Abs(b.Lon-part[len(part)-1].Lon) > 180 {
-			switch {
-			case b.Lon == 180: // ends on the edge, coming from the west
-				b.Lon = -180
-			case a.Lon == 180 && len(part) == 1: // starts on the edge
-				part[0].Lon = -180
-			case a.Lon == 180: // a vertex on the edge
-				edge := part[len(part)-1].Lon
-				out = append(out, part)
-				part = []sphere.LonLat{{Lon: -edge, Lat: a.Lat}}
-			default:
-				lat := crossingLat(a, b)
-				edge := math.Copysign(180, part[len(part)-1].Lon)
-				out = append(out, append(part, sphere.LonLat{Lon: edge, Lat: lat}))
-				part = []sphere.LonLat{{Lon: -edge, Lat: lat}}
-			}
-		}
-		part = append(part, b)
-	}
-	return append(out, part)
-}
-
-// crossingLat returns the latitude, to six decimals, at which the arc crosses ±180°.
-func crossingLat(a, b sphere.LonLat) float64 {
-	arc, _ := sphere.NewArc(sphere.FromLonLat(a), sphere.FromLonLat(b))
-	q := arc.N.Cross(sphere.Vec{Y: 1}) // the plane of the meridians 0° and 180° has the normal Y
-	if q.X > 0 {
-		q = q.Scale(-1)
-	}
-	return math.Round(q.Unit().LonLat().Lat*1e6) / 1e6
-}
+// Parts returns the path cut where it crosses ±180°; see
+// [sphere.CutAtAntimeridian].
+func (b *Boundary) Parts() [][]sphere.LonLat { return sphere.CutAtAntimeridian(b.spec.Path) }

@@ -49,7 +49,7 @@ type Bundle struct {
 // fault of one file. A network that is open or inconsistent is no error here;
 // see boundary.Network.Faults.
 func Read(dir fs.FS) (*Bundle, error) {
-	r := reader{dir: dir}
+	r := reader{dir: dir, grids: map[string][]byte{}}
 	c, tables, err := r.contents()
 	if err != nil {
 		return nil, err
@@ -58,7 +58,7 @@ func Read(dir fs.FS) (*Bundle, error) {
 	if err != nil {
 		return nil, err
 	}
-	b := &Bundle{files: map[string][]byte{}}
+	b := &Bundle{files: maps.Clone(r.grids)}
 	if err := b.encode(r.info, m, tables); err != nil {
 		return nil, err
 	}
@@ -68,8 +68,9 @@ func Read(dir fs.FS) (*Bundle, error) {
 }
 
 type reader struct {
-	dir  fs.FS
-	info info
+	dir   fs.FS
+	info  info
+	grids map[string][]byte // files of gridded slabs, which are kept as they are
 }
 
 // maxFileBytes bounds one file of a model directory.
@@ -129,6 +130,16 @@ func (r *reader) contents() (c setting.Contents, tables map[string]*table, err e
 		if c.Hotspots, err = readHotspots(raw); err != nil {
 			return c, nil, err
 		}
+	}
+	if raw, err = r.file(landFile, true); err != nil {
+		return c, nil, err
+	} else if raw != nil {
+		if c.Land, err = readLand(raw); err != nil {
+			return c, nil, err
+		}
+	}
+	if err = r.slabs(&c); err != nil {
+		return c, nil, err
 	}
 	tables, err = r.motions(&c)
 	return c, tables, err
@@ -215,6 +226,14 @@ func (b *Bundle) encode(in info, m *setting.Model, tables map[string]*table) err
 		if b.files[zonesFile], err = writeZones(zones); err != nil {
 			return err
 		}
+	}
+	if land := m.Land(); len(land) > 0 {
+		if b.files[landFile], err = writeLand(land); err != nil {
+			return err
+		}
+	}
+	if err := b.encodeSlabs(m.Slabs()); err != nil {
+		return err
 	}
 	if hs := m.Hotspots(); len(hs) > 0 {
 		b.files[hotspotsFile] = writeHotspots(hs)

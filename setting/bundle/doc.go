@@ -10,6 +10,11 @@
 //	motion/NAME.csv          one angular velocity a plate
 //	zones.geojson            polygons of diffuse deformation (optional)
 //	hotspots.csv             name,lon,lat,source (optional)
+//	land.geojson             outlines of land near spreading ridges (optional)
+//	slabs/slabs.csv          one row a slab, with
+//	slabs/contours.geojson   contours of equal depth, or
+//	slabs/SLAB/depth.xyz     grids: depth, sigma, dip, strike, thickness, also .gz;
+//	slabs/*.txt              or instead the slabs written for people
 //
 // Reading is strict: an unknown member, a missing column or a number out of
 // range is an error that names the file, the place in it and what would be

@@ -1,6 +1,12 @@
 package bundle
 
-import "fmt"
+import (
+	"errors"
+	"fmt"
+)
+
+// errNotUTF8 is the fault of text in another encoding.
+var errNotUTF8 = errors.New("the text is not valid UTF-8; save the file as UTF-8")
 
 // FileError is a fault in one file of a model directory.
 type FileError struct {

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"strconv"
+	"unicode/utf8"
 
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/sphere"
@@ -38,12 +39,20 @@ func readFeatures[P any](file string, raw []byte) ([]feature[P], error) {
 	if c.Type != "FeatureCollection" {
 		return nil, fault(file, 0, `type is %q; it must be "FeatureCollection"`, c.Type)
 	}
+	for i := range c.Features {
+		if got := c.Features[i].Type; got != "Feature" {
+			return nil, fault(file, 0, `features[%d]: type is %q; it must be "Feature"`, i, got)
+		}
+	}
 	return c.Features, nil
 }
 
 // decodeStrictly decodes one JSON value, without unknown members and without
 // anything after it.
 func decodeStrictly(raw []byte, into any) error {
+	if !utf8.Valid(raw) {
+		return errNotUTF8
+	}
 	d := json.NewDecoder(bytes.NewReader(raw))
 	d.DisallowUnknownFields()
 	if err := d.Decode(into); err != nil {
@@ -80,20 +89,7 @@ func readBoundaries(raw []byte) ([]*boundary.Boundary, error) {
 		in := func(err error) error {
 			return &FileError{File: boundariesFile, Detail: fmt.Sprintf("features[%d] (id %q)", i, f.Properties.ID), Err: err}
 		}
-		var parts [][][]float64
-		switch f.Geometry.Type {
-		case "LineString":
-			parts = make([][][]float64, 1)
-			err = json.Unmarshal(f.Geometry.Coordinates, &parts[0])
-		case "MultiLineString":
-			err = json.Unmarshal(f.Geometry.Coordinates, &parts)
-		default:
-			err = fmt.Errorf("geometry is %q; it must be LineString, or MultiLineString where it is cut at ±180°", f.Geometry.Type)
-		}
-		if err != nil {
-			return nil, in(err)
-		}
-		path, err := joinParts(parts)
+		path, err := readPath(f.Geometry)
 		if err != nil {
 			return nil, in(err)
 		}
@@ -119,10 +115,60 @@ func readBoundaries(raw []byte) ([]*boundary.Boundary, error) {
 	return out, nil
 }
 
+// readPath returns the path of a LineString, or of a MultiLineString that was cut
+// at ±180°.
+func readPath(g geometry) ([]sphere.LonLat, error) {
+	var parts [][][]float64
+	var err error
+	switch g.Type {
+	case "LineString":
+		parts = make([][][]float64, 1)
+		err = json.Unmarshal(g.Coordinates, &parts[0])
+	case "MultiLineString":
+		err = json.Unmarshal(g.Coordinates, &parts)
+	default:
+		err = fmt.Errorf("geometry is %q; it must be LineString, or MultiLineString where it is cut at ±180°", g.Type)
+	}
+	if err != nil {
+		return nil, err
+	}
+	return joinParts(parts)
+}
+
+// readRings returns the rings of a Polygon.
+func readRings(g geometry) ([][]sphere.LonLat, error) {
+	if g.Type != "Polygon" {
+		return nil, fmt.Errorf("geometry is %q; it must be Polygon", g.Type)
+	}
+	var rings [][][]float64
+	if err := decodeStrictly(g.Coordinates, &rings); err != nil {
+		return nil, err
+	}
+	var out [][]sphere.LonLat
+	for _, ring := range rings {
+		var pts []sphere.LonLat
+		for _, c := range ring {
+			if len(c) < 2 {
+				return nil, fmt.Errorf("a position has %d numbers; it needs longitude and latitude", len(c))
+			}
+			p, err := position(c[0], c[1])
+			if err != nil {
+				return nil, err
+			}
+			pts = append(pts, p)
+		}
+		out = append(out, pts)
+	}
+	return out, nil
+}
+
 // joinParts makes one path of lines that were cut at ±180°.
 func joinParts(parts [][][]float64) ([]sphere.LonLat, error) {
 	var path []sphere.LonLat
 	for i, part := range parts {
+		if len(part) < 2 {
+			return nil, fmt.Errorf("part %d has %d positions; a line has at least 2", i+1, len(part))
+		}
 		for j, c := range part {
 			if len(c) < 2 {
 				return nil, fmt.Errorf("a position has %d numbers; it needs longitude and latitude", len(c))
@@ -137,8 +183,8 @@ func joinParts(parts [][][]float64) ([]sphere.LonLat, error) {
 				if math.Abs(end[0]) != 180 || c[0] != -end[0] || end[1] != c[1] {
 					return nil, fmt.Errorf("part %d starts at %v; the parts of a MultiLineString must join at ±180°, where the one before ends at %v", i+1, c, end)
 				}
-				if len(path) > 1 && len(part) > 1 && onArc(path[len(path)-2], p, sphere.LonLat{Lon: part[1][0], Lat: part[1][1]}) {
-					path = path[:len(path)-1] // the cut was no vertex
+				if len(part[1]) >= 2 && isCut(path[len(path)-2], p, sphere.LonLat{Lon: part[1][0], Lat: part[1][1]}) {
+					path = path[:len(path)-1]
 				}
 				continue
 			}
@@ -148,11 +194,18 @@ func joinParts(parts [][][]float64) ([]sphere.LonLat, error) {
 	return path, nil
 }
 
-// onArc reports whether q lies on the arc from a to b, as near as a cut that is
-// written with six decimals can.
-func onArc(a, q, b sphere.LonLat) bool {
-	arc, ok := sphere.NewArc(sphere.FromLonLat(a), sphere.FromLonLat(b))
-	return ok && math.Abs(arc.Side(sphere.FromLonLat(q))) < 3e-8
+// isCut reports whether q is where writing would cut the arc from a to b, and so
+// no vertex of its own.
+func isCut(a, q, b sphere.LonLat) bool {
+	arc, err := boundary.New(boundary.Spec{
+		ID: "arc", Name: "arc", Type: boundary.SpreadingRidge, Left: "left", Right: "right",
+		SigmaKm: 1, Source: "none", SourceStatus: boundary.FromMemory, Path: []sphere.LonLat{a, b},
+	})
+	if err != nil {
+		return false
+	}
+	parts := arc.Parts()
+	return len(parts) == 2 && parts[0][len(parts[0])-1].Lat == q.Lat
 }
 
 // writeBoundaries encodes boundaries.geojson, one feature a line.
@@ -166,7 +219,7 @@ func writeBoundaries(list []*boundary.Boundary) ([]byte, error) {
 		if s := b.Subducting(); s != "" {
 			p.Subducting = &s
 		}
-		features[i] = feature[boundaryProperties]{Type: "Feature", Properties: p, Geometry: lineGeometry(b)}
+		features[i] = feature[boundaryProperties]{Type: "Feature", Properties: p, Geometry: lineGeometry(b.Path())}
 	}
 	return writeCollection(features)
 }
@@ -201,8 +254,8 @@ func marshal(v any) ([]byte, error) {
 }
 
 // lineGeometry returns a LineString, or a MultiLineString cut at ±180°.
-func lineGeometry(b *boundary.Boundary) geometry {
-	parts := b.Parts()
+func lineGeometry(path []sphere.LonLat) geometry {
+	parts := sphere.CutAtAntimeridian(path)
 	if len(parts) == 1 {
 		return geometry{"LineString", appendPositions(nil, parts[0])}
 	}

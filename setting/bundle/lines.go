@@ -6,6 +6,8 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/sphere"
@@ -88,10 +90,16 @@ func (s *lineSet) parse(file, text string) error {
 	var cur *lineDraft
 	for i, raw := range strings.Split(text, "\n") {
 		n := i + 1
+		if !utf8.ValidString(raw) {
+			return &FileError{File: file, Line: n, Err: errNotUTF8}
+		}
 		body, _, _ := strings.Cut(raw, "#")
 		words := strings.Fields(body)
 		if len(words) == 0 {
 			continue
+		}
+		if i := slices.IndexFunc(words, func(w string) bool { return strings.ContainsFunc(w, unicode.IsControl) }); i >= 0 {
+			return fault(file, n, "word %d, %q, holds a control character", i+1, words[i])
 		}
 		switch key := words[0]; {
 		case key == "node":

@@ -5,9 +5,13 @@ import (
 	"encoding/csv"
 	"errors"
 	"fmt"
+	"io"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"nearmargin/setting"
 	"nearmargin/setting/sphere"
@@ -18,6 +22,7 @@ type table struct {
 	file   string
 	header []string
 	rows   [][]string
+	lines  []int // of the file, one a row
 }
 
 // readTable reads a CSV file that must have the columns wanted, in that order,
@@ -39,18 +44,38 @@ func readTable(file string, raw []byte, want []string, optional ...string) (*tab
 }
 
 func readAnyTable(file string, raw []byte) (*table, error) {
-	r := csv.NewReader(bytes.NewReader(raw))
-	rows, err := r.ReadAll()
-	if err != nil {
-		if p := (*csv.ParseError)(nil); errors.As(err, &p) {
-			return nil, &FileError{File: file, Line: p.Line, Err: p.Err}
-		}
-		return nil, &FileError{File: file, Err: err}
+	if !utf8.Valid(raw) {
+		return nil, &FileError{File: file, Err: errNotUTF8}
 	}
-	if len(rows) == 0 {
+	r := csv.NewReader(bytes.NewReader(raw))
+	t := &table{file: file}
+	for {
+		row, err := r.Read()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			if p := (*csv.ParseError)(nil); errors.As(err, &p) {
+				return nil, &FileError{File: file, Line: p.StartLine, Err: p.Err}
+			}
+			return nil, &FileError{File: file, Err: err}
+		}
+		line, _ := r.FieldPos(0)
+		for i, s := range row {
+			if strings.ContainsFunc(s, unicode.IsControl) {
+				return nil, fault(file, line, "field %d, %q, holds a line break or another control character", i+1, s)
+			}
+		}
+		if t.header == nil {
+			t.header = row
+			continue
+		}
+		t.rows, t.lines = append(t.rows, row), append(t.lines, line)
+	}
+	if t.header == nil {
 		return nil, fault(file, 1, "the file is empty; the first line names the columns")
 	}
-	return &table{file, rows[0], rows[1:]}, nil
+	return t, nil
 }
 
 // cell returns a row's value in a column, "" where there is no such column.
@@ -83,7 +108,7 @@ func (t *table) numbers(row int, columns ...string) ([]float64, error) {
 }
 
 func (t *table) fault(row int, format string, args ...any) error {
-	return fault(t.file, row+2, format, args...)
+	return fault(t.file, t.lines[row], format, args...)
 }
 
 func (t *table) write() []byte {
@@ -106,6 +131,8 @@ var (
 	hotspotsColumns  = []string{"name", "lon", "lat", "source"}
 )
 
+var plateCodeForm = regexp.MustCompile(`^[A-Z]{2}$`)
+
 func readPlates(raw []byte) ([]setting.Plate, error) {
 	t, err := readTable(platesFile, raw, platesColumns)
 	if err != nil {
@@ -113,7 +140,7 @@ func readPlates(raw []byte) ([]setting.Plate, error) {
 	}
 	var out []setting.Plate
 	for i, r := range t.rows {
-		if len(r[0]) != 2 || r[0] != strings.ToUpper(r[0]) {
+		if !plateCodeForm.MatchString(r[0]) {
 			return nil, t.fault(i, "code %q must be two upper-case letters", r[0])
 		}
 		if r[1] == "" {
@@ -155,7 +182,14 @@ func readJunctions(raw []byte) (map[sphere.LonLat]string, error) {
 		if err != nil {
 			return nil, err
 		}
-		out[p] = t.cell(i, "name")
+		name := t.cell(i, "name")
+		if name == "" {
+			return nil, t.fault(i, "the junction at %g, %g has no name", p.Lon, p.Lat)
+		}
+		if have, ok := out[p]; ok {
+			return nil, t.fault(i, "the junction at %g, %g is named already: %q", p.Lon, p.Lat, have)
+		}
+		out[p] = name
 	}
 	return out, nil
 }
@@ -223,33 +257,15 @@ func readZones(raw []byte) ([]*setting.Zone, error) {
 }
 
 func readZone(f feature[zoneProperties]) (*setting.Zone, error) {
-	if f.Geometry.Type != "Polygon" {
-		return nil, fmt.Errorf("zone %q: geometry is %q; it must be Polygon", f.Properties.Name, f.Geometry.Type)
-	}
-	var rings [][][]float64
-	if err := decodeStrictly(f.Geometry.Coordinates, &rings); err != nil {
-		return nil, fmt.Errorf("zone %q: %w", f.Properties.Name, err)
-	}
 	kind, err := setting.ParseZoneKind(f.Properties.Kind)
 	if err != nil {
 		return nil, fmt.Errorf("zone %q: %w", f.Properties.Name, err)
 	}
-	z := setting.Zone{Name: f.Properties.Name, Kind: kind, Source: f.Properties.Source}
-	for _, ring := range rings {
-		var pts []sphere.LonLat
-		for _, c := range ring {
-			if len(c) < 2 {
-				return nil, fmt.Errorf("zone %q: a position has %d numbers; it needs longitude and latitude", z.Name, len(c))
-			}
-			p, err := position(c[0], c[1])
-			if err != nil {
-				return nil, fmt.Errorf("zone %q: %w", z.Name, err)
-			}
-			pts = append(pts, p)
-		}
-		z.Rings = append(z.Rings, pts)
+	rings, err := readRings(f.Geometry)
+	if err != nil {
+		return nil, fmt.Errorf("zone %q: %w", f.Properties.Name, err)
 	}
-	return setting.NewZone(z)
+	return setting.NewZone(setting.Zone{Name: f.Properties.Name, Kind: kind, Source: f.Properties.Source, Rings: rings})
 }
 
 func writeZones(zones []*setting.Zone) ([]byte, error) {

@@ -63,7 +63,7 @@ func (m *Model) Relative(plate, reference string, at, along sphere.Vec, referenc
 	out.RateSigmaMmYr = a.Spread.along(a.Vector, at, u) + b.Spread.along(b.Vector, at, u)
 	if a.Spread.full() && b.Spread.full() {
 		side := at.Cross(u)
-		out.AzimuthSigmaDeg = math.Min(180, math.Atan2(a.Spread.along(a.Vector, at, side)+b.Spread.along(b.Vector, at, side), out.RateMmYr)*degPerRad)
+		out.AzimuthSigmaDeg = math.Atan2(a.Spread.along(a.Vector, at, side)+b.Spread.along(b.Vector, at, side), out.RateMmYr) * degPerRad
 	}
 	return out, true
 }

@@ -1,0 +1,117 @@
+package boundary
+
+import (
+	"math"
+	"testing"
+
+	"github.com/golang/geo/s2"
+
+	"nearmargin/setting/sphere"
+)
+
+// BenchmarkNearest measures the search on a network of about 5,800 legs: whole
+// answers (plate, side and near ties on the ellipsoid), the search on the sphere
+// alone, and S2's closest edge, which is what the search on the sphere is to be
+// compared with. S2's points are made beforehand.
+func BenchmarkNearest(b *testing.B) {
+	r := seeded(b)
+	n := mustNetwork(b, synthetic(r, 467))
+	if legs := n.NumLegs(); legs < 5700 || legs > 5900 {
+		b.Fatalf("%d legs", legs)
+	}
+	x := newS2Index(n)
+	const count = 4096
+	kinds := []struct {
+		name string
+		draw func() sphere.Vec
+	}{
+		{"sphere", func() sphere.Vec { return anyVec(r) }},
+		{"within300km", func() sphere.Vec {
+			l := &n.legs[r.IntN(len(n.legs))]
+			v := l.arc.At(r.Float64())
+			rad := sphere.KmToRad(300) * math.Sqrt(r.Float64())
+			return v.Scale(math.Cos(rad)).Add(v.Cross(anyVec(r)).Unit().Scale(math.Sin(rad)))
+		}},
+	}
+	for _, kind := range kinds {
+		var places [count]Place
+		var points [count]s2.Point
+		var want [count]float64 // radians
+		for i := range places {
+			places[i] = PlaceAt(kind.draw().LonLat())
+			points[i] = s2Point(places[i].LonLat)
+			f, _ := n.nearest(n.all, places[i].Vec, filter{}, reachOf(maxChordSq))
+			want[i] = sphere.Angle(places[i].Vec, n.legs[f.leg].foot(places[i].Vec, f.where))
+		}
+		b.Run("Locate/"+kind.name, func(b *testing.B) {
+			b.ReportAllocs()
+			i := 0
+			for b.Loop() {
+				_, h := n.Locate(places[i%count])
+				// 0.56 % for the ellipsoid
+				if s := sphere.RadToKm(want[i%count]); math.Abs(h.DistanceKm-s) > 0.006*s+1e-6 {
+					b.Fatalf("%g km, on the sphere %g", h.DistanceKm, s)
+				}
+				i++
+			}
+		})
+		b.Run("search/"+kind.name, func(b *testing.B) {
+			b.ReportAllocs()
+			i := 0
+			for b.Loop() {
+				f, _ := n.nearest(n.all, places[i%count].Vec, filter{}, reachOf(maxChordSq))
+				if got := 2 * math.Asin(math.Sqrt(f.chordSq)/2); math.Abs(got-want[i%count]) > mmRad {
+					b.Fatalf("%g rad, want %g", got, want[i%count])
+				}
+				i++
+			}
+		})
+		b.Run("S2/"+kind.name, func(b *testing.B) {
+			b.ReportAllocs()
+			i := 0
+			for b.Loop() {
+				got := x.query.Distance(s2.NewMinDistanceToPointTarget(points[i%count])).Angle().Radians()
+				if math.Abs(got-want[i%count]) > 1e-7 { // 0.6 m: S2 works with squared chords
+					b.Fatalf("%g rad, want %g", got, want[i%count])
+				}
+				i++
+			}
+		})
+	}
+}
+
+// BenchmarkNearestOf measures the search for one type within 1,000 km.
+func BenchmarkNearestOf(b *testing.B) {
+	r := seeded(b)
+	n := mustNetwork(b, synthetic(r, 467))
+	var places [4096]Place
+	for i := range places {
+		places[i] = PlaceAt(anyVec(r).LonLat())
+	}
+	b.ReportAllocs()
+	i, found := 0, 0
+	for b.Loop() {
+		h, ok := n.NearestOf(places[i%len(places)], AllTypes[i%len(AllTypes)], "", AnyRole, 1000)
+		if ok {
+			found++
+			if h.DistanceKm > 1000 || h.Boundary.Type() != AllTypes[i%len(AllTypes)] {
+				b.Fatalf("%v at %g km", h.Boundary.Type(), h.DistanceKm)
+			}
+		}
+		i++
+	}
+	if i > 10000 && found < i/100 {
+		b.Fatalf("found %d of %d", found, i)
+	}
+}
+
+// BenchmarkNewNetwork measures how long a network of about 5,800 legs takes to
+// build and to check.
+func BenchmarkNewNetwork(b *testing.B) {
+	specs := synthetic(seeded(b), 467)
+	for b.Loop() {
+		if n := mustNetwork(b, specs); len(n.Faults()) != 0 {
+			b.Fatal("faults")
+		}
+	}
+}
