@@ -41,6 +41,7 @@ func TestGoldens(t *testing.T) {
 		status                                  int
 	}{
 		{"point_forearc.json", "GET", "/v1/point?lon=61&lat=5&depth_km=25&uncertainty_km=4&age_ma=12", "", "", 200},
+		{"point_slab.json", "GET", "/v1/point?lon=62.2&lat=-5&depth_km=100", "", "", 200},
 		{"point_interior.json", "GET", "/v1/point?lon=-90&lat=20", "", "", 200},
 		{"point_on_the_line.json", "GET", "/v1/point?lon=0&lat=0", "", "", 200},
 		{"point_no_motion.json", "GET", "/v1/point?lon=62&lat=5&motion=partial", "", "", 200},

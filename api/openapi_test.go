@@ -3,9 +3,13 @@ package api
 import (
 	"bytes"
 	"encoding/json"
+	"go/ast"
+	"go/parser"
+	"go/token"
 	"maps"
 	"net/http"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -13,6 +17,7 @@ import (
 
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
+	"nearmargin/setting/slab"
 )
 
 // document is the OpenAPI document as generic JSON.
@@ -218,6 +223,7 @@ func TestEnumsMatchTheDomain(t *testing.T) {
 		{"Label", names(len(setting.AllLabels), func(i int) string { return setting.AllLabels[i].String() })},
 		{"Family", names(len(setting.AllFamilies), func(i int) string { return setting.AllFamilies[i].String() })},
 		{"BoundaryType", names(len(boundary.AllTypes), func(i int) string { return boundary.AllTypes[i].String() })},
+		{"SlabKind", names(len(slab.AllKinds), func(i int) string { return slab.AllKinds[i].String() })},
 		{"ZoneKind", names(len(setting.AllZoneKinds), func(i int) string { return setting.AllZoneKinds[i].String() })},
 	} {
 		var got []string
@@ -229,6 +235,38 @@ func TestEnumsMatchTheDomain(t *testing.T) {
 		if !slices.Equal(got, c.want) {
 			t.Errorf("%s lists %v, the domain has %v", c.schema, got, c.want)
 		}
+	}
+}
+
+// TestNoteCodesMatchTheDomain compares the enum of note codes with the constants
+// of type NoteCode in the source of package setting.
+func TestNoteCodesMatchTheDomain(t *testing.T) {
+	file, err := parser.ParseFile(token.NewFileSet(), "../setting/answer.go", nil, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var want, got []string
+	ast.Inspect(file, func(n ast.Node) bool {
+		spec, ok := n.(*ast.ValueSpec)
+		if !ok {
+			return true
+		}
+		if kind, ok := spec.Type.(*ast.Ident); ok && kind.Name == "NoteCode" {
+			code, err := strconv.Unquote(spec.Values[0].(*ast.BasicLit).Value)
+			if err != nil {
+				t.Fatal(err)
+			}
+			want = append(want, code)
+		}
+		return true
+	})
+	for _, v := range at(t, document(t), "components", "schemas", "NoteCode")["enum"].([]any) {
+		got = append(got, v.(string))
+	}
+	slices.Sort(got)
+	slices.Sort(want)
+	if len(want) == 0 || !slices.Equal(got, want) {
+		t.Errorf("NoteCode lists %v, the domain has %v", got, want)
 	}
 }
 

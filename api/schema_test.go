@@ -34,7 +34,7 @@ func valid(t *testing.T, s *jsonschema.Schema, what string, body []byte) map[str
 // every setting, on the lines, at the poles and on both sides of ±180°.
 func TestAnswersMatchTheirSchema(t *testing.T) {
 	r, s := newRig(t), schema(t, "Answer")
-	met, nulls := map[string]bool{}, map[string]bool{}
+	met, nulls, slabs := map[string]bool{}, map[string]bool{}, 0
 	check := func(query string) {
 		t.Helper()
 		w := r.get("/v1/point?" + query)
@@ -48,6 +48,7 @@ func TestAnswersMatchTheirSchema(t *testing.T) {
 				nulls[k] = true
 			}
 		}
+		slabs += len(a["slabs"].([]any))
 	}
 	for _, c := range []struct{ name, query string }{
 		{"north pole", "lon=10&lat=90"},
@@ -62,6 +63,8 @@ func TestAnswersMatchTheirSchema(t *testing.T) {
 		{"ends of the ranges", "lon=-180&lat=-89.5&depth_km=-10&uncertainty_km=0&age_ma=0"},
 		{"other ends of the ranges", "lon=360&lat=89.5&depth_km=800&uncertainty_km=1000&age_ma=4600"},
 		{"exponents", "lon=1e1&lat=-.5e-3"},
+		{"above a slab", "lon=63&lat=-5"},
+		{"within a slab", "lon=63&lat=-5&depth_km=250"},
 		{"near the hotspot", "lon=-90.5&lat=20.5"},
 	} {
 		t.Run(c.name, func(t *testing.T) { check(c.query) })
@@ -75,6 +78,9 @@ func TestAnswersMatchTheirSchema(t *testing.T) {
 		if l != setting.BackArcSpreading && !met[l.String()] {
 			t.Errorf("no site has the label %v", l)
 		}
+	}
+	if slabs == 0 {
+		t.Error("no site lies above a slab")
 	}
 	for _, k := range []string{"controlling_boundary", "triple_junction", "diffuse_zone", "hotspot"} {
 		if !nulls[k] {

@@ -57,8 +57,12 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	l.gather(p, a.Plate.Code, a, &e)
 	v, rule := e.decide()
 	a.Label, a.Family = v.label, v.label.family(e.zone)
-	a.Reasons.add(e.reason(v, rule))
 	l.control(a, &e, v)
+	reason := e.reason(v, rule)
+	if reason.Slab != nil && a.IsControlled {
+		reason.Boundary, reason.Km = a.Controlling.Boundary, a.Controlling.DistanceKm
+	}
+	a.Reasons.add(reason)
 	first := v.slab
 	if first < 0 {
 		first = e.decidingSlab()
@@ -78,7 +82,7 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	}
 
 	a.Confidence = High
-	if v.neverHi || a.Label == PlateInterior && (a.Hotspot != nil || a.Zone != nil) {
+	if v.neverHi {
 		a.Confidence = Medium
 	}
 	for _, alt := range a.Alternatives.All() {
@@ -91,8 +95,13 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 }
 
 // control gives the boundary that decides: the rule's own, or the nearest that
-// the deciding slab goes down from.
+// the deciding slab goes down from. Where that is farther than a slab's trench may
+// be, as for a slab that has lost its trench, it is the nearest trench at which
+// the site's plate is the upper one.
 func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
+	if v.slab >= 0 && e.slabs[v.slab].slab.Kind == slab.Subduction && e.slabs[v.slab].trenchKm > e.limit[limitSlabTrench] && !math.IsInf(e.km[sourceOverriding], 1) {
+		v.by = sourceOverriding
+	}
 	switch {
 	case v.by != noSource:
 		a.IsControlled = true
@@ -108,9 +117,10 @@ func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
 func (e *evidence) vary(a *Answer) {
 	try := func(c Cause) {
 		v, rule := e.decide()
-		if v.label != a.Label {
-			c.Rule, c.Limit = rule, v.limit
-			a.alternative(v.label, c, e.zone)
+		c.Rule, c.Limit = rule, v.limit
+		a.alternative(v.label, c, e.zone)
+		if v.also != NoLabel {
+			a.alternative(v.also, c, e.zone)
 		}
 	}
 	for s := range sources {
@@ -185,9 +195,6 @@ func (e *evidence) reason(v verdict, rule RuleID) Reason {
 	case v.slab >= 0:
 		s := &e.slabs[v.slab]
 		r.Slab, r.DepthKm, r.SigmaKm, r.PastKm = s.slab, s.z, s.sigma, s.outKm
-		if !math.IsInf(s.trenchKm, 1) {
-			r.Boundary, r.Km = s.trench.Boundary, s.trenchKm
-		}
 		if v.limit == limitArcMin {
 			r.LimitVal *= s.slab.ArcMinDepthKm
 		}

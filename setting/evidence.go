@@ -53,6 +53,7 @@ type evidence struct {
 	trenchHasSlab bool    // a slab surface goes down from the nearest trench
 	collisionSide side
 	zone          ZoneKind
+	nearHotspot   bool
 
 	slabs  [maxSlabs]slabEvidence
 	nSlabs int
@@ -74,6 +75,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	if a.Zone != nil {
 		e.zone = a.Zone.Kind
 	}
+	e.nearHotspot = a.Hotspot != nil
 	for s := range sources {
 		src := &sources[s]
 		hit, ok := l.m.network.NearestOf(p, src.kind, plate, src.role, src.reachKm)

@@ -3,6 +3,7 @@ package setting
 import (
 	"math"
 
+	"nearmargin/setting/boundary"
 	"nearmargin/setting/slab"
 )
 
@@ -61,7 +62,7 @@ var Rules = [numRules]Rule{
 		"within the limit of a spreading ridge, transform or rift; of several the smallest distance/limit, a ridge or rift before a transform where the two are equal within 1σ. Over a subducting slab a ridge is back-arc spreading where the slab is deeper than the limit, and a transform or rift decides only within its 1σ", decideOnBoundary},
 	{ruleSlabDepth, "slab_depth", []Label{Forearc, VolcanicArc, BackArc},
 		[]LimitID{limitSlabForearc, limitArcMin, limitSlabArc, limitSlabArcMaybe, limitSlabBackArc, limitSlabTrench, limitPastRim},
-		"over a subducting slab, by the depth of its top; of two slabs one in the arc band decides, else the shallowest. Past the down-dip rim the rim's depth counts, up to the limit and never high; past a lateral end it gives an alternative", decideSlab},
+		"over a subducting slab, by the depth of its top; of two slabs one in the arc band decides, else the shallowest. Where the slab goes down from continental convergence within collision_upper, collision_zone is an alternative. Past the down-dip rim the rim's depth counts, up to the limit and never high; past a lateral end it gives an alternative", decideSlab},
 	{ruleTrenchDistance, "trench_distance", []Label{Forearc, VolcanicArc, BackArc},
 		[]LimitID{limitForearc, limitArc, limitBackArc},
 		"on the overriding side of a subduction boundary, by distance from the trench where no slab surface is known; where one is, only between the trench and its start", decideTrenchDistance},
@@ -75,9 +76,9 @@ var Rules = [numRules]Rule{
 		[]LimitID{limitCollisionUpper, limitCollisionLower, limitCollisionEither, limitCollisionZone},
 		"within the limit of continental convergence for the side the site is on, above a collision slab, or in a diffuse zone of kind collision with such a boundary within the limit", decideCollision},
 	{ruleZone, "deforming_zone", []Label{DeformingZone}, nil,
-		"inside another zone of diffuse deformation; the family follows its kind", decideZone},
+		"inside another zone of diffuse deformation; the family follows its kind. Of mixed kind, or near a hotspot, never high", decideZone},
 	{ruleInterior, "plate_interior", []Label{PlateInterior}, nil,
-		"none of the above; inside a zone or near a hotspot never high. Earthquakes and volcanism within plates are possible all the same", decideInterior},
+		"none of the above; near a hotspot never high. Earthquakes and volcanism within plates are possible all the same", decideInterior},
 }
 
 // decide runs the rules in order and returns the first verdict.
@@ -169,10 +170,25 @@ func decideSlab(e *evidence) (verdict, bool) {
 	}
 	s := &e.slabs[i]
 	label, also, limit := e.slabLabel(s)
-	if label == NoLabel {
+	if label == NoLabel || label == BackArc && e.nearOwnTrench() {
 		return undecided, false
 	}
+	if also == NoLabel && e.collides(s) {
+		also = CollisionZone
+	}
 	return verdict{label: label, also: also, by: noSource, slab: i, limit: limit, neverHi: s.beyond != slab.NotBeyond}, true
+}
+
+// nearOwnTrench reports whether the site lies between a trench and the start of
+// its slab: a slab of another trench far below does not make that a back-arc.
+func (e *evidence) nearOwnTrench() bool {
+	return e.beforeSlab() && e.trenchSquare >= minTrenchSquare && e.km[sourceOverriding] < e.limit[limitForearc]
+}
+
+// collides reports whether a slab goes down from continental convergence near the
+// site: it is as well a collision zone.
+func (e *evidence) collides(s *slabEvidence) bool {
+	return s.trenchKm <= e.limit[limitCollisionUpper] && s.trench.Boundary.Type() == boundary.ContinentalConvergent
 }
 
 // minTrenchSquare is the sine of the smallest angle between a trench and the line
@@ -256,11 +272,11 @@ func decideCollision(e *evidence) (verdict, bool) {
 }
 
 func decideZone(e *evidence) (verdict, bool) {
-	return verdict{label: DeformingZone, also: e.deepSlab(), by: noSource, slab: -1}, e.zone != NoKind
+	return verdict{label: DeformingZone, also: e.deepSlab(), by: noSource, slab: -1, neverHi: e.zone == MixedKind || e.nearHotspot}, e.zone != NoKind
 }
 
 func decideInterior(e *evidence) (verdict, bool) {
-	return verdict{label: PlateInterior, also: e.deepSlab(), by: noSource, slab: -1}, true
+	return verdict{label: PlateInterior, also: e.deepSlab(), by: noSource, slab: -1, neverHi: e.nearHotspot}, true
 }
 
 // deepSlab returns BackArc where a slab is below that is too deep or too far to

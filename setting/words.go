@@ -194,6 +194,6 @@ func RuleTable() string {
 	b.WriteString("\nConfidence: every distance, every limit and the site's position are moved by one σ either\n" +
 		"way, one at a time, and the other plate is tried where the side is uncertain. high: no\n" +
 		"other label is met; medium: other labels of the same family; low: another family.\n" +
-		"An interior inside a zone or near a hotspot is never high.\n")
+		"Labels that a rule itself allows beside its own count as met.\n")
 	return b.String()
 }

@@ -187,7 +187,10 @@ func (k *asker) siteOfFeature(f gjson.Result) (setting.Site, error) {
 		return s, nil
 	}
 	s.DepthKm, err = parseNumber(c[2].Raw, false)
-	return s, err
+	if err != nil && !errors.Is(err, errMissing) {
+		return s, fmt.Errorf("third coordinate: %w", err)
+	}
+	return s, nil
 }
 
 func orMissing(raw string) string {

@@ -12,6 +12,7 @@ import (
 
 	"nearmargin/api/internal/testmodel"
 	"nearmargin/setting"
+	"nearmargin/setting/slab"
 )
 
 // drawSite draws a site anywhere, often on a line, a pole or ±180°, with and
@@ -24,8 +25,8 @@ func drawSite(t *rapid.T) setting.Site {
 		return math.NaN()
 	}
 	return setting.Site{
-		Lon:           rapid.OneOf(rapid.Float64Range(-180, 360), rapid.SampledFrom([]float64{-180, -179.9999999, 0, 60, 61, 179.9999999, 180, 240, 360})).Draw(t, "lon"),
-		Lat:           rapid.OneOf(rapid.Float64Range(-90, 90), rapid.SampledFrom([]float64{-90, -89.9999999, 0, 5, 89.99999999, 90})).Draw(t, "lat"),
+		Lon:           rapid.OneOf(rapid.Float64Range(-180, 360), rapid.SampledFrom([]float64{-180, -179.9999999, 0, 60, 61, 62.5, 179.9999999, 180, 240, 360})).Draw(t, "lon"),
+		Lat:           rapid.OneOf(rapid.Float64Range(-90, 90), rapid.SampledFrom([]float64{-90, -89.9999999, -5, 0, 5, 89.99999999, 90})).Draw(t, "lat"),
 		DepthKm:       optional("depth_km", -10, 800),
 		UncertaintyKm: optional("uncertainty_km", 0, 1000),
 		AgeMa:         optional("age_ma", 0, 4600),
@@ -212,7 +213,7 @@ func orNil(s string) any {
 	return s
 }
 
-// answer compares the whole. What slabs hold is compared elsewhere.
+// answer compares the whole.
 func (c checker) answer(v any, a *setting.Answer) {
 	top := c.object(v, "site", "plate", "setting", "nearest_boundary", "controlling_boundary", "nearby_boundaries", "slabs",
 		"triple_junction", "diffuse_zone", "hotspot", "model", "notes")
@@ -257,10 +258,30 @@ func (c checker) answer(v any, a *setting.Answer) {
 		c.number("distance_km", m["distance_km"], n.DistanceKm, 2)
 		c.angle("azimuth_deg", m["azimuth_deg"], n.AzimuthDeg, 360)
 	}
-	if _, ok := top["slabs"].([]any); !ok {
-		c.t.Fatalf("%s: slabs is %v, want a list", c.what, top["slabs"])
+	slabs := top["slabs"].([]any)
+	c.equal("slabs", len(slabs), a.Slabs.Len())
+	for i := range slabs {
+		c.slab(slabs[i], &a.Slabs.All()[i])
 	}
 	c.rest(top, a)
+}
+
+func (c checker) slab(v any, x *setting.SlabAnswer) {
+	m := c.object(v, "slab", "name", "kind", "depth_km", "sigma_km", "dip_deg", "dip_azimuth_deg", "site_relation", "clearance_km", "distance_3d_km")
+	c.equal("slab", m["slab"], x.Slab.ID)
+	c.equal("name", m["name"], x.Slab.Name)
+	c.equal("kind", m["kind"], x.Slab.Kind.String())
+	c.number("depth_km", m["depth_km"], x.DepthKm, 1)
+	c.number("sigma_km", m["sigma_km"], x.SigmaKm, 1)
+	c.number("dip_deg", m["dip_deg"], x.DipDeg, 1)
+	c.angle("dip_azimuth_deg", m["dip_azimuth_deg"], x.DipAzimuthDeg, 360)
+	if x.Relation == slab.NoRelation {
+		c.equal("site_relation", m["site_relation"], nil)
+	} else {
+		c.equal("site_relation", m["site_relation"], x.Relation.String())
+	}
+	c.number("clearance_km", m["clearance_km"], x.ClearanceKm, 1)
+	c.number("distance_3d_km", m["distance_3d_km"], x.Distance3DKm, 1)
 }
 
 func (c checker) rest(top map[string]any, a *setting.Answer) {

@@ -197,15 +197,11 @@ func joinParts(parts [][][]float64) ([]sphere.LonLat, error) {
 // isCut reports whether q is where writing would cut the arc from a to b, and so
 // no vertex of its own.
 func isCut(a, q, b sphere.LonLat) bool {
-	arc, err := boundary.New(boundary.Spec{
-		ID: "arc", Name: "arc", Type: boundary.SpreadingRidge, Left: "left", Right: "right",
-		SigmaKm: 1, Source: "none", SourceStatus: boundary.FromMemory, Path: []sphere.LonLat{a, b},
-	})
-	if err != nil {
+	if _, ok := sphere.NewArc(sphere.FromLonLat(a), sphere.FromLonLat(b)); !ok {
 		return false
 	}
-	parts := arc.Parts()
-	return len(parts) == 2 && parts[0][len(parts[0])-1].Lat == q.Lat
+	parts := sphere.CutAtAntimeridian([]sphere.LonLat{a, b})
+	return len(parts) == 2 && parts[0][1].Lat == q.Lat
 }
 
 // writeBoundaries encodes boundaries.geojson, one feature a line.

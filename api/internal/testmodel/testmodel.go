@@ -3,7 +3,8 @@
 //
 // Six plates divide the globe along the meridians 180°, 120°W, 60°W, 0°, 60°E
 // and 120°E, from pole to pole. Each meridian is cut into runs of one type, so
-// that every type of boundary occurs; the line along 180° zigzags across it.
+// that every type of boundary occurs; the line along 180° zigzags across it. The
+// eastern subduction boundary south of the equator has a slab, that north of it none.
 package testmodel
 
 import (
@@ -14,6 +15,7 @@ import (
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/motion"
+	"nearmargin/setting/slab"
 	"nearmargin/setting/sphere"
 )
 
@@ -56,7 +58,7 @@ var meridians = []struct {
 	{-120, "PP", "NA", []run{{0, boundary.SpreadingRidge, ""}, {90, boundary.SpreadingRidge, ""}}, nil, "West", 2},
 	{-60, "NA", "EE", []run{{-30, boundary.SpreadingRidge, ""}, {30, boundary.ContinentalRift, ""}, {90, boundary.SpreadingRidge, ""}}, nil, "Rift", 5},
 	{0, "EE", "FF", []run{{-40, boundary.SpreadingRidge, ""}, {-10, boundary.ContinentalTransform, ""}, {10, boundary.SpreadingRidge, ""}, {40, boundary.ContinentalTransform, ""}, {90, boundary.SpreadingRidge, ""}}, nil, "Middle", 4},
-	{60, "FF", "GG", []run{{-20, boundary.SpreadingRidge, ""}, {20, boundary.Subduction, "FF"}, {50, boundary.ContinentalConvergent, "FF"}, {90, boundary.OceanicConvergent, ""}}, nil, "East", 10},
+	{60, "FF", "GG", []run{{-20, boundary.SpreadingRidge, ""}, {0, boundary.Subduction, "FF"}, {20, boundary.Subduction, "FF"}, {50, boundary.ContinentalConvergent, "FF"}, {90, boundary.OceanicConvergent, ""}}, nil, "East", 10},
 	{120, "GG", "HH", []run{{-30, boundary.SpreadingRidge, ""}, {0, boundary.OceanicTransform, ""}, {40, boundary.ContinentalConvergent, ""}, {90, boundary.SpreadingRidge, ""}}, nil, "Far", 6},
 }
 
@@ -81,6 +83,7 @@ func Named(tb testing.TB, id, edition string) *setting.Model {
 			zone(tb, "Mixed belt", setting.MixedKind, 85, -10, 95, 10),
 			zone(tb, "Broad collision", setting.CollisionKind, 56, 22, 66, 45),
 		},
+		Slabs:    []*slab.Slab{eastSlab(tb)},
 		Hotspots: []setting.Hotspot{{Name: "Plume, the", At: sphere.LonLat{Lon: -90, Lat: 20}, Source: "made up"}},
 	})
 	if err != nil {
@@ -165,4 +168,29 @@ func zone(tb testing.TB, name string, kind setting.ZoneKind, w, s, e, n float64)
 		tb.Fatal(err)
 	}
 	return z
+}
+
+// eastSlab goes down eastward from the boundary at 60°E, between 18°S and 1°S.
+func eastSlab(tb testing.TB) *slab.Slab {
+	tb.Helper()
+	var contours []slab.Contour
+	for _, c := range []struct{ lon, depthKm float64 }{{60.4, 20}, {61, 60}, {62, 120}, {64, 260}, {67, 500}} {
+		line := slab.Contour{DepthKm: c.depthKm, SigmaKm: 8}
+		for lat := -18.0; lat <= -1; lat++ {
+			line.Path = append(line.Path, sphere.LonLat{Lon: c.lon, Lat: lat})
+		}
+		contours = append(contours, line)
+	}
+	surface, err := slab.NewContours(contours)
+	if err != nil {
+		tb.Fatal(err)
+	}
+	s, err := slab.New(slab.Spec{
+		ID: "east", Name: "East slab", Kind: slab.Subduction, BoundaryIDs: []string{"east-subduction"},
+		Subducting: "FF", Overriding: "GG", ArcMinDepthKm: 75, Source: "made up", SourceStatus: "memory", Surface: surface,
+	})
+	if err != nil {
+		tb.Fatal(err)
+	}
+	return s
 }

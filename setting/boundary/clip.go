@@ -1,0 +1,125 @@
+package boundary
+
+import (
+	"math"
+
+	"nearmargin/setting/sphere"
+)
+
+// Piece is a part of a boundary's leg that lies inside a shape.
+type Piece struct {
+	Boundary *Boundary
+	Arc      sphere.Arc // in the direction of the path
+	LengthKm float64    // along WGS84
+}
+
+// Inside calls visit with each part of the network's legs that lies inside a
+// shape, in the order of the boundaries' ids and along their paths.
+//
+// Method: the legs that reach into the cap around the shape are cut where they
+// may meet its outline; each part is inside or not as its middle is.
+//
+// Special cases: a part that runs along the outline, within rounding, may count
+// either way.
+//
+// Accuracy: the cuts are good to 1 mm; lengths are those of geodesics between the
+// ends of each part, as in [Boundary.LengthKm].
+func (n *Network) Inside(s sphere.Shape, visit func(Piece)) {
+	centre, rad := s.Cap()
+	var cuts []float64
+	for _, i := range n.legsWithin(centre, rad) {
+		l := &n.legs[i]
+		cuts = s.Cuts(&l.arc, cuts[:0])
+		for part := range l.arc.Between(cuts) {
+			if s.Contains(part.Midpoint()) {
+				km, _ := sphere.Inverse(part.A.LonLat(), part.B.LonLat())
+				visit(Piece{n.boundaries[l.boundary], *part, km})
+			}
+		}
+	}
+}
+
+// legsWithin returns the legs that may reach into a cap, in their order.
+func (n *Network) legsWithin(centre sphere.Vec, rad float64) []int32 {
+	within := reachOfRad(rad)
+	in := make([]bool, len(n.legs))
+	var walk func(at int32)
+	walk = func(at int32) {
+		b := &n.all.branches[at]
+		if within.beyond(b, centre.Dot(b.centre)) {
+			return
+		}
+		if b.right != 0 {
+			walk(at + 1)
+			walk(b.right)
+			return
+		}
+		for _, i := range n.all.order[b.from:b.to] {
+			if d, _ := n.legs[i].chordSq(centre); d <= within.chordSq {
+				in[i] = true
+			}
+		}
+	}
+	walk(0)
+	var out []int32
+	for i := range in {
+		if in[i] {
+			out = append(out, int32(i))
+		}
+	}
+	return out
+}
+
+// PlateAt returns the plate under a unit vector, as [Network.Locate] does.
+func (n *Network) PlateAt(p sphere.Vec) string {
+	first, _ := n.nearest(n.all, p, filter{}, reachOf(maxChordSq))
+	return n.plates[n.side(p, first)]
+}
+
+// NearestToOutline returns the place on an outline, a set of closed rings, that
+// is nearest to the network, and the distance in radians. It is meant for
+// outlines that no boundary crosses.
+//
+// Method: where two lines do not cross, they are nearest at a vertex of one of
+// them. The vertices of the outline are looked up in the network; then those of
+// the network that may be nearer still, against every edge of the outline.
+func (n *Network) NearestToOutline(s sphere.Shape) (sphere.Vec, float64) {
+	var best sphere.Vec
+	within := reachOf(maxChordSq)
+	for _, ring := range s.Outline() {
+		for _, v := range ring {
+			if got, ok := n.nearest(n.all, v, filter{}, within); ok {
+				best, within = v, reachOf(got.chordSq)
+			}
+		}
+	}
+	rad := 2 * math.Asin(math.Min(1, math.Sqrt(within.chordSq)/2))
+	centre, capRad := s.Cap()
+	for _, i := range n.legsWithin(centre, min(math.Pi, capRad+rad)) {
+		l := &n.legs[i]
+		for _, v := range [...]sphere.Vec{l.arc.A, l.arc.B} {
+			for _, ring := range s.Outline() {
+				if q, d := nearestOfRing(ring, v, rad); d < rad {
+					best, rad = q, d
+				}
+			}
+		}
+	}
+	return best, rad
+}
+
+// nearestOfRing returns the point of a ring that is nearest to v, where it is
+// nearer than the angle given.
+func nearestOfRing(ring []sphere.Vec, v sphere.Vec, rad float64) (sphere.Vec, float64) {
+	var best sphere.Vec
+	for i := 1; i < len(ring); i++ {
+		arc, ok := sphere.NewArc(ring[i-1], ring[i])
+		if !ok || rad < 1 && math.Abs(arc.N.Dot(v)) > math.Sin(rad) { // the great circle is farther away
+			continue
+		}
+		if q, _ := arc.Nearest(v); sphere.Angle(q, v) < rad {
+			best, rad = q, sphere.Angle(q, v)
+		}
+	}
+	return best, rad
+}
