@@ -27,7 +27,7 @@ func (s *Server) annotate(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	q := newQuery(c.Request().URL.RawQuery, "lon_column", "lat_column", "depth_column", "uncertainty_column", "prefix", "motion", "motion_fallback", "model")
+	q := newQuery(c.Request().URL.RawQuery, "lon_column", "lat_column", "depth_column", "uncertainty_column", "depth_unit", "depth_datum", "elevation_column", "prefix", "motion", "motion_fallback", "model")
 	if err := q.err(); err != nil {
 		return err
 	}
@@ -44,6 +44,7 @@ func (s *Server) annotate(c echo.Context) error {
 		Lookup:    l,
 		LonColumn: q.text("lon_column"), LatColumn: q.text("lat_column"),
 		DepthColumn: q.text("depth_column"), UncertaintyColumn: q.text("uncertainty_column"),
+		DepthUnit: q.text("depth_unit"), DepthDatum: q.text("depth_datum"), ElevationColumn: q.text("elevation_column"),
 		Prefix: q.text("prefix"),
 	})
 	s.metrics.batch(string(format), st)

@@ -124,7 +124,7 @@ func TestZones(t *testing.T) {
 		{"Sheared", 20, 40, setting.DeformingZone, setting.TransformFamily},
 		{"Squeezed", 40, 40, setting.DeformingZone, setting.CollisionFamily}, // no collision within its limit
 		{"Unclear", 60, 40, setting.DeformingZone, setting.InteriorFamily},
-		{"Plateau", middleLon(6), 4, setting.CollisionZone, setting.CollisionFamily}, // 440 km from the collision
+		{"Plateau", middleLon(6) + 10, 4, setting.CollisionZone, setting.CollisionFamily}, // 440 km from the collision
 		{"", 80, 40, setting.PlateInterior, setting.InteriorFamily},
 	} {
 		a := answer(t, look(t, setting.Options{}), setting.SiteAt(c.lon, c.lat))
@@ -132,7 +132,7 @@ func TestZones(t *testing.T) {
 			t.Errorf("%q: %v of family %v in zone %v, want %v of %v", c.name, a.Label, a.Family, a.Zone, c.label, c.family)
 		}
 	}
-	a := answer(t, look(t, setting.Options{}), setting.SiteAt(middleLon(6), 4))
+	a := answer(t, look(t, setting.Options{}), setting.SiteAt(middleLon(6)+10, 4))
 	if r := a.Reasons.All()[0]; setting.Limits[r.Limit].Name != "collision_zone" {
 		t.Errorf("on the plateau the limit is %q, want collision_zone", setting.Limits[r.Limit].Name)
 	}

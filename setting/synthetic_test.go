@@ -5,6 +5,8 @@ import (
 	"math"
 	"testing"
 
+	"pgregory.net/rapid"
+
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/motion"
@@ -34,7 +36,7 @@ var segments = [9]struct {
 // middleLon returns the longitude of the middle of a segment.
 func middleLon(segment int) float64 { return sphere.WrapLon(-160 + 40*float64(segment)) }
 
-func segmentOf(tb testing.TB, id string) int {
+func segmentOf(tb rapid.TB, id string) int {
 	tb.Helper()
 	for i := range segments {
 		if segments[i].id == id {
@@ -47,7 +49,7 @@ func segmentOf(tb testing.TB, id string) int {
 
 // off returns the site that lies kmNorth north of the middle of a segment along
 // WGS84, south where it is negative.
-func off(tb testing.TB, id string, kmNorth float64) setting.Site {
+func off(tb rapid.TB, id string, kmNorth float64) setting.Site {
 	tb.Helper()
 	from := sphere.LonLat{Lon: middleLon(segmentOf(tb, id))}
 	azimuth := 0.0
@@ -80,7 +82,7 @@ func contents() setting.Contents {
 		Zones: []*setting.Zone{
 			square("Stretched", setting.ExtensionKind, 0, 40), square("Sheared", setting.ShearKind, 20, 40),
 			square("Squeezed", setting.CollisionKind, 40, 40), square("Unclear", setting.MixedKind, 60, 40),
-			square("Plateau", setting.CollisionKind, middleLon(6), 4),
+			square("Plateau", setting.CollisionKind, middleLon(6)+10, 4),
 		},
 		Hotspots: []setting.Hotspot{{Name: "Plume", At: sphere.LonLat{Lon: -100, Lat: 50}, Source: "made up"}},
 	}
@@ -118,7 +120,7 @@ const (
 
 var synthetic = must(setting.NewModel(contents()))
 
-func look(tb testing.TB, o setting.Options) *setting.Lookup {
+func look(tb rapid.TB, o setting.Options) *setting.Lookup {
 	tb.Helper()
 	l, err := synthetic.Lookup(o)
 	if err != nil {
@@ -127,7 +129,7 @@ func look(tb testing.TB, o setting.Options) *setting.Lookup {
 	return l
 }
 
-func answer(tb testing.TB, l *setting.Lookup, s setting.Site) *setting.Answer {
+func answer(tb rapid.TB, l *setting.Lookup, s setting.Site) *setting.Answer {
 	tb.Helper()
 	a := &setting.Answer{}
 	if err := l.At(s, a); err != nil {
@@ -136,7 +138,7 @@ func answer(tb testing.TB, l *setting.Lookup, s setting.Site) *setting.Answer {
 	return a
 }
 
-func limit(tb testing.TB, name string) setting.Limit {
+func limit(tb rapid.TB, name string) setting.Limit {
 	tb.Helper()
 	for _, l := range setting.Limits {
 		if l.Name == name {

@@ -29,6 +29,7 @@ type csvJob struct {
 	appended   []int  // added columns that stand after the input's
 	lon, lat   int
 	depth, unc int // -1 where not asked for
+	elevation  int
 	buf        []byte
 	cells      wire.Cells
 	answer     setting.Answer
@@ -186,6 +187,9 @@ func (j *csvJob) header() error {
 	if j.unc, err = optionalColumn(names, o.UncertaintyColumn, "uncertainty_column", "uncertainty"); err != nil {
 		return err
 	}
+	if j.elevation, err = optionalColumn(names, o.ElevationColumn, "elevation_column", "elevation"); err != nil {
+		return err
+	}
 	j.width = len(names)
 	added := map[string]int{}
 	for i, c := range wire.Columns {
@@ -270,7 +274,7 @@ func (j *csvJob) ask(in []string) error {
 	if len(in) < j.width && (j.lon >= len(in) || j.lat >= len(in)) {
 		return fmt.Errorf("the row has %d fields and the header %d; longitude or latitude is missing", len(in), j.width)
 	}
-	s, err := site(cell(j.lon), cell(j.lat), cell(j.depth), cell(j.unc), j.decimal)
+	s, err := j.o.site(cells{cell(j.lon), cell(j.lat), cell(j.depth), cell(j.unc), cell(j.elevation)}, j.decimal)
 	if err != nil {
 		return err
 	}

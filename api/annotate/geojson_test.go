@@ -31,7 +31,7 @@ func TestFeatures(t *testing.T) {
 			raw: map[string]string{"properties.tectonic.site.depth_km": "null"}},
 		{name: "third coordinate null", in: `{"type":"Feature",` + point("[62,-5,null]") + `}`, o: Options{DepthColumn: ThirdCoordinate}, plate: "GG",
 			raw: map[string]string{"properties.tectonic.site.depth_km": "null"}},
-		{name: "third coordinate of another kind", in: `{"type":"Feature",` + point("[62,-5,[1]]") + `}`, o: Options{DepthColumn: ThirdCoordinate}, fault: "third coordinate:"},
+		{name: "third coordinate of another kind", in: `{"type":"Feature",` + point("[62,-5,[1]]") + `}`, o: Options{DepthColumn: ThirdCoordinate}, fault: "depth:"},
 		{name: "third coordinate out of range", in: `{"type":"Feature",` + point("[62,-5,5000]") + `}`, o: Options{DepthColumn: ThirdCoordinate}, fault: "depth_km: 5000"},
 		{name: "depth among the properties", in: `{"type":"Feature","properties":{"d":"12.5"},` + point("[62,-5]") + `}`, o: Options{DepthColumn: "d"}, plate: "GG",
 			raw: map[string]string{"properties.tectonic.site.depth_km": "12.5"}},

@@ -74,22 +74,26 @@ func (k *asker) siteOf(obj gjson.Result) (setting.Site, error) {
 	if err != nil {
 		return setting.Site{}, err
 	}
-	return k.withExtras(obj, lon, lat)
+	return k.withExtras(obj, lon, lat, "")
 }
 
-// withExtras adds depth and uncertainty, where asked for, from an object's members.
-func (k *asker) withExtras(obj gjson.Result, lon, lat string) (setting.Site, error) {
-	var extra [2]string
-	for i, name := range [...]string{k.o.DepthColumn, k.o.UncertaintyColumn} {
-		if name == "" || name == ThirdCoordinate {
+// withExtras adds depth, uncertainty and elevation, where asked for, from an
+// object's members; depth is taken where no member is named for it.
+func (k *asker) withExtras(obj gjson.Result, lon, lat, depth string) (setting.Site, error) {
+	c := cells{lon: lon, lat: lat, depth: depth}
+	for _, x := range [...]struct {
+		name string
+		into *string
+	}{{k.o.DepthColumn, &c.depth}, {k.o.UncertaintyColumn, &c.uncertainty}, {k.o.ElevationColumn, &c.elevation}} {
+		if x.name == "" || x.name == ThirdCoordinate {
 			continue
 		}
 		var err error
-		if extra[i], err = member(obj, name, name, nil); err != nil && !errors.Is(err, errMissing) {
+		if *x.into, err = member(obj, x.name, x.name, nil); err != nil && !errors.Is(err, errMissing) {
 			return setting.Site{}, err
 		}
 	}
-	return site(lon, lat, extra[0], extra[1], false)
+	return k.o.site(c, false)
 }
 
 // member returns the text of a number member: the one named, or else the only
@@ -179,18 +183,11 @@ func (k *asker) siteOfFeature(f gjson.Result) (setting.Site, error) {
 	if len(c) < 2 || c[0].Type != gjson.Number || c[1].Type != gjson.Number {
 		return setting.Site{}, errors.New("coordinates must be at least two numbers, longitude and latitude")
 	}
-	s, err := k.withExtras(f.Get("properties"), c[0].Raw, c[1].Raw)
-	if err != nil || k.o.DepthColumn != ThirdCoordinate {
-		return s, err
+	depth := ""
+	if k.o.DepthColumn == ThirdCoordinate && len(c) > 2 {
+		depth = c[2].Raw
 	}
-	if len(c) < 3 {
-		return s, nil
-	}
-	s.DepthKm, err = parseNumber(c[2].Raw, false)
-	if err != nil && !errors.Is(err, errMissing) {
-		return s, fmt.Errorf("third coordinate: %w", err)
-	}
-	return s, nil
+	return k.withExtras(f.Get("properties"), c[0].Raw, c[1].Raw, depth)
 }
 
 func orMissing(raw string) string {

@@ -7,8 +7,6 @@ import (
 	"regexp"
 	"strconv"
 	"strings"
-
-	"nearmargin/setting"
 )
 
 // errMissing stands for a value that is not there.
@@ -71,28 +69,6 @@ func clip(s string) string {
 		return strings.ToValidUTF8(s, "\uFFFD")
 	}
 	return strings.ToValidUTF8(s[:most], "\uFFFD") + "..."
-}
-
-// site puts a row's values together. Missing depth and uncertainty are absent; a
-// missing coordinate is an error.
-func site(lon, lat, depth, uncertainty string, comma bool) (setting.Site, error) {
-	s := setting.SiteAt(0, 0)
-	for _, f := range [...]struct {
-		name  string
-		value string
-		into  *float64
-		must  bool
-	}{{"lon", lon, &s.Lon, true}, {"lat", lat, &s.Lat, true}, {"depth_km", depth, &s.DepthKm, false}, {"uncertainty_km", uncertainty, &s.UncertaintyKm, false}} {
-		x, err := parseNumber(f.value, comma)
-		switch {
-		case err == nil:
-			*f.into = x
-		case errors.Is(err, errMissing) && !f.must:
-		default:
-			return s, fmt.Errorf("%s: %w", f.name, err)
-		}
-	}
-	return s, nil
 }
 
 // Names under which coordinates are found, with or without a unit.

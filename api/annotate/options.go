@@ -32,15 +32,19 @@ type Options struct {
 	// members; "" finds longitude and latitude by name, and takes no depth or
 	// uncertainty. DepthColumn ThirdCoordinate takes a feature's third coordinate.
 	LonColumn, LatColumn, DepthColumn, UncertaintyColumn string
-	Prefix                                               string      // of added CSV columns; "" means DefaultPrefix
-	Progress                                             func(Stats) // called now and then; may be nil
+	Prefix                                               string // of added CSV columns; "" means DefaultPrefix
+	// DepthUnit is that of the depths and elevations: UnitKm (also ""), UnitM or
+	// UnitFt. DepthDatum is what depths are counted from: SeaLevel (also "") or
+	// Ground, with which ElevationColumn names the ground's height above sea level.
+	DepthUnit, DepthDatum, ElevationColumn string
+	Progress                               func(Stats) // called now and then; may be nil
 }
 
 // DefaultPrefix stands before the names of added CSV columns.
 const DefaultPrefix = "ts_"
 
-// ThirdCoordinate as DepthColumn means the third coordinate of a point, in km,
-// positive down.
+// ThirdCoordinate as DepthColumn means the third coordinate of a point, in
+// DepthUnit, positive down.
 const ThirdCoordinate = "@z"
 
 var prefixForm = regexp.MustCompile(`^[A-Za-z][A-Za-z0-9_.-]{0,31}$`)
@@ -52,7 +56,7 @@ func (o *Options) fill() error {
 	if !prefixForm.MatchString(o.Prefix) {
 		return &InputError{Parameter: "prefix", Detail: fmt.Sprintf("%q must be a letter and at most 31 letters, digits, '_', '.' or '-'", o.Prefix)}
 	}
-	return nil
+	return o.fillDepth()
 }
 
 // Stats counts what was done.

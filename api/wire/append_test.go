@@ -104,8 +104,11 @@ func TestRoundingStaysInRange(t *testing.T) {
 // one that the domain should never give.
 func TestNothingThatIsNoNumber(t *testing.T) {
 	var a setting.Answer
-	if err := lookups(t)[0].At(setting.SiteAt(61, 5), &a); err != nil {
+	if err := lookups(t)[0].At(setting.SiteAt(62.2, -12), &a); err != nil {
 		t.Fatal(err)
+	}
+	if a.Slabs.Len() == 0 || a.Nearby.Len() == 0 {
+		t.Fatal("the site has no slab below it or no other boundary near")
 	}
 	for _, x := range []float64{math.NaN(), math.Inf(1), math.Inf(-1)} {
 		a.Site.DepthKm, a.Site.UncertaintyKm = x, x
@@ -114,6 +117,10 @@ func TestNothingThatIsNoNumber(t *testing.T) {
 			m := &b.Motion
 			m.RateMmYr, m.RateSigmaMmYr, m.AzimuthDeg, m.AzimuthSigmaDeg = x, x, x, x
 			m.OpeningMmYr, m.ShearMmYr, m.ObliquityDeg = x, x, x
+		}
+		for i := range a.Slabs.All() {
+			y := &a.Slabs.All()[i]
+			y.DepthKm, y.SigmaKm, y.DipDeg, y.DipAzimuthDeg, y.ClearanceKm, y.Distance3DKm = x, x, x, x, x, x
 		}
 		for i := range a.Nearby.All() {
 			a.Nearby.All()[i].DistanceKm, a.Nearby.All()[i].AzimuthDeg = x, x

@@ -22,7 +22,10 @@ func annotateFlags(f *flags) {
 	f.set.StringVar(&f.format, "format", "", "`csv`, ndjson or geojson; after the file's ending where empty")
 	f.set.StringVar(&f.lonColumn, "lon-column", "", "`column` of longitudes; found by name where empty")
 	f.set.StringVar(&f.latColumn, "lat-column", "", "`column` of latitudes; found by name where empty")
-	f.set.StringVar(&f.depthColumn, "depth-column", "", "`column` of depths in km, positive down from sea level; @z: a feature's third coordinate")
+	f.set.StringVar(&f.depthColumn, "depth-column", "", "`column` of depths, positive down; @z: a feature's third coordinate")
+	f.set.StringVar(&f.depthUnit, "depth-unit", annotate.UnitKm, "`unit` of depths and elevations: km, m or ft")
+	f.set.StringVar(&f.depthDatum, "depth-datum", annotate.SeaLevel, "what depths are counted `from`: sea_level or ground")
+	f.set.StringVar(&f.elevationColumn, "elevation-column", "", "`column` of the ground's elevation above sea level, for depths from ground")
 	f.set.StringVar(&f.uncertaintyCol, "uncertainty-column", "", "`column` of 1σ of the position in km")
 	f.set.StringVar(&f.prefix, "prefix", annotate.DefaultPrefix, "what stands before the `names` of added columns")
 }
@@ -85,7 +88,8 @@ func annotateFile(p *program, ctx context.Context, f *flags) error {
 	}
 	o := annotate.Options{
 		Lookup: l, LonColumn: f.lonColumn, LatColumn: f.latColumn, DepthColumn: f.depthColumn,
-		UncertaintyColumn: f.uncertaintyCol, Prefix: f.prefix, Progress: p.progress(),
+		UncertaintyColumn: f.uncertaintyCol, Prefix: f.prefix,
+		DepthUnit: f.depthUnit, DepthDatum: f.depthDatum, ElevationColumn: f.elevationColumn, Progress: p.progress(),
 	}
 	var st annotate.Stats
 	err = p.writeOut(f.out, func(w io.Writer) error {

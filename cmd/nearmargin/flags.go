@@ -20,6 +20,8 @@ type flags struct {
 	lonColumn, latColumn          string
 	depthColumn, uncertaintyCol   string
 	prefix                        string
+	depthUnit, depthDatum         string
+	elevationColumn               string
 	depthKm, uncertaintyKm, ageMa optional
 }
 

@@ -85,11 +85,17 @@ func (n *Network) PlateAt(p sphere.Vec) string {
 // the network that may be nearer still, against every edge of the outline.
 func (n *Network) NearestToOutline(s sphere.Shape) (sphere.Vec, float64) {
 	var best sphere.Vec
+	var edges []sphere.Arc
 	within := reachOf(maxChordSq)
 	for _, ring := range s.Outline() {
-		for _, v := range ring {
+		for i, v := range ring {
 			if got, ok := n.nearest(n.all, v, filter{}, within); ok {
 				best, within = v, reachOf(got.chordSq)
+			}
+			if i > 0 {
+				if arc, ok := sphere.NewArc(ring[i-1], v); ok {
+					edges = append(edges, arc)
+				}
 			}
 		}
 	}
@@ -98,27 +104,25 @@ func (n *Network) NearestToOutline(s sphere.Shape) (sphere.Vec, float64) {
 	for _, i := range n.legsWithin(centre, min(math.Pi, capRad+rad)) {
 		l := &n.legs[i]
 		for _, v := range [...]sphere.Vec{l.arc.A, l.arc.B} {
-			for _, ring := range s.Outline() {
-				if q, d := nearestOfRing(ring, v, rad); d < rad {
-					best, rad = q, d
-				}
+			if sphere.Angle(centre, v) < capRad+rad {
+				best, rad = nearestEdge(edges, v, best, rad)
 			}
 		}
 	}
 	return best, rad
 }
 
-// nearestOfRing returns the point of a ring that is nearest to v, where it is
-// nearer than the angle given.
-func nearestOfRing(ring []sphere.Vec, v sphere.Vec, rad float64) (sphere.Vec, float64) {
-	var best sphere.Vec
-	for i := 1; i < len(ring); i++ {
-		arc, ok := sphere.NewArc(ring[i-1], ring[i])
-		if !ok || rad < 1 && math.Abs(arc.N.Dot(v)) > math.Sin(rad) { // the great circle is farther away
+// nearestEdge returns the point of the edges that is nearest to v, where it is
+// nearer than rad, else best and rad.
+func nearestEdge(edges []sphere.Arc, v, best sphere.Vec, rad float64) (sphere.Vec, float64) {
+	sin := math.Sin(min(rad, math.Pi/2))
+	for i := range edges {
+		if math.Abs(edges[i].N.Dot(v)) > sin { // the great circle is farther away
 			continue
 		}
-		if q, _ := arc.Nearest(v); sphere.Angle(q, v) < rad {
+		if q, _ := edges[i].Nearest(v); sphere.Angle(q, v) < rad {
 			best, rad = q, sphere.Angle(q, v)
+			sin = math.Sin(min(rad, math.Pi/2))
 		}
 	}
 	return best, rad

@@ -49,8 +49,8 @@ func AreaDensity(p Vec) float64 {
 // of sin φ that is 0 at both poles, so that by Green's theorem its integral over
 // the ring is that of a smooth form along the ring, without a seam or a pole.
 // Along a great circle with unit normal N that form is N_z·b²·z·P(z²) ds. P has
-// the coefficients bandSums; the integral is taken by Gauss's rule with five
-// points on parts of at most 30°.
+// the coefficients bandSums; the integral is taken by Gauss's rule, with five points
+// on parts of at most 30°, and with two where the arc is shorter than 1°.
 //
 // Accuracy: 1e-12 of the arc's own part.
 func edgeArea(s *Arc) float64 {
@@ -61,8 +61,12 @@ func edgeArea(s *Arc) float64 {
 	}
 	t := s.N.Cross(s.A)
 	step, sum := length/float64(parts), 0.0
+	rule := gauss5[:]
+	if length < radPerDeg {
+		rule = gauss2[:]
+	}
 	for i := range parts {
-		for _, g := range gauss5 {
+		for _, g := range rule {
 			sin, cos := math.Sincos((float64(i) + g.x) * step)
 			z := s.A.Z*cos + t.Z*sin
 			z2, p := z*z, 0.0
@@ -75,8 +79,13 @@ func edgeArea(s *Arc) float64 {
 	return s.N.Z * wgs84B * wgs84B * sum * step
 }
 
-// gauss5 is Gauss's rule with five points on (0, 1) (Abramowitz & Stegun 1964,
-// Handbook of Mathematical Functions, table 25.4).
+// gauss2 and gauss5 are Gauss's rules with two and five points on (0, 1)
+// (Abramowitz & Stegun 1964, Handbook of Mathematical Functions, table 25.4).
+var gauss2 = [...]struct{ x, w float64 }{
+	{0.5 - 0.5773502691896257/2, 0.5},
+	{0.5 + 0.5773502691896257/2, 0.5},
+}
+
 var gauss5 = [...]struct{ x, w float64 }{
 	{0.5 - 0.9061798459386640/2, 0.2369268850561891 / 2},
 	{0.5 - 0.5384693101056831/2, 0.4786286704993665 / 2},
