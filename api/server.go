@@ -50,6 +50,7 @@ func New(cfg Config) *Server {
 	e.Use(s.observe)
 	for path, h := range map[string]echo.HandlerFunc{
 		"/v1/point":      s.point,
+		"/v1/area":       s.areaOfBox,
 		"/v1/boundaries": s.boundaries,
 		"/v1/plates":     s.plates,
 		"/v1/models":     s.models,
@@ -62,6 +63,7 @@ func New(cfg Config) *Server {
 		e.GET(path, h)
 		e.HEAD(path, h)
 	}
+	e.POST("/v1/area", s.area)
 	e.POST("/v1/annotate", s.annotate)
 	return s
 }

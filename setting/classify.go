@@ -53,11 +53,11 @@ type Cause struct {
 
 // classify labels the site and works out how sure the label is.
 func (l *Lookup) classify(p boundary.Place, a *Answer) {
-	var e evidence
-	l.gather(p, a.Plate.Code, a, &e)
+	e := &a.scratch[0]
+	l.gather(p, a.Plate.Code, a, e)
 	v, rule := e.decide()
 	a.Label, a.Family = v.label, v.label.family(e.zone)
-	l.control(a, &e, v)
+	l.control(a, e, v)
 	reason := e.reason(v, rule)
 	if reason.Slab != nil && a.IsControlled {
 		reason.Boundary, reason.Km = a.Controlling.Boundary, a.Controlling.DistanceKm
@@ -67,7 +67,7 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	if first < 0 {
 		first = e.decidingSlab()
 	}
-	l.addSlabs(p, a, &e, first)
+	l.addSlabs(p, a, e, first)
 
 	if v.also != NoLabel {
 		a.alternative(v.also, Cause{Kind: CauseRule, Rule: rule, Limit: v.limit}, e.zone)
@@ -75,8 +75,8 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	e.vary(a)
 	e.pastEnds(a)
 	if a.SideUncertain && l.m.plates[a.plateAcross] != nil {
-		var o evidence
-		l.gather(p, a.plateAcross, a, &o)
+		o := &a.scratch[1]
+		l.gather(p, a.plateAcross, a, o)
 		v, rule := o.decide()
 		a.alternative(v.label, Cause{Kind: CauseOtherSide, Name: a.plateAcross, Rule: rule, Limit: v.limit}, o.zone)
 	}

@@ -22,11 +22,14 @@ const (
 type asker struct {
 	o      *Options
 	answer setting.Answer
+	area   setting.AreaAnswer
+	isArea bool // area holds the answer, not answer
 }
 
 // object appends raw, a valid JSON object, with the answer added. It reports
 // whether there is one.
 func (k *asker) object(b []byte, raw []byte) ([]byte, bool) {
+	k.isArea = false
 	obj := gjson.ParseBytes(raw)
 	if obj.Get("type").Str == "Feature" && obj.Get("geometry").Exists() {
 		return k.feature(b, raw)
@@ -62,6 +65,9 @@ func (k *asker) appendResult(b []byte, err error) []byte {
 		return wire.AppendString(b, err.Error())
 	}
 	b = append(b, `"`+memberAnswer+`":`...)
+	if k.isArea {
+		return wire.AppendArea(b, &k.area)
+	}
 	return wire.AppendAnswer(b, &k.answer)
 }
 
@@ -138,10 +144,7 @@ func numberText(v gjson.Result, name string) (string, error) {
 // feature appends a GeoJSON Feature with the answer among its properties.
 func (k *asker) feature(b []byte, raw []byte) ([]byte, bool) {
 	f := gjson.ParseBytes(raw)
-	s, err := k.siteOfFeature(f)
-	if err == nil {
-		err = k.o.Lookup.At(s, &k.answer)
-	}
+	err := k.askFeature(f)
 	b = append(b, '{')
 	done := false
 	f.ForEach(func(key, value gjson.Result) bool {
@@ -168,6 +171,18 @@ func (k *asker) feature(b []byte, raw []byte) ([]byte, bool) {
 	return b, err == nil
 }
 
+// askFeature answers for a Feature of a Point, a Polygon or a MultiPolygon.
+func (k *asker) askFeature(f gjson.Result) error {
+	if k.isArea = isArea(f); k.isArea {
+		return k.askArea(f)
+	}
+	s, err := k.siteOfFeature(f)
+	if err != nil {
+		return err
+	}
+	return k.o.Lookup.At(s, &k.answer)
+}
+
 func (k *asker) siteOfFeature(f gjson.Result) (setting.Site, error) {
 	if t := f.Get("type"); t.Str != "Feature" {
 		return setting.Site{}, fmt.Errorf(`type is %s; it must be "Feature"`, orMissing(t.Raw))
@@ -177,7 +192,7 @@ func (k *asker) siteOfFeature(f gjson.Result) (setting.Site, error) {
 		return setting.Site{}, fmt.Errorf("geometry is %s; it must be a Point", orMissing(clip(g.Raw)))
 	}
 	if t := g.Get("type"); t.Str != "Point" {
-		return setting.Site{}, fmt.Errorf("geometry is %s; only a Point has an answer", orMissing(clip(t.Raw)))
+		return setting.Site{}, fmt.Errorf("geometry is %s; only a Point, a Polygon and a MultiPolygon have an answer", orMissing(clip(t.Raw)))
 	}
 	c := g.Get("coordinates").Array()
 	if len(c) < 2 || c[0].Type != gjson.Number || c[1].Type != gjson.Number {

@@ -14,15 +14,18 @@ func (s scale) px(x float64) float64 { return s.at + (x-s.from)*s.k }
 // tickSteps are the distances between labelled ticks, in km.
 var tickSteps = [...]float64{5, 10, 20, 25, 50, 100, 200, 250, 500, 1000}
 
-// ticks returns the multiples of the smallest step that keeps labels leastPx apart.
-func ticks(from, to, k, leastPx float64) (at []float64) {
-	step := tickSteps[len(tickSteps)-1]
+// tickStep returns the smallest step that keeps labels leastPx apart.
+func tickStep(k, leastPx float64) float64 {
 	for _, s := range tickSteps {
 		if s*k >= leastPx {
-			step = s
-			break
+			return s
 		}
 	}
+	return tickSteps[len(tickSteps)-1]
+}
+
+// ticks returns the multiples of a step within a range.
+func ticks(from, to, step float64) (at []float64) {
 	for i := math.Ceil(from / step); i*step <= to; i++ {
 		at = append(at, i*step+0)
 	}

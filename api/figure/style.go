@@ -1,6 +1,10 @@
 package figure
 
-import "strings"
+import (
+	"maps"
+	"slices"
+	"strings"
+)
 
 // look is how a class of elements looks: attributes that hold everywhere, and the
 // colours that take their place on a dark screen.
@@ -21,7 +25,7 @@ var looks = map[string]look{
 	"lead":   {attrs{"fill", "none", "stroke", "#1b1f24", "stroke-width", "0.8"}, "stroke:#e8ebee"},
 	"mark":   {attrs{"fill", "#1b1f24", "stroke", "#ffffff", "stroke-width", "1"}, "fill:#e8ebee;stroke:#14181d"},
 	"ring":   {attrs{"fill", "#ffffff", "stroke", "#1b1f24", "stroke-width", "1.5"}, "fill:#14181d;stroke:#e8ebee"},
-	"halo":   {attrs{"stroke", "#ffffff", "stroke-width", "4", "stroke-linejoin", "round", "paint-order", "stroke"}, "stroke:#14181d"},
+	"halo":   {attrs{"stroke", "#ffffff", "stroke-width", "4", "stroke-linejoin", "round", "fill", "none"}, "stroke:#14181d"},
 	"arc":    {attrs{"fill", "none", "stroke", "#9a6300", "stroke-width", "1"}, "stroke:#e3b75c"},
 	"arcbar": {attrs{"fill", "#e3a93c", "stroke", "#9a6300", "stroke-width", "1"}, "fill:#a87a22;stroke:#e3b75c"},
 	"slab0":  {attrs{"fill", "none", "stroke", "#0a5a99", "stroke-width", "2.6", "stroke-linejoin", "round"}, "stroke:#6fbaf5"},
@@ -42,18 +46,21 @@ var looks = map[string]look{
 // numSlabLooks is how many slabs look different from each other.
 const numSlabLooks = 4
 
+// classPrefix keeps the classes apart from those of a page that holds the figure.
+const classPrefix = "nm-"
+
 // like returns the attributes of a class, with more after them.
 func like(class string, more ...string) attrs {
-	return append(append(attrs{"class", class}, looks[class].attrs...), more...)
+	return append(append(attrs{"class", classPrefix + class}, looks[class].attrs...), more...)
 }
 
 // styleSheet turns the figure dark where a screen asks for that. On paper it stays
 // light.
-func styleSheet(classes []string) string {
+func styleSheet() string {
 	var b strings.Builder
 	b.WriteString("@media screen and (prefers-color-scheme:dark){")
-	for _, c := range classes {
-		b.WriteString("." + c + "{" + looks[c].dark + "}")
+	for _, c := range slices.Sorted(maps.Keys(looks)) {
+		b.WriteString("." + classPrefix + c + "{" + looks[c].dark + "}")
 	}
 	b.WriteString("}")
 	return b.String()

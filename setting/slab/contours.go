@@ -31,6 +31,7 @@ type contourSurface struct {
 	ends     [2]*sphere.Path // the arcs that join the contours' starts, and their ends
 	centre   sphere.Vec
 	capRad   float64
+	cosCap   float64
 }
 
 type contour struct {
@@ -126,6 +127,7 @@ func (s *contourSurface) bound() {
 			s.capRad = max(s.capRad, sphere.Angle(s.centre, leg.A), sphere.Angle(s.centre, leg.B))
 		}
 	}
+	s.cosCap = math.Cos(s.capRad)
 }
 
 // Contours returns the contours of a surface that was built from them, nil of any
@@ -143,7 +145,7 @@ func Contours(s Surface) []Contour {
 }
 
 func (s *contourSurface) At(p sphere.Vec) (Reading, bool) {
-	if p.Dot(s.centre) < math.Cos(s.capRad) {
+	if p.Dot(s.centre) < s.cosCap {
 		return Reading{}, false
 	}
 	for i, strip := range s.strips {

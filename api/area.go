@@ -1,0 +1,116 @@
+package api
+
+import (
+	"errors"
+	"fmt"
+	"io"
+	"mime"
+	"net/http"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+
+	"nearmargin/api/geojson"
+	"nearmargin/api/wire"
+	"nearmargin/setting"
+)
+
+// maxAreaBytes bounds the body of an area.
+const maxAreaBytes = 4 << 20
+
+// areaOfBox answers for a box of meridians and parallels.
+func (s *Server) areaOfBox(c echo.Context) error {
+	q := newQuery(c.Request().URL.RawQuery, "bbox", "motion", "motion_fallback", "model")
+	var area *setting.Area
+	if !q.values.Has("bbox") {
+		q.fault("bbox", "is missing; give west,south,east,north, such as bbox=-76,-40,-68,-30, or POST a GeoJSON polygon")
+	} else if box, err := parseBox(q.text("bbox")); err != nil {
+		q.fault("bbox", "%v", err)
+	} else if area, err = setting.NewBoxArea(box); err != nil {
+		var e *setting.AreaError
+		if len(q.faults) == 0 && errors.As(err, &e) && e.Fault == setting.AreaGeometry {
+			return impossible(FieldFault{Parameter: "bbox", Detail: e.Detail})
+		}
+		q.fault("bbox", "%v", err)
+	}
+	if err := q.err(); err != nil {
+		return err
+	}
+	return s.sendArea(c, q, area)
+}
+
+// area answers for a GeoJSON polygon.
+func (s *Server) area(c echo.Context) error {
+	q := newQuery(c.Request().URL.RawQuery, "motion", "motion_fallback", "model")
+	if err := q.err(); err != nil {
+		return err
+	}
+	if err := checkAreaType(c.Request()); err != nil {
+		return err
+	}
+	body, err := io.ReadAll(io.LimitReader(c.Request().Body, maxAreaBytes+1))
+	if err != nil {
+		return badRequest(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body breaks off: %v; send it whole", err)})
+	}
+	if len(body) > maxAreaBytes {
+		return tooLarge(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body is longer than %d bytes, which is the limit; generalise the polygon", maxAreaBytes)})
+	}
+	area, err := geojson.DecodeArea(body)
+	if err != nil {
+		return areaProblem(err)
+	}
+	return s.sendArea(c, q, area)
+}
+
+func (s *Server) sendArea(c echo.Context, q *query, area *setting.Area) error {
+	l, err := s.lookup(q, true)
+	if err != nil {
+		return err
+	}
+	var out setting.AreaAnswer
+	l.Area(area, &out)
+	return sendBytes(c, echo.MIMEApplicationJSON, append(wire.AppendArea(make([]byte, 0, 4096), &out), '\n'))
+}
+
+// areaProblem turns a fault of a polygon into a problem.
+func areaProblem(err error) error {
+	var f *geojson.Fault
+	if !errors.As(err, &f) {
+		return err
+	}
+	at := FieldFault{Line: f.Line, Column: f.Column, Detail: f.Detail}
+	if f.Line == 0 {
+		at.Pointer = &f.Pointer
+	}
+	switch f.Kind {
+	case setting.AreaGeometry:
+		return impossible(at)
+	case setting.AreaTooLarge:
+		return tooLarge(at)
+	}
+	return badRequest(at)
+}
+
+func impossible(f FieldFault) *Problem {
+	return newProblem(http.StatusUnprocessableEntity, "impossible-geometry", "The geometry is well formed and cannot be", f.Detail, f)
+}
+
+func tooLarge(f FieldFault) *Problem {
+	return newProblem(http.StatusRequestEntityTooLarge, "too-large", "The body is too large", f.Detail, f)
+}
+
+// checkAreaType refuses bodies that are not said to be JSON.
+func checkAreaType(r *http.Request) error {
+	given := r.Header.Get(echo.HeaderContentType)
+	media, params, err := mime.ParseMediaType(given)
+	if err != nil || media != "application/geo+json" && media != "application/json" {
+		return unsupported(echo.HeaderContentType, "content type %.60q holds no polygon; send application/geo+json or application/json", given)
+	}
+	if cs := params["charset"]; cs != "" && !strings.EqualFold(cs, "utf-8") && !strings.EqualFold(cs, "us-ascii") {
+		return unsupported(echo.HeaderContentType, "charset %.40q is not read; send UTF-8", cs)
+	}
+	if enc := r.Header.Get(echo.HeaderContentEncoding); enc != "" && enc != "identity" {
+		return unsupported(echo.HeaderContentEncoding, "content encoding %.40q is not read; send the body as it is", enc)
+	}
+	return nil
+}
