@@ -122,9 +122,11 @@ func referenceSlabs(t *testing.T, steps []*boundary.Boundary) []*slab.Slab {
 			return l
 		}
 		s := slab.Spec{ID: zone, Name: zone, Kind: slab.Subduction, ArcMinDepthKm: 80, Source: "Hayes et al. (2018), thinned", SourceStatus: "consulted"}
-		if zone == "him" || zone == "hin" {
-			s.Kind = slab.Collision
-			s.Subducting, s.Overriding = "IN", "EU"
+		switch zone { // no subduction step is near these
+		case "him", "hin":
+			s.Kind, s.Subducting, s.Overriding = slab.Collision, "IN", "EU"
+		case "mak":
+			s.Subducting, s.Overriding = "AR", "EU"
 		}
 		var err error
 		if s.Surface, err = slab.NewGrid(slab.Layers{Depth: layer(func(n node) float64 { return n.depthKm }), Sigma: layer(func(n node) float64 { return n.sigmaKm })}); err != nil {
