@@ -63,4 +63,3 @@ func (s Site) sigmaKm() float64 {
 	return 0
 }
 
-func (s Site) lonLat() sphere.LonLat { return sphere.LonLat{Lon: sphere.WrapLon(s.Lon), Lat: s.Lat} }
