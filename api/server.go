@@ -49,16 +49,18 @@ func New(cfg Config) *Server {
 	e.HTTPErrorHandler = s.handleError
 	e.Use(s.observe)
 	for path, h := range map[string]echo.HandlerFunc{
-		"/v1/point":      s.point,
-		"/v1/area":       s.areaOfBox,
-		"/v1/boundaries": s.boundaries,
-		"/v1/plates":     s.plates,
-		"/v1/models":     s.models,
-		"/v1/models/:id": s.model,
-		"/healthz":       s.health,
-		"/readyz":        s.ready,
-		"/metrics":       s.metrics.handler(cfg.Registry),
-		"/openapi.json":  s.openapi,
+		"/v1/point":       s.point,
+		"/v1/area":        s.areaOfBox,
+		"/v1/boundaries":  s.boundaries,
+		"/v1/section":     s.section,
+		"/v1/section.svg": s.sectionSVG,
+		"/v1/plates":      s.plates,
+		"/v1/models":      s.models,
+		"/v1/models/:id":  s.model,
+		"/healthz":        s.health,
+		"/readyz":         s.ready,
+		"/metrics":        s.metrics.handler(cfg.Registry),
+		"/openapi.json":   s.openapi,
 	} {
 		e.GET(path, h)
 		e.HEAD(path, h)

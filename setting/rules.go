@@ -65,7 +65,7 @@ var Rules = [numRules]Rule{
 		"over a subducting slab, by the depth of its top; of two slabs one in the arc band decides, else the shallowest. Where the slab goes down from continental convergence within collision_upper, collision_zone is an alternative. Past the down-dip rim the rim's depth counts, up to the limit and never high; past a lateral end it gives an alternative", decideSlab},
 	{ruleTrenchDistance, "trench_distance", []Label{Forearc, VolcanicArc, BackArc},
 		[]LimitID{limitForearc, limitArc, limitBackArc},
-		"on the overriding side of a subduction boundary, by distance from the trench where no slab surface is known; where one is, only between the trench and its start", decideTrenchDistance},
+		"on the overriding side of a subduction boundary, by distance from the trench where no slab surface is known; where one is known of the trench but not below the site, forearc alone, and high only between the trench and the slab's start", decideTrenchDistance},
 	{ruleOuterRise, "outer_rise", []Label{OuterRise}, []LimitID{limitOuterRise},
 		"on the subducting plate, seaward of the trench", decideOuterRise},
 	{ruleRidgeFlank, "ridge_flank", []Label{RidgeFlank}, []LimitID{limitFlankAge, limitFlank},
@@ -200,17 +200,16 @@ func decideTrenchDistance(e *evidence) (verdict, bool) {
 	if e.trenchSquare < minTrenchSquare {
 		return undecided, false
 	}
-	if e.trenchHasSlab && !e.beforeSlab() {
-		return undecided, false
-	}
 	for _, band := range [...]struct {
 		limit LimitID
 		label Label
 	}{{limitForearc, Forearc}, {limitArc, VolcanicArc}, {limitBackArc, BackArc}} {
 		if e.km[sourceOverriding] < e.limit[band.limit] {
-			return decided(band.label, sourceOverriding, band.limit)
+			v, _ := decided(band.label, sourceOverriding, band.limit)
+			v.neverHi = e.trenchHasSlab && !e.beforeSlab() // off the end of the slab that is known
+			return v, true
 		}
-		if e.trenchHasSlab { // up the dip from where the slab is known
+		if e.trenchHasSlab { // farther away the slab itself would say
 			break
 		}
 	}

@@ -3,8 +3,6 @@ package setting
 import (
 	"fmt"
 	"math"
-
-	"nearmargin/setting/sphere"
 )
 
 // Site is a place that is asked about. NaN stands for "not given".
@@ -62,4 +60,3 @@ func (s Site) sigmaKm() float64 {
 	}
 	return 0
 }
-

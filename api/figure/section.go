@@ -104,6 +104,9 @@ func (f *sectionFigure) draw() float64 {
 	y = f.paragraph(f.title(), "ink", titleSize, marginX, y, figureW-2*marginX, "font-weight", "bold")
 	y = f.paragraph(f.subtitle(), "soft", textSize, marginX, y+3, figureW-2*marginX)
 	top := y + 10 + 3*laneH
+	if !f.s.HasTrench { // the uppermost lane is empty
+		top -= laneH
+	}
 	f.y.at = top
 
 	f.drawGrid()

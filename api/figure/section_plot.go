@@ -3,6 +3,7 @@ package figure
 import (
 	"math"
 	"slices"
+	"strconv"
 
 	"nearmargin/setting/slab"
 )
@@ -96,6 +97,9 @@ func (f *sectionFigure) drawSlab(profile int) {
 	})
 }
 
+// mostJoinKm is the widest gap that is drawn across.
+const mostJoinKm = 150
+
 // join returns the dotted line from the trench to where the slab is first known,
 // and whether there is a gap to draw it across.
 func (f *sectionFigure) join() ([]point, bool) {
@@ -107,7 +111,7 @@ func (f *sectionFigure) join() ([]point, bool) {
 		if !p.Has(i) {
 			continue
 		}
-		if km := f.s.Samples[i].Km; km > 0 {
+		if km := f.s.Samples[i].Km; km > 0 && km <= mostJoinKm {
 			return []point{f.at(0, 0), f.at(km, p.Readings[i].DepthKm)}, true
 		}
 		break
@@ -165,13 +169,14 @@ func (f *sectionFigure) drawAxes() float64 {
 		text(number(km, 0), x, low+19, "middle")
 	}
 	x, y := px(marginX+10), px((f.y.at+low)/2)
-	f.content("text", "Depth (km)", like("ink", "x", x, "y", y, "font-size", px(textSize), "text-anchor", "middle", "transform", "rotate(-90 "+x+" "+y+")"))
+	depth := "Depth (km)"
+	if f.exaggeration != 1 {
+		depth += ", exaggerated \u00d7" + strconv.FormatFloat(f.exaggeration, 'g', -1, 64)
+	}
+	f.content("text", depth, like("ink", "x", x, "y", y, "font-size", px(textSize), "text-anchor", "middle", "transform", "rotate(-90 "+x+" "+y+")"))
 
 	up, down := f.directions()
-	name := "Distance from the trench (km)"
-	if !f.s.HasTrench {
-		name = "Distance from the slab\u2019s up-dip edge (km)"
-	}
+	name := "Distance from the " + f.zero() + " (km)"
 	y2 := low + 38
 	middle := f.x.at + f.plotW/2
 	if half := textWidth(name, textSize)/2 + 12 + math.Max(textWidth(up, textSize), textWidth(down, textSize)); 2*half > f.plotW {
@@ -189,7 +194,7 @@ func (f *sectionFigure) drawAxes() float64 {
 // plot. A label runs to the right of its mark where there is room; trench and site
 // change lanes where a lead would else run through a label.
 func (f *sectionFigure) drawMarks() {
-	lane := func(n int) float64 { return f.y.at - float64(3-n)*laneH + 13 } // baseline
+	lane := func(n int) float64 { return f.y.at - float64(3-n)*laneH + 13 } // baseline, the uppermost lane is 0
 	lead := func(x, from float64) {
 		f.leaf("path", like("lead", "d", pathOf([]point{{x, from}, {x, f.y.at}}, false)))
 	}

@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"nearmargin/setting"
+	"nearmargin/setting/boundary"
 	"nearmargin/setting/slab"
 	"nearmargin/setting/sphere"
 )
@@ -80,16 +81,23 @@ func (f *sectionFigure) trenchLabel() string {
 	return fmt.Sprintf("%s \u00b1 %s km", t.Boundary.Name(), number(t.Boundary.SigmaKm(), 0))
 }
 
+// zero names what distances count from.
+func (f *sectionFigure) zero() string {
+	switch {
+	case !f.s.HasTrench:
+		return "slab\u2019s up-dip edge"
+	case f.s.Trench.Boundary.Type() == boundary.Subduction:
+		return "trench"
+	}
+	return "plate boundary"
+}
+
 // siteLabel says where the site lies to the trench and what is below it.
 func (f *sectionFigure) siteLabel() string {
 	s := f.s
-	from := "the trench"
-	if !s.HasTrench {
-		from = "the up-dip edge"
-	}
-	text := fmt.Sprintf("site, %s km from %s", number(math.Abs(s.SiteKm), 0), from)
+	text := fmt.Sprintf("site, %s km from the %s", number(math.Abs(s.SiteKm), 0), f.zero())
 	if s.SiteKm < 0 && s.HasTrench {
-		text += " (seaward)"
+		text += " on the side that goes down"
 	}
 	if !s.IsBelow {
 		return text + "; no slab known below it"
@@ -180,7 +188,7 @@ func (f *sectionFigure) motionText() string {
 	if m.OpeningMmYr > 0 {
 		square = "opening"
 	}
-	text += fmt.Sprintf("; %s square to the trench %s mm/yr", square, number(math.Abs(m.OpeningMmYr), 1))
+	text += fmt.Sprintf("; %s square to it %s mm/yr", square, number(math.Abs(m.OpeningMmYr), 1))
 	if !math.IsNaN(m.ObliquityDeg) {
 		text += fmt.Sprintf(", obliquity %s\u00b0", number(m.ObliquityDeg, 0))
 	}

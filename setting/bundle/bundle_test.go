@@ -92,6 +92,25 @@ func TestWrittenFormCutsLinesIntoRuns(t *testing.T) {
 	}
 }
 
+// Legs of one kind with a name of their own are a boundary of their own.
+func TestWrittenFormCutsWhereTheNameChanges(t *testing.T) {
+	m := mustRead(t, changed(t, "testdata/written", "boundaries/a.txt", "30 2.125", "30 2.125 trench Second Front")).Model
+	b, ok := m.Network().Boundary("front-5")
+	if !ok || b.Name() != "Second Front" || b.Type() != boundary.Subduction || len(b.Path()) != 2 {
+		t.Errorf("front-5 is %+v, want the trench Second Front of one leg", b)
+	}
+}
+
+// People read the files: &, < and > stand as they are.
+func TestWritingEscapesNothing(t *testing.T) {
+	b := mustRead(t, changed(t, "testdata/written", "boundaries/a.txt", "Front fracture zone", "Front & <fracture> zone"))
+	for file, want := range map[string]string{"boundaries.geojson": `"Front & <fracture> zone"`, "model.json": "A small model: three plates <made up>"} {
+		if got := string(b.File(file)); !strings.Contains(got, want) {
+			t.Errorf("%s holds no %s:\n%s", file, want, got)
+		}
+	}
+}
+
 func TestWriteAndReadAgain(t *testing.T) {
 	for _, from := range []string{"testdata/written", "testdata/geojson", "../builtin/model"} {
 		t.Run(filepath.Base(from), func(t *testing.T) {
