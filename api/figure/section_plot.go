@@ -21,8 +21,8 @@ func (f *sectionFigure) at(km, depthKm float64) point {
 func (f *sectionFigure) bottom() float64 { return f.y.at + f.plotH }
 
 const (
-	leastTickX = 62
-	leastTickY = 36
+	leastTickX = 50
+	leastTickY = 30
 )
 
 func (f *sectionFigure) depths() []float64 {
@@ -199,11 +199,11 @@ func (f *sectionFigure) drawMarks() {
 		f.leaf("path", like("lead", "d", pathOf([]point{{x, from}, {x, f.y.at}}, false)))
 	}
 	site := f.x.px(f.s.SiteKm)
-	siteAt := f.beside(f.siteLabel(), site)
+	siteAt := f.beside(site, f.siteLabel(), f.shortSiteLabel())
 	trenchLane, siteLane := 0, 1
 	if f.s.HasTrench {
 		x := f.x.px(0)
-		trenchAt := f.beside(f.trenchLabel(), x)
+		trenchAt := f.beside(x, f.trenchLabel(), f.s.Trench.Boundary.Name())
 		if siteAt.covers(x) && !trenchAt.covers(site) {
 			trenchLane, siteLane = 1, 0
 		}
@@ -231,7 +231,7 @@ func (f *sectionFigure) drawArcBar(marks ...float64) {
 		x1, x2 := f.x.px(r.FromKm), f.x.px(r.ToKm)
 		f.leaf("rect", like("arcbar", "x", px(x1), "y", px(f.y.at-9), "width", px(math.Max(1, x2-x1)), "height", "7"))
 	}
-	at := f.beside("arc band", f.x.px(ranges[len(ranges)-1].ToKm))
+	at := f.beside(f.x.px(ranges[len(ranges)-1].ToKm), "arc band")
 	for _, x := range marks {
 		if at.covers(x) {
 			at = leftOf("arc band", f.x.px(ranges[0].FromKm))
@@ -262,14 +262,21 @@ func (l *labelAt) markX() float64 {
 
 const labelGap = 6 // between a mark and its label
 
-// beside places a label to the right of x, or to the left where it would leave the
-// figure.
-func (f *sectionFigure) beside(s string, x float64) labelAt {
-	w := textWidth(s, textSize)
-	if x+labelGap+w > figureW-8 {
-		return leftOf(s, x)
+// beside places the first of the texts that fits on the figure, to the right of x
+// where there is room, else to the left.
+func (f *sectionFigure) beside(x float64, texts ...string) (at labelAt) {
+	const edge = 8
+	for _, s := range texts {
+		w := textWidth(s, textSize)
+		at = labelAt{s, x + labelGap, x + labelGap + w, x + labelGap, "start"}
+		if at.right <= figureW-edge {
+			return at
+		}
+		if at = leftOf(s, x); at.left >= edge {
+			return at
+		}
 	}
-	return labelAt{s, x + labelGap, x + labelGap + w, x + labelGap, "start"}
+	return at
 }
 
 func leftOf(s string, x float64) labelAt {

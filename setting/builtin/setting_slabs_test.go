@@ -125,7 +125,7 @@ func TestTwoSlabsBelowTokyo(t *testing.T) {
 func TestBuiltinSlabsDeepenDownTheDip(t *testing.T) {
 	const (
 		stepKm, steps = 5.0, 40
-		riseKm        = 0.25 // in one step
+		riseKm        = 1.5 // in one step
 		curlKm        = 25.0
 	)
 	m := model(t)

@@ -49,6 +49,9 @@ func (r *Reading) Relate(siteDepthKm float64) (Relation, float64) {
 	return Below, clearance
 }
 
+// goldenAngle in radians: its multiples never repeat a direction.
+const goldenAngle = 2.399963229728653
+
 // Distance3D returns the shortest distance in km from a site at a depth to the
 // slab's surface, within the footprint. p must lie within it.
 //
@@ -87,17 +90,19 @@ func (s *Slab) Distance3D(p sphere.Vec, siteDepthKm float64) float64 {
 			}
 		}
 	}
+	turn := 0.0
 	for step := radius / rings; step > radius/2000 && step > 0.005; {
 		moved := false
+		turn += goldenAngle // a valley along a kink of the surface is met in one of the rounds
 		for j := range 8 {
-			sin, cos := math.Sincos(math.Pi / 4 * float64(j))
+			sin, cos := math.Sincos(turn + math.Pi/4*float64(j))
 			if d := distance(be+step*sin, bn+step*cos); d < best {
 				best, be, bn, moved = d, be+step*sin, bn+step*cos, true
 				break
 			}
 		}
 		if !moved {
-			step /= 2
+			step *= 0.7
 		}
 	}
 	return best

@@ -101,7 +101,7 @@ func New(s Spec) (*Slab, error) {
 		return fail("id is empty")
 	case s.Name == "":
 		return fail("name is empty")
-	case s.Kind == NoKind:
+	case s.Kind == NoKind || int(s.Kind) >= len(kindNames):
 		return fail("kind is missing; the kinds are %v", AllKinds)
 	case s.Subducting == "" || s.Overriding == "":
 		return fail("subducting_plate %q and overriding_plate %q must both be given", s.Subducting, s.Overriding)

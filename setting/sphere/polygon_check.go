@@ -156,6 +156,11 @@ func (p *Polygon) checkHoles() error {
 	return nil
 }
 
+func holeOutside(ring int, position int32, v Vec) error {
+	at := v.LonLat()
+	return shapeError(ring, int(position), "the hole lies outside of the polygon's outer ring, near %.6g, %.6g; a hole must be inside it", at.Lon, at.Lat)
+}
+
 // ringCount says of a place which rings it is inside of, and which it is on.
 type ringCount struct {
 	p      *Polygon
@@ -179,10 +184,10 @@ func (c *ringCount) check(q planar, ring, position int32) error {
 			c.on[e.ring] = true
 		}
 	}
-	at := c.p.round(q).LonLat()
 	if !c.in[0] && !c.on[0] {
-		return shapeError(int(ring), int(position), "the hole lies outside of the polygon's outer ring, near %.6g, %.6g; a hole must be inside it", at.Lon, at.Lat)
+		return holeOutside(int(ring), position, c.p.round(q))
 	}
+	at := c.p.round(q).LonLat()
 	for _, r := range c.seen {
 		if r != 0 && r != ring && c.in[r] && !c.on[r] {
 			return shapeError(int(ring), int(position), "the hole overlaps the hole of ring %d, near %.6g, %.6g; make one hole of the two", r, at.Lon, at.Lat)
