@@ -12,23 +12,28 @@ type RimPoint struct {
 	DipAzimuthDeg float64 // NaN where the surface is flat
 }
 
+// upDipEveryKm is how far the places along a contour are apart, at most.
+const upDipEveryKm = 10
+
 // upDipRangeKm is how much deeper than its shallowest place the up-dip rim of a
 // grid may lie.
 const upDipRangeKm = 30
 
 // UpDipRim returns places along the end of a surface that lies towards the trench:
-// the vertices of the shallowest contour, or the rim nodes of a grid that lie at
-// most 30 km deeper than the shallowest of them.
+// every 10 km of the shallowest contour, or the rim nodes of a grid that lie at most
+// 30 km deeper than the shallowest of them.
 func UpDipRim(s Surface) []RimPoint {
 	var out []RimPoint
 	switch s := s.(type) {
 	case *contourSurface:
-		path := s.contours[0].given.Path
-		for i, p := range path {
-			j := max(i, 1)
-			a, b := sphere.FromLonLat(path[j-1]), sphere.FromLonLat(path[j])
-			at := sphere.FromLonLat(p)
-			out = append(out, RimPoint{at, sphere.Wrap360(at.Azimuth(b.Sub(a)) + 90)})
+		top := s.contours[0].path
+		for i := range top.Len() {
+			leg := top.Leg(i)
+			n := math.Ceil(sphere.RadToKm(leg.Length()) / upDipEveryKm)
+			for k := 0.5; k < n; k++ {
+				at := leg.At(k / n)
+				out = append(out, RimPoint{at, sphere.Wrap360(at.Azimuth(leg.Tangent(at)) + 90)})
+			}
 		}
 	case *gridSurface:
 		top := math.Inf(1)

@@ -328,7 +328,7 @@ func (b *builder) slabOf(g *Grids, ties Ties) (*slab.Slab, error) {
 	if err != nil {
 		return nil, fmt.Errorf("%s: %w", g.File, err)
 	}
-	tie := ties.Of(surface, zone.kind)
+	tie := ties.Of(surface, zone.kind, Tie{})
 	if len(tie.BoundaryIDs) == 0 {
 		b.warn("slab_without_boundary", "slab %s (%s): no boundary from which it could go down lies within %d km of its up-dip rim; it is taken to lie within plate %s", g.Zone, zone.name, tieReachKm, tie.Overriding)
 	}
@@ -349,7 +349,7 @@ func (b *builder) keptSlabs(imported []*slab.Slab, ties Ties) ([]*slab.Slab, err
 		}
 		if b.network != b.q.Base.Model.Network() {
 			spec := s.Spec
-			tie := ties.Of(s.Surface, s.Kind)
+			tie := ties.Of(s.Surface, s.Kind, Tie{Subducting: s.Subducting, Overriding: s.Overriding})
 			spec.BoundaryIDs, spec.Subducting, spec.Overriding = tie.BoundaryIDs, tie.Subducting, tie.Overriding
 			var err error
 			if s, err = slab.New(spec); err != nil {

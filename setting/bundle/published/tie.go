@@ -12,9 +12,13 @@ import (
 
 // The rule by which slabs are tied to boundaries, see [Ties.Of].
 const (
-	tieReachKm   = 100 // how far the up-dip rim may lie from the boundary
-	tieSeawardKm = 30  // how far of that on the side of the plate that goes down
-	tieMinPlaces = 2   // how many places of the rim a boundary must be nearest to
+	tieReachKm   = 100  // how far the up-dip rim may lie from the boundary
+	tieSeawardKm = 30   // how far of that on the side of the plate that goes down
+	tieMinPlaces = 2    // how many places of the rim a boundary must be nearest to
+	tieMinShare  = 0.05 // and which share of all that are near to any
+	// tieEnoughShare is the share of the rim that must be near to a subduction
+	// boundary, or other convergent ones are candidates as well.
+	tieEnoughShare = 0.2
 )
 
 // Ties ties slabs to the boundaries that they go down from.
@@ -28,24 +32,23 @@ type Tie struct {
 }
 
 // Of ties a surface. Each place of its up-dip rim ([slab.UpDipRim]) votes for the
-// subduction boundary nearest to it, if that lies within 100 km, and if the place
-// is on the side of the plate that stays up or at most 30 km on the other, and if
-// the slab dips away from the boundary towards that side. Boundaries with two votes
-// are tied, and their plates are those of most votes. Where that gives none, and
-// first for a slab of a collision, convergent boundaries of any type are tried.
-func (t Ties) Of(s slab.Surface, kind slab.Kind) Tie {
+// nearest subduction boundary that lies within 100 km, from which the slab dips
+// away under the plate that stays up, and on whose side of that plate the place
+// lies, or at most 30 km on the other. Boundaries with at least two votes and 5 % of
+// all are tied, and the plates are those of most votes. Where less than a fifth of the
+// rim votes, and for a slab of a collision, boundaries of continental and oceanic
+// convergence are candidates too. Plates that are known of the slab (the zero Tie
+// where none are) keep a boundary from a vote that would exchange their parts.
+func (t Ties) Of(s slab.Surface, kind slab.Kind, known Tie) Tie {
 	rim := slab.UpDipRim(s)
-	sets := [][]boundary.Type{
-		{boundary.Subduction},
-		{boundary.Subduction, boundary.ContinentalConvergent, boundary.OceanicConvergent},
-	}
-	if kind == slab.Collision {
-		sets = sets[1:]
-	}
-	for _, types := range sets {
-		if tie, ok := t.vote(rim, types); ok {
+	wide := []boundary.Type{boundary.Subduction, boundary.ContinentalConvergent, boundary.OceanicConvergent}
+	if kind == slab.Subduction {
+		if tie, share := t.vote(rim, wide[:1], known); share >= tieEnoughShare {
 			return tie
 		}
+	}
+	if tie, share := t.vote(rim, wide, known); share > 0 {
+		return tie
 	}
 	// within one plate: that of the middle of the slab
 	spots := slab.Spots(s)
@@ -57,24 +60,23 @@ func (t Ties) Of(s slab.Surface, kind slab.Kind) Tie {
 	return Tie{Subducting: code, Overriding: code}
 }
 
-func (t Ties) vote(rim []slab.RimPoint, types []boundary.Type) (Tie, bool) {
+// vote returns the tie that a rim votes for, and the share of its places that vote;
+// 0 where there is no tie.
+func (t Ties) vote(rim []slab.RimPoint, types []boundary.Type, known Tie) (Tie, float64) {
 	votes := map[string]int{}
 	plates := map[[2]string]int{}
+	all := 0
 	for _, r := range rim {
-		h, ok := t.nearest(r.At, types)
-		if !ok {
-			continue
+		if c, ok := t.nearest(boundary.PlaceAt(r.At.LonLat()), r.DipAzimuthDeg, types, known); ok {
+			votes[c.id]++
+			plates[c.plates]++
+			all++
 		}
-		down, up := dipping(r, h)
-		if down == "" {
-			continue
-		}
-		votes[h.Boundary.ID()]++
-		plates[[2]string{down, up}]++
 	}
-	maps.DeleteFunc(votes, func(_ string, n int) bool { return n < tieMinPlaces })
+	least := max(tieMinPlaces, int(math.Ceil(tieMinShare*float64(all))))
+	maps.DeleteFunc(votes, func(_ string, n int) bool { return n < least })
 	if len(votes) == 0 {
-		return Tie{}, false
+		return Tie{}, 0
 	}
 	best := [2]string{}
 	for _, pair := range slices.SortedFunc(maps.Keys(plates), func(a, b [2]string) int { return slices.Compare(a[:], b[:]) }) {
@@ -82,29 +84,56 @@ func (t Ties) vote(rim []slab.RimPoint, types []boundary.Type) (Tie, bool) {
 			best = pair
 		}
 	}
-	return Tie{slices.Sorted(maps.Keys(votes)), best[0], best[1]}, true
+	return Tie{slices.Sorted(maps.Keys(votes)), best[0], best[1]}, float64(all) / float64(len(rim))
 }
 
-func (t Ties) nearest(at sphere.Vec, types []boundary.Type) (best boundary.Hit, ok bool) {
-	p := boundary.PlaceAt(at.LonLat())
+// against reports whether what is known of a slab's plates speaks against a pair.
+func (k Tie) against(down, up string) bool {
+	return k.Subducting != k.Overriding && (k.Subducting == up || k.Overriding == down)
+}
+
+// candidate is a boundary that a slab may go down from.
+type candidate struct {
+	id     string
+	plates [2]string // the one that goes down, and the other
+	km     float64
+}
+
+// nearest returns the nearest boundary of the types that fits a place of a rim.
+func (t Ties) nearest(r boundary.Place, dip float64, types []boundary.Type, known Tie) (best candidate, ok bool) {
+	consider := func(h boundary.Hit) {
+		down, up := dipping(dip, h)
+		if down == "" || known.against(down, up) || ok && h.DistanceKm >= best.km {
+			return
+		}
+		best, ok = candidate{h.Boundary.ID(), [2]string{down, up}, h.DistanceKm}, true
+	}
 	for _, kind := range types {
-		if h, found := t.network.NearestOf(p, kind, "", boundary.AnyRole, tieReachKm); found && (!ok || h.DistanceKm < best.DistanceKm) {
-			best, ok = h, true
+		if _, any := t.network.NearestOf(r, kind, "", boundary.AnyRole, tieReachKm); !any {
+			continue
+		}
+		// the nearest of all may dip the other way: that of every plate is asked
+		for _, code := range t.network.Plates() {
+			for _, role := range [...]boundary.Role{boundary.Overriding, boundary.Bounding} {
+				if h, found := t.network.NearestOf(r, kind, code, role, tieReachKm); found {
+					consider(h)
+				}
+			}
 		}
 	}
 	return best, ok
 }
 
-// dipping returns the plates of a boundary that a slab with this place on its rim
-// would take down and leave up, "" where the place or its dip speaks against it.
-func dipping(r slab.RimPoint, h boundary.Hit) (down, up string) {
+// dipping returns the plates of a boundary that a slab with this dip at this place
+// would take down and leave up, "" where the place or the dip speaks against it.
+func dipping(dip float64, h boundary.Hit) (down, up string) {
 	b := h.Boundary
-	if math.IsNaN(r.DipAzimuthDeg) {
+	if math.IsNaN(dip) {
 		return "", ""
 	}
 	// the azimuth square to the boundary, to its left
 	left := sphere.Wrap360(h.PathAzimuthDeg - 90)
-	toLeft := math.Cos((r.DipAzimuthDeg-left)*math.Pi/180) > 0
+	toLeft := math.Cos((dip-left)*math.Pi/180) > 0
 	down, up = b.Left(), b.Right()
 	if toLeft {
 		down, up = up, down

@@ -63,7 +63,6 @@ func readVelocityRows(r *csv.Reader, t *Tally, form bundle.MotionForm, columns [
 		if err == io.EOF {
 			break
 		}
-		line, _ := r.FieldPos(0)
 		if pe := (*csv.ParseError)(nil); errors.As(err, &pe) {
 			t.reject(pe.StartLine, "%v", pe.Err)
 			continue
@@ -71,6 +70,7 @@ func readVelocityRows(r *csv.Reader, t *Tally, form bundle.MotionForm, columns [
 		if err != nil {
 			return nil, err
 		}
+		line, _ := r.FieldPos(0)
 		row, byName, err := velocityRow(rec, form, columns, p)
 		if err == nil && lines[row.Plate] > 0 {
 			err = fmt.Errorf("plate %s stands in line %d already", row.Plate, lines[row.Plate])
