@@ -3,6 +3,7 @@ package bundle
 import (
 	"io/fs"
 	"path"
+	"slices"
 	"time"
 )
 
@@ -47,6 +48,7 @@ func (m memory) Glob(pattern string) (out []string, err error) {
 			out = append(out, name)
 		}
 	}
+	slices.Sort(out)
 	return out, nil
 }
 

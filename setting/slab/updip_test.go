@@ -7,8 +7,6 @@ import (
 	"nearmargin/setting/sphere"
 )
 
-func nan() float64 { return math.NaN() }
-
 // ramp is a grid on which depth grows by 20 km a degree to the east from 170° E, with
 // a rim of nodes that have none.
 func ramp() *Layer {
@@ -17,7 +15,7 @@ func ramp() *Layer {
 		for lat := -4.0; lat <= 4; lat++ {
 			z := 20 * (lon - 169)
 			if lon < 170 || lon > 175 || math.Abs(lat) > 3 {
-				z = nan()
+				z = math.NaN()
 			}
 			nodes = append(nodes, Node{lon, lat, z})
 		}
@@ -100,7 +98,7 @@ func TestCropKeepsEveryDepth(t *testing.T) {
 			}
 		}
 	}
-	empty := Layers{Depth: &Layer{Step: 1, Cols: 2, Rows: 2, Values: []float32{float32(nan()), float32(nan()), float32(nan()), float32(nan())}}}
+	empty := Layers{Depth: &Layer{Step: 1, Cols: 2, Rows: 2, Values: []float32{float32(math.NaN()), float32(math.NaN()), float32(math.NaN()), float32(math.NaN())}}}
 	if got := empty.Crop(); got.Depth.Cols != 2 {
 		t.Error("a grid without a depth was cropped")
 	}
