@@ -68,8 +68,8 @@ var classes = map[string]boundary.Type{
 }
 
 // classSigmaKm is 1σ of a line's position, by type, where the publisher gives
-// none: the project's judgement, the same as in its own network. Ridges and
-// trenches are seen in the sea floor; belts on land are wide.
+// none: the project's judgement, no source. Ridges and trenches are seen in the sea
+// floor; belts on land are wide.
 var classSigmaKm = [boundary.NumTypes]float64{
 	boundary.Subduction:            12,
 	boundary.SpreadingRidge:        10,
