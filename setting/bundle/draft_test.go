@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 	"testing"
+	"testing/fstest"
 
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
@@ -164,6 +165,21 @@ func TestDraftSlabs(t *testing.T) {
 		t.Fatal(err)
 	}
 	sameFiles(t, mustBundle(t, next), b)
+	// also those of a grid that is written otherwise than a draft would
+	dir := fstest.MapFS{}
+	for _, name := range b.Files() {
+		dir[name] = &fstest.MapFile{Data: b.File(name)}
+	}
+	delete(dir, "slabs/one/depth.xyz.gz")
+	dir["slabs/one/depth.xyz"] = &fstest.MapFile{Data: []byte("10,0,10.12345\n10.5,0,20\n10,0.5,10\n10.5,0.5,20\n")}
+	plain := mustRead(t, dir)
+	if next, err = NewDraft(plain); err != nil {
+		t.Fatal(err)
+	}
+	if err := next.SetSlabs(plain.Model.Slabs()); err != nil {
+		t.Fatal(err)
+	}
+	sameFiles(t, mustBundle(t, next), plain)
 	if err := next.SetSlabs(nil); err != nil {
 		t.Fatal(err)
 	}

@@ -123,6 +123,10 @@ func TestRejectedLinesAreNamedAndKept(t *testing.T) {
 	if _, r, err := Build(q); err == nil || !strings.Contains(err.Error(), "1 of 4 lines were rejected, more than a share of 0.01") || r.Rejected() != 1 {
 		t.Errorf("error %v, report %+v", err, r)
 	}
+	q.MaxRejected = 0.24
+	if _, _, err := Build(q); err == nil {
+		t.Error("a quarter of the lines was rejected, 0.24 are allowed, and the build went on")
+	}
 	q.MaxRejected = 0.25
 	b, r := mustBuild(t, q)
 	if r.Rejected() != 1 {

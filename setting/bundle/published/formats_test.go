@@ -59,6 +59,7 @@ func TestParseStep(t *testing.T) {
 		{"not finite", edit("12.5", " Inf"), "the speed"},
 		{"no length", edit("11.000", "10.000"), "coincide"},
 		{"columns out of place", edit("111.2", "222.4"), "a column is out of place"},
+		{"a length too short", edit("111.2", " 55.6"), "are 111.2 km apart and the length says 55.6"},
 	} {
 		if _, err := parseStep(c.row, nil); err == nil || !strings.Contains(err.Error(), c.want) {
 			t.Errorf("%s: error %v, want %q in it", c.name, err, c.want)
