@@ -3,14 +3,14 @@ package published_test
 import (
 	"bufio"
 	"compress/gzip"
-	"fmt"
-	"math"
+	"errors"
 	"os"
+	"strconv"
 	"strings"
 	"testing"
 )
 
-// eachNode visits the lines of a grid by another way than the reader's.
+// eachNode visits the lines of a grid.
 func eachNode(t *testing.T, path string, visit func(lon, lat, value float64)) {
 	t.Helper()
 	in, err := os.Open(path)
@@ -24,17 +24,15 @@ func eachNode(t *testing.T, path string, visit func(lon, lat, value float64)) {
 	}
 	sc := bufio.NewScanner(z)
 	for sc.Scan() {
-		var lon, lat, value float64
-		line := sc.Text()
-		if text, ok := strings.CutSuffix(strings.ToLower(line), "nan"); ok {
-			line, value = text+"0", math.NaN()
+		f := strings.Split(sc.Text(), ",")
+		if len(f) != 3 {
+			t.Fatalf("%s: %q", path, sc.Text())
 		}
-		var x float64
-		if _, err := fmt.Sscanf(strings.ReplaceAll(line, ",", " "), "%g %g %g", &lon, &lat, &x); err != nil {
-			t.Fatalf("%s: %q: %v", path, line, err)
-		}
-		if !math.IsNaN(value) {
-			value = x
+		lon, errLon := strconv.ParseFloat(f[0], 64)
+		lat, errLat := strconv.ParseFloat(f[1], 64)
+		value, errValue := strconv.ParseFloat(f[2], 64)
+		if err := errors.Join(errLon, errLat, errValue); err != nil {
+			t.Fatalf("%s: %q: %v", path, sc.Text(), err)
 		}
 		visit(lon, lat, value)
 	}

@@ -294,6 +294,9 @@ func TestReferenceFaultsAreKept(t *testing.T) {
 // What an operator gains over the built-in model, as the README states it. The
 // sites are drawn evenly over the sphere from a fixed seed.
 func TestReferenceDepartures(t *testing.T) {
+	if testing.Short() {
+		t.Skip("40,000 answers; not in short mode")
+	}
 	b, _ := importedModel(t)
 	base, err := builtin.Load()
 	if err != nil {
