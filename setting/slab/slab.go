@@ -3,7 +3,6 @@ package slab
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"nearmargin/setting/sphere"
 )
@@ -114,7 +113,7 @@ func New(s Spec) (*Slab, error) {
 	case s.Surface == nil:
 		return fail("has neither contours nor a grid")
 	}
-	s.BoundaryIDs = slices.Clone(s.BoundaryIDs)
+	s.BoundaryIDs = append([]string(nil), s.BoundaryIDs...)
 	return &Slab{s}, nil
 }
 
