@@ -98,4 +98,3 @@ func sameFiles(t testing.TB, got, want *bundle.Bundle) {
 		t.Errorf("checksum %s, want %s", got.Model.SHA256(), want.Model.SHA256())
 	}
 }
-
