@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"net"
 	"strings"
 
@@ -92,7 +93,8 @@ func interpretError(op, ref string, err error) error {
 	case errors.As(err, &dial):
 		e.Kind = ErrUnavailable
 	case errors.Is(err, context.Canceled):
-	case errors.As(err, &network), errors.Is(err, net.ErrClosed), pgconn.Timeout(err), strings.Contains(err.Error(), "conn closed"), strings.Contains(err.Error(), "unexpected EOF"):
+	case errors.As(err, &network), errors.Is(err, net.ErrClosed), errors.Is(err, io.ErrUnexpectedEOF), errors.Is(err, io.EOF),
+		pgconn.Timeout(err), strings.HasSuffix(err.Error(), "conn closed"): // the driver has no value for the last
 		e.Kind = ErrUnavailable
 	}
 	return e

@@ -2,11 +2,9 @@ package store
 
 import (
 	"context"
-	"errors"
 	"fmt"
 
 	"github.com/jackc/pgx/v5"
-	"github.com/jackc/pgx/v5/pgconn"
 
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
@@ -71,7 +69,7 @@ func (s *Store) Load(ctx context.Context, ref string) (*bundle.Bundle, error) {
 			return err
 		}
 		if err := r.contents(); err != nil {
-			return r.corrupt(err)
+			return err
 		}
 		if b, err = bundle.FromParts(r.parts); err != nil {
 			return r.corrupt(err)
@@ -97,23 +95,24 @@ type reader struct {
 	parts  bundle.Parts
 }
 
-// corrupt says that rows make no model, unless it was the database that failed.
+// corrupt says that rows make no model.
 func (r *reader) corrupt(err error) error {
-	var pg *pgconn.PgError
-	ref := r.parts.ID + "@" + r.parts.Edition
-	if e, ok := interpretError("load", ref, err).(*Error); ok && (e.Kind != nil || errors.As(err, &pg) || r.ctx.Err() != nil) {
-		return e
-	}
-	return &Error{Op: "load", Ref: ref, Kind: ErrCorrupt, Err: err}
+	return &Error{Op: "load", Ref: r.parts.ID + "@" + r.parts.Edition, Kind: ErrCorrupt, Err: err}
 }
 
-// each scans every row of a query into the same variables and calls use after each.
+// each scans every row of a query into the same variables and calls use after each;
+// an error of use means that the row is corrupt.
 func (r *reader) each(sql string, into []any, use func() error) error {
 	rows, err := r.tx.Query(r.ctx, sql, pgx.StrictNamedArgs{"e": r.id})
 	if err != nil {
 		return err
 	}
-	_, err = pgx.ForEachRow(rows, into, use)
+	_, err = pgx.ForEachRow(rows, into, func() error {
+		if err := use(); err != nil {
+			return r.corrupt(err)
+		}
+		return nil
+	})
 	return err
 }
 

@@ -45,7 +45,14 @@ func withProvider(ctx context.Context, url string, use func(*goose.Provider) err
 	if err != nil {
 		return err
 	}
-	_, err = conn.Exec(ctx, `CREATE SCHEMA IF NOT EXISTS nearmargin`)
+	err = pgx.BeginFunc(ctx, conn, func(tx pgx.Tx) error {
+		// two at once would both find no schema, and the second would fail to make it
+		if _, err := tx.Exec(ctx, `SELECT pg_advisory_xact_lock(@key)`, pgx.StrictNamedArgs{"key": importLock}); err != nil {
+			return err
+		}
+		_, err := tx.Exec(ctx, `CREATE SCHEMA IF NOT EXISTS nearmargin`)
+		return err
+	})
 	err = errors.Join(err, conn.Close(ctx))
 	if err != nil {
 		return err

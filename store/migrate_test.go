@@ -78,6 +78,6 @@ func TestMigrationsAtOnceDoTheWorkOnce(t *testing.T) {
 	}
 	a, b := <-results, <-results
 	if a.err != nil || b.err != nil || (len(a.done) == 0) == (len(b.done) == 0) {
-		t.Errorf("%+v and %+v; want one to do the work and the other to find it done", a, b)
+		t.Errorf("%v, %v and %v, %v; want one to do the work and the other to find it done", a.done, a.err, b.done, b.err)
 	}
 }

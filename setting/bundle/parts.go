@@ -2,7 +2,6 @@ package bundle
 
 import (
 	"encoding/json"
-	"fmt"
 	"maps"
 	"slices"
 	"strings"
@@ -129,8 +128,11 @@ func FromParts(p Parts) (*Bundle, error) {
 	}
 	for _, g := range p.Grids {
 		name := g.file()
-		if b.files[name] != nil {
-			return nil, fmt.Errorf("the grid %s stands twice", name)
+		switch {
+		case b.files[name] != nil:
+			return nil, fault(name, 0, "the grid stands twice")
+		case !slices.ContainsFunc(p.Slabs, func(s slab.Spec) bool { return s.ID == g.Slab }):
+			return nil, fault(name, 0, "there is no slab %q", g.Slab)
 		}
 		b.files[name] = g.Content
 	}
