@@ -10,37 +10,36 @@ import (
 	"nearmargin/store/storetest"
 )
 
-// damaged imports a model and changes its rows, which an edition that was never
-// active allows.
-func damaged(t *testing.T, b *bundle.Bundle, sql string) *Store {
-	t.Helper()
-	url := migrated(t)
-	s := imported(t, url, b)
-	storetest.Exec(t, url, sql)
-	return s
-}
-
+// TestLoadOfDamagedRows changes rows of editions that were never active, which the
+// schema allows.
 func TestLoadOfDamagedRows(t *testing.T) {
+	whole, contours, grids := migrated(t), model(t, "1"), gridded(t)
+	s := imported(t, whole, contours, grids)
+	if err := s.Close(context.Background()); err != nil {
+		t.Fatal(err)
+	}
 	for name, c := range map[string]struct {
 		model *bundle.Bundle
 		sql   string
 		says  string
 		sum   bool // as a ChecksumError
 	}{
-		"another sigma": {model(t, "1"), `UPDATE nearmargin.boundaries SET sigma_km = sigma_km + 1 WHERE boundary_id = 'kermadec-trench'`, "checksum", true},
-		"a moved vertex": {model(t, "1"), `UPDATE nearmargin.boundaries SET path = ST_SetPoint(path::geometry, 1, ST_Point(0.0000001, 0) )::geography
+		"another sigma": {contours, `UPDATE nearmargin.boundaries SET sigma_km = sigma_km + 1 WHERE boundary_id = 'kermadec-trench'`, "checksum", true},
+		"a moved vertex": {contours, `UPDATE nearmargin.boundaries SET path = ST_SetPoint(path::geometry, 1, ST_Point(0.0000001, 0) )::geography
 			WHERE boundary_id = (SELECT boundary_id FROM nearmargin.boundaries WHERE ST_NPoints(path::geometry) > 5 LIMIT 1)`, "checksum", true},
-		"another checksum":  {model(t, "1"), `UPDATE nearmargin.editions SET sha256 = repeat('0', 64)`, "000000000000", true},
-		"a digit of a rate": {model(t, "1"), `UPDATE nearmargin.angular_velocities SET cells[4] = cells[4] || '0' WHERE plate = 'NU'`, "checksum", true},
-		"a lost hotspot":    {model(t, "1"), `DELETE FROM nearmargin.hotspots WHERE ordinal = 0`, "checksum", true},
-		"a grid cut short":  {gridded(t), `UPDATE nearmargin.slab_grids SET content = substring(content FOR 10) WHERE gzipped`, "sigma.xyz.gz", false},
-		"a grid of rubbish": {gridded(t), `UPDATE nearmargin.slab_grids SET content = 'no numbers' WHERE NOT gzipped`, "depth.xyz:1", false},
-		"a grid node moved": {gridded(t), `UPDATE nearmargin.slab_grids SET content = replace(encode(content, 'escape'), '170,-30,20.50', '170,-30,21.50')::bytea WHERE NOT gzipped`, "checksum", true},
-		"a lost slab's ids": {model(t, "1"), `DELETE FROM nearmargin.slab_contours WHERE ordinal = 0`, "", false},
-		"a lost plate":      {model(t, "1"), `DELETE FROM nearmargin.plates WHERE code = 'KE'`, "", false},
+		"another checksum":  {contours, `UPDATE nearmargin.editions SET sha256 = repeat('0', 64)`, "000000000000", true},
+		"a digit of a rate": {contours, `UPDATE nearmargin.angular_velocities SET cells[4] = cells[4] || '0' WHERE plate = 'NU'`, "checksum", true},
+		"a lost hotspot":    {contours, `DELETE FROM nearmargin.hotspots WHERE ordinal = 0`, "checksum", true},
+		"a grid cut short":  {grids, `UPDATE nearmargin.slab_grids SET content = substring(content FOR 10) WHERE gzipped`, "sigma.xyz.gz", false},
+		"a grid of rubbish": {grids, `UPDATE nearmargin.slab_grids SET content = 'no numbers' WHERE NOT gzipped`, "depth.xyz:1", false},
+		"a grid node moved": {grids, `UPDATE nearmargin.slab_grids SET content = replace(encode(content, 'escape'), '170,-30,20.50', '170,-30,21.50')::bytea WHERE NOT gzipped`, "checksum", true},
+		"a lost contour":    {contours, `DELETE FROM nearmargin.slab_contours WHERE ordinal = 0`, "", false},
+		"a lost plate":      {contours, `DELETE FROM nearmargin.plates WHERE code = 'KE'`, "", false},
 	} {
 		t.Run(name, func(t *testing.T) {
-			s := damaged(t, c.model, c.sql)
+			url := storetest.Get(t).Copy(t, whole)
+			storetest.Exec(t, url, c.sql)
+			s := opened(t, url)
 			_, err := s.Load(context.Background(), c.model.Model.Ref())
 			var sum *ChecksumError
 			var typed *Error
@@ -50,7 +49,7 @@ func TestLoadOfDamagedRows(t *testing.T) {
 			if err := s.Activate(context.Background(), c.model.Model.Ref()); !errors.Is(err, ErrCorrupt) {
 				t.Errorf("activation of it: %v; want ErrCorrupt", err)
 			}
-			if list, err := s.List(context.Background()); err != nil || list[0].Active {
+			if list, err := s.List(context.Background()); err != nil || list[0].Active || list[1].Active {
 				t.Errorf("%+v, %v; want it not active", list, err)
 			}
 		})

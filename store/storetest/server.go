@@ -1,6 +1,7 @@
-// Package storetest gives tests a real PostGIS: a container where a container
-// engine answers, else the server of NEARMARGIN_TEST_DATABASE_URL. Where there is
-// neither the test is skipped, or fails where NEARMARGIN_REQUIRE_DATABASE is 1.
+// Package storetest gives tests a real PostGIS: the server that
+// NEARMARGIN_TEST_DATABASE_URL names, else a container where a container engine
+// answers. Where there is neither the test is skipped, or fails where
+// NEARMARGIN_REQUIRE_DATABASE is 1.
 //
 // The image is postgis/postgis, or that of NEARMARGIN_TEST_POSTGIS_IMAGE.
 // Production code must not import this package.
@@ -15,6 +16,7 @@ import (
 	"net/url"
 	"os"
 	"strconv"
+	"strings"
 	"sync"
 	"testing"
 	"time"
@@ -74,13 +76,9 @@ func Get(t testing.TB) *Server {
 }
 
 func start() (*Server, error) {
-	s, err := startContainer()
-	if err == nil {
-		return s, nil
-	}
 	given := os.Getenv("NEARMARGIN_TEST_DATABASE_URL")
 	if given == "" {
-		return nil, err
+		return startContainer()
 	}
 	u, err := url.Parse(given)
 	if err != nil {
@@ -91,7 +89,7 @@ func start() (*Server, error) {
 		return nil, err
 	}
 	u.Host = p.address()
-	s = &Server{url: u, proxy: p}
+	s := &Server{url: u, proxy: p}
 	return s, s.await()
 }
 
@@ -126,10 +124,28 @@ func startContainer() (s *Server, err error) {
 		return nil, errors.Join(err, testcontainers.TerminateContainer(c))
 	}
 	s = &Server{container: c, url: &url.URL{Scheme: "postgres", User: url.UserPassword(user, password), Host: host.String(), Path: "/postgres", RawQuery: "sslmode=disable"}}
-	if err := s.await(); err != nil {
+	if err = s.await(); err == nil {
+		err = s.hurry(ctx)
+	}
+	if err != nil {
 		return nil, errors.Join(err, testcontainers.TerminateContainer(c))
 	}
 	return s, nil
+}
+
+// hurry switches off what keeps data through a loss of power.
+func (s *Server) hurry(ctx context.Context) error {
+	conn, err := pgx.Connect(ctx, s.url.String())
+	if err != nil {
+		return err
+	}
+	defer conn.Close(ctx)
+	for _, sql := range [...]string{`ALTER SYSTEM SET fsync = off`, `ALTER SYSTEM SET full_page_writes = off`, `SELECT pg_reload_conf()`} {
+		if _, err := conn.Exec(ctx, sql); err != nil {
+			return fmt.Errorf("%s: %w", sql, err)
+		}
+	}
+	return nil
 }
 
 // await waits until the server answers.
@@ -206,8 +222,24 @@ func Exec(t testing.TB, url, sql string, args ...any) {
 // its URL.
 func (s *Server) Empty(t testing.TB) string {
 	t.Helper()
+	return s.create(t, "template1")
+}
+
+// Copy makes a copy of a database to which nobody is connected, gone when the test
+// ends, and returns its URL.
+func (s *Server) Copy(t testing.TB, of string) string {
+	t.Helper()
+	u, err := url.Parse(of)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return s.create(t, strings.TrimPrefix(u.Path, "/"))
+}
+
+func (s *Server) create(t testing.TB, template string) string {
+	t.Helper()
 	name := fmt.Sprintf("nearmargin_test_%d", time.Now().UnixNano())
-	Exec(t, s.url.String(), "CREATE DATABASE "+pgx.Identifier{name}.Sanitize())
+	Exec(t, s.url.String(), "CREATE DATABASE "+pgx.Identifier{name}.Sanitize()+" TEMPLATE "+pgx.Identifier{template}.Sanitize())
 	t.Cleanup(func() { Exec(t, s.url.String(), "DROP DATABASE "+pgx.Identifier{name}.Sanitize()+" WITH (FORCE)") })
 	u := *s.url
 	u.Path = "/" + name
