@@ -13,6 +13,9 @@ import (
 // TestLoadOfDamagedRows changes rows of editions that were never active, which the
 // schema allows.
 func TestLoadOfDamagedRows(t *testing.T) {
+	if testing.Short() {
+		t.Skip("a dozen databases, one after the other; -short leaves them out")
+	}
 	whole, contours, grids := migrated(t), model(t, "1"), gridded(t)
 	s := imported(t, whole, contours, grids)
 	if err := s.Close(context.Background()); err != nil {
