@@ -24,9 +24,17 @@ type Models interface {
 	All() []*setting.Model
 }
 
-// Config is what a server is built from; every field is needed.
+// Source says how the place fares that models come from.
+type Source interface {
+	// Degraded says since when, and why, newer models cannot be had; the time is zero
+	// where they can. The reason is told to anybody who asks.
+	Degraded() (since time.Time, reason string)
+}
+
+// Config is what a server is built from; every field but Source is needed.
 type Config struct {
 	Models   Models
+	Source   Source // nil where models come from no place that can fail
 	Log      *slog.Logger
 	Registry *prometheus.Registry
 	Version  string // of the program
@@ -42,7 +50,7 @@ type Server struct {
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), echo: echo.New()}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), echo: echo.New()}
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = echo.ExtractIPDirect()
