@@ -143,6 +143,19 @@ CREATE TABLE nearmargin.land (
     PRIMARY KEY (edition_id, ordinal)
 );
 
+-- Faults of the data that are known and kept with the edition; lon and lat are
+-- NULL for one that has no place.
+CREATE TABLE nearmargin.warnings (
+    edition_id bigint NOT NULL REFERENCES nearmargin.editions ON DELETE CASCADE,
+    ordinal    int NOT NULL,
+    code       text NOT NULL CHECK (code ~ '^[a-z]+(_[a-z]+)*$'),
+    lon        double precision CHECK (lon BETWEEN -180 AND 180),
+    lat        double precision CHECK (lat BETWEEN -90 AND 90),
+    detail     text NOT NULL CHECK (detail <> ''),
+    CHECK ((lon IS NULL) = (lat IS NULL)),
+    PRIMARY KEY (edition_id, ordinal)
+);
+
 CREATE TABLE nearmargin.slabs (
     edition_id       bigint NOT NULL,
     slab_id          text NOT NULL CHECK (slab_id ~ '^[a-z0-9]+(-[a-z0-9]+)*$'),
@@ -231,7 +244,7 @@ DECLARE
     name text;
 BEGIN
     FOREACH name IN ARRAY ARRAY['editions', 'plates', 'boundaries', 'junctions', 'motion_models', 'angular_velocities',
-        'zones', 'hotspots', 'land', 'slabs', 'slab_boundaries', 'slab_contours', 'slab_grids'] LOOP
+        'zones', 'hotspots', 'land', 'warnings', 'slabs', 'slab_boundaries', 'slab_contours', 'slab_grids'] LOOP
         EXECUTE format('CREATE TRIGGER never_change BEFORE INSERT OR UPDATE OR DELETE ON nearmargin.%I
             FOR EACH ROW EXECUTE FUNCTION nearmargin.refuse_change()', name);
         EXECUTE format('CREATE TRIGGER never_empty BEFORE TRUNCATE ON nearmargin.%I
@@ -248,7 +261,7 @@ CREATE TRIGGER tell AFTER INSERT ON nearmargin.activations
 -- +goose Down
 ALTER TABLE nearmargin.editions DROP CONSTRAINT editions_edition_id_default_motion_fkey;
 DROP TABLE nearmargin.slab_grids, nearmargin.slab_contours, nearmargin.slab_boundaries, nearmargin.slabs,
-    nearmargin.land, nearmargin.hotspots, nearmargin.zones, nearmargin.angular_velocities, nearmargin.motion_models,
+    nearmargin.warnings, nearmargin.land, nearmargin.hotspots, nearmargin.zones, nearmargin.angular_velocities, nearmargin.motion_models,
     nearmargin.junctions, nearmargin.boundaries, nearmargin.plates, nearmargin.activations, nearmargin.editions,
     nearmargin.models;
 DROP FUNCTION nearmargin.refuse_change();

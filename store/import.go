@@ -44,6 +44,7 @@ VALUES (@e, @motion, @n, @plate, @basis, @wx, @wy, @wz, @cells)`
 
 	zoneSQL    = `INSERT INTO nearmargin.zones (edition_id, ordinal, name, kind, source, area) VALUES (@e, @n, @name, @kind, @source, ST_GeogFromWKB(@area))`
 	hotspotSQL = `INSERT INTO nearmargin.hotspots (edition_id, ordinal, name, source, at) VALUES (@e, @n, @name, @source, ST_GeogFromWKB(@at))`
+	warningSQL = `INSERT INTO nearmargin.warnings (edition_id, ordinal, code, lon, lat, detail) VALUES (@e, @n, @code, @lon, @lat, @detail)`
 	landSQL    = `INSERT INTO nearmargin.land (edition_id, ordinal, name, outline) VALUES (@e, @n, @name, ST_GeogFromWKB(@outline))`
 
 	slabSQL = `
@@ -156,6 +157,13 @@ func (w *writer) contents(b *bundle.Bundle, p bundle.Parts) error {
 	}
 	for i, x := range p.Land {
 		w.add(landSQL, pgx.StrictNamedArgs{"n": i, "name": x.Name, "outline": w.bytes(polygonBytes([][]sphere.LonLat{x.Ring}))})
+	}
+	for i, x := range p.Warnings {
+		var lon, lat *float64
+		if x.Placed {
+			lon, lat = &x.At.Lon, &x.At.Lat
+		}
+		w.add(warningSQL, pgx.StrictNamedArgs{"n": i, "code": x.Code, "lon": lon, "lat": lat, "detail": x.Detail})
 	}
 	w.slabs(p.Slabs)
 	if err := w.flush(); err != nil {

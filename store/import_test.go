@@ -121,7 +121,7 @@ func rowsLeft(t *testing.T, url string) int {
 	t.Helper()
 	var parts []string
 	for _, table := range []string{"models", "editions", "plates", "boundaries", "junctions", "motion_models", "angular_velocities",
-		"zones", "hotspots", "land", "slabs", "slab_boundaries", "slab_contours", "slab_grids"} {
+		"zones", "hotspots", "land", "warnings", "slabs", "slab_boundaries", "slab_contours", "slab_grids"} {
 		parts = append(parts, "(SELECT count(*) FROM nearmargin."+table+")")
 	}
 	return count(t, url, "SELECT "+strings.Join(parts, " + "))

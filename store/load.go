@@ -11,6 +11,7 @@ import (
 	"nearmargin/setting/bundle"
 	"nearmargin/setting/motion"
 	"nearmargin/setting/slab"
+	"nearmargin/setting/sphere"
 )
 
 // Each of these reads one edition by the leading column of a primary key, in the
@@ -36,6 +37,7 @@ FROM nearmargin.motion_models WHERE edition_id = @e ORDER BY ordinal`
 	loadVelocitiesSQL = `SELECT motion, cells FROM nearmargin.angular_velocities WHERE edition_id = @e ORDER BY motion, ordinal`
 	loadZonesSQL      = `SELECT name, kind, source, ST_AsBinary(area) FROM nearmargin.zones WHERE edition_id = @e ORDER BY ordinal`
 	loadHotspotsSQL   = `SELECT name, source, ST_AsBinary(at) FROM nearmargin.hotspots WHERE edition_id = @e ORDER BY ordinal`
+	loadWarningsSQL   = `SELECT code, lon, lat, detail FROM nearmargin.warnings WHERE edition_id = @e ORDER BY ordinal`
 	loadLandSQL       = `SELECT name, ST_AsBinary(outline) FROM nearmargin.land WHERE edition_id = @e ORDER BY ordinal`
 	loadSlabsSQL      = `
 SELECT slab_id, name, kind, subducting_plate, overriding_plate, arc_min_depth_km, source, source_status
@@ -123,7 +125,7 @@ func (r *reader) edition(id, edition string) error {
 }
 
 func (r *reader) contents() error {
-	for _, read := range [...]func() error{r.plates, r.boundaries, r.junctions, r.motions, r.zones, r.hotspots, r.land, r.slabs, r.grids} {
+	for _, read := range [...]func() error{r.plates, r.boundaries, r.junctions, r.motions, r.zones, r.hotspots, r.land, r.warnings, r.slabs, r.grids} {
 		if err := read(); err != nil {
 			return err
 		}
@@ -233,6 +235,19 @@ func (r *reader) land() error {
 		l, err := setting.NewLand(name, rings[0])
 		r.parts.Land = append(r.parts.Land, l)
 		return err
+	})
+}
+
+func (r *reader) warnings() error {
+	var code, detail string
+	var lon, lat *float64
+	return r.each(loadWarningsSQL, []any{&code, &lon, &lat, &detail}, func() error {
+		x := setting.Warning{Code: code, Detail: detail}
+		if x.Placed = lon != nil && lat != nil; x.Placed {
+			x.At = sphere.LonLat{Lon: *lon, Lat: *lat}
+		}
+		r.parts.Warnings = append(r.parts.Warnings, x)
+		return nil
 	})
 }
 

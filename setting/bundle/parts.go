@@ -27,6 +27,7 @@ type Parts struct {
 	Zones                       []*setting.Zone
 	Hotspots                    []setting.Hotspot
 	Land                        []*setting.Land
+	Warnings                    []setting.Warning
 	Slabs                       []slab.Spec // Surface is nil where the slab has a grid
 	Grids                       []Grid
 }
@@ -71,7 +72,7 @@ func (b *Bundle) Parts() (Parts, error) {
 	m := b.Model
 	p := Parts{
 		ID: in.ID, Edition: in.Edition, Title: in.Title, Licence: in.Licence, Citations: in.Citations, DefaultMotion: in.DefaultMotion,
-		Plates: m.Plates(), Boundaries: m.Network().Boundaries(), Zones: m.Zones(), Hotspots: m.Hotspots(), Land: m.Land(),
+		Plates: m.Plates(), Boundaries: m.Network().Boundaries(), Zones: m.Zones(), Hotspots: m.Hotspots(), Land: m.Land(), Warnings: m.Warnings(),
 	}
 	for _, mi := range in.Motions {
 		t, err := readAnyTable(motionFile(mi.Name), b.files[motionFile(mi.Name)])
@@ -170,6 +171,9 @@ func (b *Bundle) encodeParts(in info, p Parts) error {
 		if b.files[landFile], err = writeLand(p.Land); err != nil {
 			return err
 		}
+	}
+	if len(p.Warnings) > 0 {
+		b.files[warningsFile] = writeWarnings(p.Warnings)
 	}
 	if len(p.Hotspots) > 0 {
 		b.files[hotspotsFile] = writeHotspots(p.Hotspots)
