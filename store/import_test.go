@@ -151,7 +151,9 @@ func TestImportKilledHalfWayLeavesNothing(t *testing.T) {
 func TestOfTwoImportsAtOnceOneWins(t *testing.T) {
 	url := migrated(t)
 	letGo, first := held(t, url, model(t, "1"))
-	err := opened(t, url).Import(context.Background(), model(t, "2"))
+	ctx, cancel := context.WithTimeout(context.Background(), 20*time.Second) // an import that waited instead would wait for ever
+	defer cancel()
+	err := opened(t, url).Import(ctx, model(t, "2"))
 	if !errors.Is(err, ErrImportRunning) {
 		t.Errorf("the second import says %v; want ErrImportRunning", err)
 	}
