@@ -72,7 +72,11 @@ func (n *Network) Locate(p Place) (plate string, nearest Hit) {
 func (n *Network) refine(t *tree, p Place, f filter, first found) Hit {
 	d := 2 * math.Asin(math.Min(1, math.Sqrt(first.chordSq)/2))
 	var r rivals
-	n.collect(t, p.Vec, f, reachOfRad(d*(1+nearTie)+1e-12), &r)
+	if within := reachOfRad(d*(1+nearTie) + 1e-12); t.cells != nil {
+		t.cells.rivals(n, t, p.Vec, f, within, &r)
+	} else {
+		n.collect(t, p.Vec, f, within, &r)
+	}
 
 	best, foot := first, n.legs[first.leg].foot(p.Vec, first.where)
 	bestKm, bestAz := sphere.Inverse(p.LonLat, foot.LonLat())

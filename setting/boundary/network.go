@@ -75,6 +75,7 @@ func (n *Network) index() {
 		of[n.legs[i].kind] = append(of[n.legs[i].kind], int32(i))
 	}
 	n.all = newTree(n.legs, every)
+	n.all.cells = n.newCells(n.all)
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
 	}

@@ -18,11 +18,13 @@ import (
 type tree struct {
 	branches []branch
 	order    []int32 // leg numbers in the order of the leaves
+	cells    *cells  // nil on a tree that has none
 }
 
 type branch struct {
 	centre     sphere.Vec
 	cosR, sinR float64 // of the cap's angular radius
+	plates     uint64  // that bound the legs below, see plateBit
 	right      int32   // index of the right child; 0 in a leaf
 	from, to   int32   // of a leaf: its part of order
 }
@@ -44,6 +46,9 @@ func (t *tree) build(legs []leg, from, to int) {
 	part := t.order[from:to]
 	at := len(t.branches)
 	t.branches = append(t.branches, capOver(legs, part))
+	for _, i := range part {
+		t.branches[at].plates |= plateBit(legs[i].left) | plateBit(legs[i].right)
+	}
 	if len(part) <= leafLegs {
 		t.branches[at].from, t.branches[at].to = int32(from), int32(to)
 		return
