@@ -78,7 +78,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	e.nearHotspot = a.Hotspot != nil
 	for s := range sources {
 		src := &sources[s]
-		hit, ok := l.m.network.NearestOf(p, src.kind, plate, src.role, src.reachKm)
+		hit, ok := l.m.network.NearestOfWith(p, src.kind, plate, src.role, src.reachKm, &a.sights)
 		if !ok {
 			e.km[s] = math.Inf(1)
 			continue
@@ -88,7 +88,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	e.gatherTrench(l, p)
 	e.gatherFlank(l, p, plate)
 	e.gatherCollision(plate)
-	e.gatherSlabs(l, p)
+	e.gatherSlabs(l, p, &a.sights)
 }
 
 // gatherTrench works out how squarely the nearest trench is seen, and whether a

@@ -31,10 +31,13 @@ const slabTrenchReachKm = 3000
 
 // gatherSlabs collects every slab below the place, and those whose rim or end is
 // within reach.
-func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
+func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place, sights *boundary.Sights) {
 	e.nSlabs = 0
-	const margin = 1 + 3*fifteen
+	const margin = 1 + 3*fifteen // of the limit, less than slab.NearKm in all
 	for i, s := range l.m.c.Slabs {
+		if !s.Near(p.Vec) {
+			continue
+		}
 		x := slabEvidence{slab: s, index: i, trenchKm: math.Inf(1)}
 		var in bool
 		if x.reading, in = s.Surface.At(p.Vec); !in {
@@ -48,7 +51,7 @@ func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
 		if math.IsNaN(x.sigma) {
 			x.sigma = unknownDepthSigmaKm
 		}
-		if h, ok := l.m.slabGroups[i].Nearest(p, slabTrenchReachKm); ok {
+		if h, ok := l.m.slabGroups[i].NearestWith(p, slabTrenchReachKm, sights); ok {
 			x.trench, x.trenchKm = h, h.DistanceKm
 		}
 		e.slabs[e.nSlabs] = x

@@ -145,6 +145,8 @@ const maxRivals = 96
 // rivals is a list of legs that lie about as near as the nearest.
 type rivals struct {
 	list [maxRivals]found
+	feet [maxRivals]sphere.Vec // filled by screen
+	km   [maxRivals]float64
 	n    int
 }
 
