@@ -57,6 +57,7 @@ type evidence struct {
 
 	slabs  [maxSlabs]slabEvidence
 	nSlabs int
+	watch  watch
 }
 
 // side says on which side of a convergent boundary the plate is.
@@ -70,7 +71,8 @@ const (
 
 // gather collects the evidence for a plate at a place.
 func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) {
-	e.limit = limitValues()
+	e.limit = baseLimits
+	e.watch.on = false
 	e.zone = NoKind
 	if a.Zone != nil {
 		e.zone = a.Zone.Kind
