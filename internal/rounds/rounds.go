@@ -4,6 +4,7 @@
 package rounds
 
 import (
+	"runtime"
 	"slices"
 	"time"
 )
@@ -12,19 +13,21 @@ import (
 const Slice = 4 * time.Millisecond
 
 // Medians runs each function for about a slice in turn, as many rounds as are
-// asked for, and returns the median time of one call of each in nanoseconds. The
-// functions are given a number that counts up from 0.
+// asked for, and returns the median time of one call of each in nanoseconds of the
+// thread's processor time. The functions are given a number that counts up from 0.
 func Medians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
+	runtime.LockOSThread()
+	defer runtime.UnlockOSThread()
 	calls := make([]int, len(fs))
 	next := make([]int, len(fs))
 	took := make([][]float64, len(fs))
 	run := func(k, n int) time.Duration {
-		start := time.Now()
+		start := cpuTime()
 		for range n {
 			fs[k](next[k])
 			next[k]++
 		}
-		return time.Since(start)
+		return cpuTime() - start
 	}
 	for k := range fs { // how many calls fill a slice
 		calls[k] = 1

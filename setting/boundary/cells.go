@@ -28,11 +28,11 @@ type cells struct {
 
 type cellEntry struct {
 	branch int32
-	chord  float32 // from the cell's middle to the nearest leg of the branch, rounded down
+	chord  float32 // least from the cell's middle to a leg of the branch, rounded down
 }
 
-// cellsPerLeg was the fastest that keeps the index below 400 bytes a leg.
-const cellsPerLeg = 0.7
+// cellsPerLeg trades the time of a search against that of building the index.
+const cellsPerLeg = 0.5
 
 // chordSlack covers what 32 bits lose in a chord and in a cell's middle.
 const chordSlack = 1e-6
@@ -42,13 +42,19 @@ func (n *Network) newCells(t *tree) *cells {
 	c := &cells{side: max(1, int(math.Sqrt(cellsPerLeg*float64(len(t.order))/6)))}
 	c.starts = append(c.starts, 0)
 	var list []cellEntry
+	last := found{leg: -1, chordSq: maxChordSq}
 	for face := range 6 {
 		for j := range c.side {
 			for i := range c.side {
 				centre, chord := c.cap(face, i, j)
 				c.centres = append(c.centres, [3]float32{float32(centre.X), float32(centre.Y), float32(centre.Z)})
-				got, _ := n.nearest(t, centre, filter{}, reachOf(maxChordSq))
-				d := chordAngle(got.chordSq) + 2*math.Asin(chord/2)
+				within := reachOf(maxChordSq)
+				if last.leg >= 0 { // the leg found for the cell before is near this one as well
+					d, _ := n.legs[last.leg].chordSq(centre)
+					within = reachOf(d)
+				}
+				n.descend(t, 0, centre, filter{}, &last, &within)
+				d := chordAngle(within.chordSq) + 2*math.Asin(chord/2)
 				rad := 2 * math.Asin(chord/2)
 				list = n.branchesWithin(t, centre, d*(1+nearTie)+rad+1e-9, rad*branchPerCell, list[:0])
 				slices.SortFunc(list, func(a, b cellEntry) int {
@@ -87,12 +93,9 @@ func (n *Network) branchesWithin(t *tree, p sphere.Vec, rad, size float64, out [
 			depth += 2
 			continue
 		}
-		got := found{leg: -1}
-		reach := within
-		n.descend(t, at, p, filter{}, &got, &reach)
-		if got.leg >= 0 {
-			out = append(out, cellEntry{at, float32(math.Max(0, math.Sqrt(got.chordSq)-1e-7))})
-		}
+		// by the triangle inequality from the cap's middle
+		chord := p.Sub(b.centre).Norm() - 2*math.Sin(math.Acos(b.cosR)/2)
+		out = append(out, cellEntry{at, float32(math.Max(0, chord-1e-7))})
 	}
 	return out
 }
