@@ -107,11 +107,19 @@ func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
 	switch {
 	case v.by != noSource:
 		a.IsControlled = true
-		a.Controlling = l.boundaryAnswer(a, e.hit[v.by])
+		a.Controlling = l.controlling(a, &e.hit[v.by])
 	case v.slab >= 0 && !math.IsInf(e.slabs[v.slab].trenchKm, 1):
 		a.IsControlled = true
-		a.Controlling = l.boundaryAnswer(a, e.slabs[v.slab].trench)
+		a.Controlling = l.controlling(a, &e.slabs[v.slab].trench)
 	}
+}
+
+// controlling is boundaryAnswer for a hit that often is the nearest.
+func (l *Lookup) controlling(a *Answer, h *boundary.Hit) BoundaryAnswer {
+	if h.Boundary == a.Nearest.Boundary && h.NearestVec == a.Nearest.NearestVec && h.Along == a.Nearest.Along {
+		return a.Nearest
+	}
+	return l.boundaryAnswer(a, *h)
 }
 
 // vary moves every distance, every slab's depth, the site and every limit by one

@@ -78,8 +78,16 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 		e.zone = a.Zone.Kind
 	}
 	e.nearHotspot = a.Hotspot != nil
+	own := a.Plate.Code == plate // and so the nearest boundary bounds it
 	for s := range sources {
 		src := &sources[s]
+		if own && a.Nearest.Answers(src.kind, plate, src.role) {
+			e.km[s] = math.Inf(1)
+			if a.Nearest.DistanceKm <= src.reachKm {
+				e.hit[s], e.km[s], e.sigma[s] = a.Nearest.Hit, a.Nearest.DistanceKm, a.Nearest.Boundary.SigmaKm()
+			}
+			continue
+		}
 		hit, ok := l.m.network.NearestOfWith(p, src.kind, plate, src.role, src.reachKm, &a.sights)
 		if !ok {
 			e.km[s] = math.Inf(1)

@@ -83,18 +83,18 @@ func (n *Network) refine(t *tree, p Place, f filter, first found, s *Sights) Hit
 		n.collect(t, p.Vec, f, within, r)
 	}
 	n.screen(p.Vec, r)
-	best, foot, bestKm, bestAz := found{leg: -1}, sphere.Vec{}, 0.0, 0.0
+	best, foot, bestAt, bestKm, bestAz := found{leg: -1}, sphere.Vec{}, sphere.LonLat{}, 0.0, 0.0
 	for i := range r.list[:r.n] {
 		other, q := r.list[i], r.feet[i]
-		km, az := bestKm, bestAz
+		at, km, az := bestAt, bestKm, bestAz
 		if i == 0 || q != foot {
-			km, az = s.to(p, q)
+			at, km, az = s.to(p, q)
 		}
 		if i == 0 || km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, other, best) {
-			best, foot, bestKm, bestAz = other, q, km, az
+			best, foot, bestAt, bestKm, bestAz = other, q, at, km, az
 		}
 	}
-	return n.hit(p, best, foot, bestKm, bestAz)
+	return n.hit(best, foot, bestAt, bestKm, bestAz)
 }
 
 // NearestOf returns the boundary of one type that is nearest to a place, within
@@ -133,14 +133,14 @@ func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64, s *Sights
 	return h, true
 }
 
-func (n *Network) hit(p Place, f found, q sphere.Vec, km, az float64) Hit {
+func (n *Network) hit(f found, q sphere.Vec, at sphere.LonLat, km, az float64) Hit {
 	l := &n.legs[f.leg]
 	along := l.arc.Tangent(q)
 	h := Hit{
 		Boundary:       n.boundaries[l.boundary],
 		DistanceKm:     km,
 		AzimuthDeg:     az,
-		Nearest:        q.LonLat(),
+		Nearest:        at,
 		NearestVec:     q,
 		Along:          along,
 		PathAzimuthDeg: q.Azimuth(along),

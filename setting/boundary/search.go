@@ -17,6 +17,26 @@ const (
 	Subducting      // the plate goes down
 )
 
+// plays reports whether the plate has the role at the boundary.
+func (b *Boundary) plays(plate string, role Role) bool {
+	_, bounds := b.Opposite(plate)
+	switch role {
+	case AnyRole:
+		return true
+	case Overriding:
+		return bounds && b.Subducting() != "" && b.Subducting() != plate
+	case Subducting:
+		return b.Subducting() == plate
+	}
+	return bounds
+}
+
+// Answers reports whether a hit of [Network.Locate] on the plate's own side is the
+// answer of [Network.NearestOf] as well, but for the distance allowed.
+func (h *Hit) Answers(t Type, plate string, role Role) bool {
+	return h.Boundary != nil && h.Boundary.Type() == t && h.Boundary.plays(plate, role)
+}
+
 // filter is what a leg must meet to be found.
 type filter struct {
 	plate uint8

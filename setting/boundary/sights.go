@@ -12,6 +12,7 @@ import (
 type Sights struct {
 	from   sphere.LonLat
 	feet   [maxSights]sphere.Vec
+	at     [maxSights]sphere.LonLat // the same feet
 	km     [maxSights]float64
 	az     [maxSights]float64
 	n      int
@@ -20,35 +21,45 @@ type Sights struct {
 
 const maxSights = 16
 
-// to returns the length and the azimuth of the geodesic from p to the foot.
-func (s *Sights) to(p Place, foot sphere.Vec) (km, azimuthDeg float64) {
+// to returns the foot's position, and the length and the azimuth of the geodesic
+// from p to it.
+func (s *Sights) to(p Place, foot sphere.Vec) (at sphere.LonLat, km, azimuthDeg float64) {
 	if s.from != p.LonLat {
 		s.from, s.n = p.LonLat, 0
 	}
 	for i := range s.feet[:s.n] {
 		if s.feet[i] == foot {
-			return s.km[i], s.az[i]
+			return s.at[i], s.km[i], s.az[i]
 		}
 	}
-	km, azimuthDeg = sphere.Inverse(p.LonLat, foot.LonLat())
+	at = foot.LonLat()
+	km, azimuthDeg = sphere.Inverse(p.LonLat, at)
 	if s.n < maxSights {
-		s.feet[s.n], s.km[s.n], s.az[s.n] = foot, km, azimuthDeg
+		s.feet[s.n], s.at[s.n], s.km[s.n], s.az[s.n] = foot, at, km, azimuthDeg
 		s.n++
 	}
-	return km, azimuthDeg
+	return at, km, azimuthDeg
 }
 
 // screen keeps those of the rivals that may be the nearest on the ellipsoid, or as
 // near as that within coincideKm, by the bound of [sphere.ScreenKm]. The feet of
 // those that are kept stand in the list's order.
 func (n *Network) screen(p sphere.Vec, r *rivals) {
-	least := math.Inf(1)
+	same := true // most nearest points are a vertex that two legs share
 	for i := range r.list[:r.n] {
 		f := &r.list[i]
 		r.feet[i] = n.legs[f.leg].foot(p, f.where)
+		same = same && r.feet[i] == r.feet[0]
+	}
+	if same {
+		return
+	}
+	least := math.Inf(1)
+	for i := range r.list[:r.n] {
+		f := &r.list[i]
 		r.km[i] = 0 // cannot be screened
 		if rad := chordAngle(f.chordSq); rad >= sphere.ScreenMinRad && rad <= sphere.ScreenMaxRad {
-			if i > 0 && r.feet[i] == r.feet[i-1] { // two legs share most nearest points: a vertex
+			if i > 0 && r.feet[i] == r.feet[i-1] {
 				r.km[i] = r.km[i-1]
 			} else {
 				r.km[i] = sphere.ScreenKm(p, r.feet[i], rad)
