@@ -18,16 +18,27 @@ const Slice = 4 * time.Millisecond
 func Medians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
 	runtime.LockOSThread()
 	defer runtime.UnlockOSThread()
+	return medians(cpuTime, rounds, slice, fs)
+}
+
+// WallMedians is [Medians] by the clock on the wall, for functions that use
+// several threads.
+func WallMedians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
+	started := time.Now()
+	return medians(func() time.Duration { return time.Since(started) }, rounds, slice, fs)
+}
+
+func medians(clock func() time.Duration, rounds int, slice time.Duration, fs []func(i int)) []float64 {
 	calls := make([]int, len(fs))
 	next := make([]int, len(fs))
 	took := make([][]float64, len(fs))
 	run := func(k, n int) time.Duration {
-		start := cpuTime()
+		start := clock()
 		for range n {
 			fs[k](next[k])
 			next[k]++
 		}
-		return cpuTime() - start
+		return clock() - start
 	}
 	for k := range fs { // how many calls fill a slice
 		calls[k] = 1
