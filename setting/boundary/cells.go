@@ -22,7 +22,8 @@ import (
 type cells struct {
 	side    int
 	centres [][3]float32
-	starts  []int32 // of a cell's entries, and one more
+	kinds   [][NumTypes]float32 // least chord from the middle to a leg of each type, rounded down
+	starts  []int32             // of a cell's entries, and one more
 	entries []cellEntry
 }
 
@@ -168,6 +169,30 @@ func (c *cells) nearest(n *Network, t *tree, p sphere.Vec) found {
 		}
 	}
 	return best
+}
+
+// addKinds works out how far each type is from each cell.
+func (c *cells) addKinds(n *Network) {
+	c.kinds = make([][NumTypes]float32, len(c.centres))
+	var last [NumTypes]found
+	for i, m := range c.centres {
+		p := sphere.Vec{X: float64(m[0]), Y: float64(m[1]), Z: float64(m[2])}.Unit()
+		for k, t := range n.byType {
+			if len(t.branches) == 0 {
+				c.kinds[i][k] = 4 // farther than any chord
+				continue
+			}
+			within := reachOf(maxChordSq)
+			if i == 0 {
+				last[k].leg = -1
+			} else {
+				d, _ := n.legs[last[k].leg].chordSq(p)
+				within = reachOf(d)
+			}
+			n.descend(t, 0, p, filter{}, &last[k], &within)
+			c.kinds[i][k] = float32(math.Max(0, math.Sqrt(within.chordSq)-chordSlack))
+		}
+	}
 }
 
 // away returns the chord from a cell's middle to a place in it, rounded up.

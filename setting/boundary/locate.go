@@ -67,6 +67,7 @@ func (n *Network) Locate(p Place) (plate string, nearest Hit) {
 
 // LocateWith is [Network.Locate] that uses and adds to the sights from the place.
 func (n *Network) LocateWith(p Place, s *Sights) (plate string, nearest Hit) {
+	s.start(n, p)
 	first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
 	side := n.side(p.Vec, first)
 	return n.plates[side], n.refine(n.all, p, filter{side, Bounding}, first, s)
@@ -77,7 +78,7 @@ func (n *Network) LocateWith(p Place, s *Sights) (plate string, nearest Hit) {
 // geodesic. Those that a bound on that length excludes are not measured.
 func (n *Network) refine(t *tree, p Place, f filter, first found, s *Sights) Hit {
 	r := &s.rivals
-	if within := reachOfRad(chordAngle(first.chordSq)*(1+nearTie) + 1e-12); t.cells != nil {
+	if within := reachOf(first.chordSq*(1+nearTie)*(1+nearTie) + 1e-24); t.cells != nil {
 		t.cells.rivals(n, t, p.Vec, f, within, r)
 	} else {
 		n.collect(t, p.Vec, f, within, r)
@@ -111,6 +112,10 @@ func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm floa
 // place.
 func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm float64, s *Sights) (Hit, bool) {
 	f := filter{noPlate, role}
+	s.start(n, p)
+	if float64(n.all.cells.kinds[s.cell][t])-s.away > sphere.KmToRad(maxKm*1.006) { // a chord is less than its angle
+		return Hit{}, false
+	}
 	if role != AnyRole {
 		if f.plate = n.plateIndex(plate); f.plate == noPlate {
 			return Hit{}, false
@@ -122,6 +127,7 @@ func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm 
 // nearestIn returns the boundary of a tree that passes and is nearest to a place.
 func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64, s *Sights) (Hit, bool) {
 	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
+	s.start(n, p)
 	got, ok := n.nearest(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
 	if !ok {
 		return Hit{}, false

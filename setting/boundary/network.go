@@ -79,6 +79,7 @@ func (n *Network) index() {
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
 	}
+	n.all.cells.addKinds(n)
 	for i := range n.legs {
 		for _, box := range boxes(&n.legs[i].arc) {
 			n.boxes.Insert(box.Min, box.Max, int32(i))

@@ -10,7 +10,10 @@ import (
 // several questions about the place pay for each once. The zero value is ready;
 // with another place it starts anew. It must not be shared between goroutines.
 type Sights struct {
+	of     *Network
 	from   sphere.LonLat
+	cell   int     // of the place, in the cells over all legs
+	away   float64 // chord from the cell's middle
 	feet   [maxSights]sphere.Vec
 	at     [maxSights]sphere.LonLat // the same feet
 	km     [maxSights]float64
@@ -21,12 +24,19 @@ type Sights struct {
 
 const maxSights = 16
 
+// start makes the value that of a place.
+func (s *Sights) start(n *Network, p Place) {
+	if s.of == n && s.from == p.LonLat {
+		return
+	}
+	c := n.all.cells
+	s.of, s.from, s.n, s.cell = n, p.LonLat, 0, c.of(p.Vec)
+	s.away = c.away(s.cell, p.Vec)
+}
+
 // to returns the foot's position, and the length and the azimuth of the geodesic
 // from p to it.
 func (s *Sights) to(p Place, foot sphere.Vec) (at sphere.LonLat, km, azimuthDeg float64) {
-	if s.from != p.LonLat {
-		s.from, s.n = p.LonLat, 0
-	}
 	for i := range s.feet[:s.n] {
 		if s.feet[i] == foot {
 			return s.at[i], s.km[i], s.az[i]
