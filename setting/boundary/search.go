@@ -61,7 +61,15 @@ func (f filter) passes(l *leg) bool {
 
 // skips reports whether no leg below a branch passes, as far as its plates tell.
 func (f filter) skips(b *branch) bool {
-	return f.role != AnyRole && b.plates&plateBit(f.plate) == 0
+	switch f.role {
+	case AnyRole:
+		return false
+	case Overriding:
+		return b.over&plateBit(f.plate) == 0
+	case Subducting:
+		return b.sink&plateBit(f.plate) == 0
+	}
+	return b.plates&plateBit(f.plate) == 0
 }
 
 // plateBit is the bit of a plate in the plates of a branch. Where a network has
@@ -86,7 +94,7 @@ func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found,
 		best = t.cells.nearest(n, t, p)
 		return best, best.chordSq <= within.chordSq
 	}
-	if !within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
+	if !f.skips(&t.branches[0]) && !within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
 		n.descend(t, 0, p, f, &best, &within)
 	}
 	return best, best.leg >= 0

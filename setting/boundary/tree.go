@@ -25,6 +25,7 @@ type branch struct {
 	centre     sphere.Vec
 	cosR, sinR float64 // of the cap's angular radius
 	plates     uint64  // that bound the legs below, see plateBit
+	over, sink uint64  // of them, those at trenches whose other plate goes down, and that go down
 	right      int32   // index of the right child; 0 in a leaf
 	from, to   int32   // of a leaf: its part of order
 }
@@ -53,7 +54,15 @@ func (t *tree) build(legs []leg, middles []sphere.Vec, from, to int) {
 	at := len(t.branches)
 	t.branches = append(t.branches, capOver(legs, part))
 	for _, i := range part {
-		t.branches[at].plates |= plateBit(legs[i].left) | plateBit(legs[i].right)
+		b, l := &t.branches[at], &legs[i]
+		b.plates |= plateBit(l.left) | plateBit(l.right)
+		switch l.sinks {
+		case noPlate:
+		case l.left:
+			b.sink, b.over = b.sink|plateBit(l.left), b.over|plateBit(l.right)
+		default:
+			b.sink, b.over = b.sink|plateBit(l.right), b.over|plateBit(l.left)
+		}
 	}
 	if len(part) <= leafLegs {
 		t.branches[at].from, t.branches[at].to = int32(from), int32(to)
