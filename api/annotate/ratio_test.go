@@ -52,6 +52,8 @@ func BenchmarkRatio(b *testing.B) {
 					b.ReportMetric(benchRows*1e9/ns[0], "rows/s")
 					b.ReportMetric(benchRows*1e9/ns[1], "copied-rows/s")
 					b.ReportMetric(ns[1]/ns[0], "of-the-copy")
+					cpu := rounds.ProcessMedians(11, rounds.Slice, x.us, x.theirs)
+					b.ReportMetric(cpu[1]/cpu[0], "of-the-copy-by-cpu")
 				}
 			})
 		}

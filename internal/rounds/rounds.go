@@ -21,6 +21,11 @@ func Medians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
 	return medians(cpuTime, rounds, slice, fs)
 }
 
+// ProcessMedians is [Medians] in the processor time of all threads.
+func ProcessMedians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
+	return medians(processTime, rounds, slice, fs)
+}
+
 // WallMedians is [Medians] by the clock on the wall, for functions that use
 // several threads.
 func WallMedians(rounds int, slice time.Duration, fs ...func(i int)) []float64 {
