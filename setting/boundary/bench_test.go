@@ -180,7 +180,7 @@ func BenchmarkIndexRatio(b *testing.B) {
 				size += int(unsafe.Sizeof(branch{}))*len(t.branches) + 4*len(t.order)
 			}
 			c := n.all.cells
-			size += 12*len(c.centres) + 4*len(c.starts) + int(unsafe.Sizeof(cellEntry{}))*len(c.entries)
+			size += (12+4*NumTypes)*len(c.centres) + 4*len(c.starts) + int(unsafe.Sizeof(cellEntry{}))*len(c.entries)
 			for b.Loop() {
 				ns := rounds.Medians(11, rounds.Slice, func(int) {
 					t := newTree(n.legs, every)
