@@ -47,7 +47,7 @@ type evidence struct {
 	hit   [numSources]boundary.Hit
 
 	flankKmPerMyr float64 // half spreading rate; NaN where unknown
-	flankCos      float64 // distance along the spreading direction = km × flankCos
+	flankCos      float64 // distance along the spreading direction = km × flankCos; more than 1 past an offset
 	onLand        bool    // the site lies on land near a spreading ridge
 	trenchSquare  float64 // sine of the angle between the trench and the line of sight: 1 square to it
 	trenchHasSlab bool    // a slab surface goes down from the nearest trench
@@ -117,6 +117,10 @@ func (e *evidence) gatherTrench(l *Lookup, p boundary.Place) {
 	}
 }
 
+// squareOn is the cosine of the angle up to which a ridge counts as seen along the
+// direction of spreading.
+const squareOn = 0.97
+
 // gatherFlank works out how fast the sea floor moves away from the nearest
 // ridge, and how much of the distance to it lies along that direction.
 func (e *evidence) gatherFlank(l *Lookup, p boundary.Place, plate string) {
@@ -134,6 +138,13 @@ func (e *evidence) gatherFlank(l *Lookup, p boundary.Place, plate string) {
 	e.flankKmPerMyr = m.RateMmYr / 2
 	if !math.IsNaN(h.AzimuthDeg) {
 		e.flankCos = math.Abs(math.Cos((h.AzimuthDeg - m.AzimuthDeg) * math.Pi / 180))
+		if e.flankCos < squareOn && e.km[sourceRidge] > 0 {
+			// the nearest ridge is off to the side: the one that made this floor lies along
+			// the direction of spreading, past an offset
+			if along, ok := l.m.network.AlongTo(p, m.AzimuthDeg, boundary.SpreadingRidge, plate, 2*e.limit[limitFlank]); ok {
+				e.flankCos = along / e.km[sourceRidge]
+			}
+		}
 	}
 }
 
