@@ -17,7 +17,7 @@ import (
 	"github.com/prometheus/client_golang/prometheus"
 	"pgregory.net/rapid"
 
-	"nearmargin/internal/rounds"
+	"nearmargin/testdata/bench/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
 )

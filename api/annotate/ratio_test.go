@@ -13,7 +13,7 @@ import (
 	"testing"
 
 	"nearmargin/api/wire"
-	"nearmargin/internal/rounds"
+	"nearmargin/testdata/bench/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
 )

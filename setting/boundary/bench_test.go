@@ -8,7 +8,7 @@ import (
 
 	"github.com/golang/geo/s2"
 
-	"nearmargin/internal/rounds"
+	"nearmargin/testdata/bench/rounds"
 	"nearmargin/setting/sphere"
 )
 

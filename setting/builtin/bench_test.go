@@ -6,7 +6,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
-	"nearmargin/internal/rounds"
+	"nearmargin/testdata/bench/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/sphere"
 )

@@ -19,7 +19,7 @@ import (
 	"sync"
 
 	"nearmargin/api/annotate"
-	"nearmargin/internal/rounds"
+	"nearmargin/testdata/bench/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/builtin"
