@@ -41,7 +41,7 @@ var byteOrderMark = []byte("\xef\xbb\xbf")
 // annotateCSV copies a table and adds columns.
 func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	var st Stats
-	g := &guard{r: in, limit: MaxRowBytes}
+	g := &guard{r: in, limit: int64(o.RowBytes)}
 	br := bufio.NewReaderSize(g, 64<<10)
 	j := &csvJob{o: o, out: bufio.NewWriterSize(out, 64<<10)}
 	skipped, err := j.sniff(br)
@@ -71,7 +71,7 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 			break
 		}
 		if err != nil {
-			return st, csvFault(err)
+			return st, csvFault(err, j.o.RowBytes)
 		}
 		if n := len(row); g.ended && skipped+j.in.InputOffset() == g.read && strings.IndexByte(row[n-1], '\n') >= 0 && g.last != '"' {
 			line, _ := j.in.FieldPos(n - 1)
@@ -99,7 +99,7 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
 	head, err := br.Peek(64 << 10)
 	if err != nil && err != io.EOF && !errors.Is(err, bufio.ErrBufferFull) {
-		return 0, csvFault(err)
+		return 0, csvFault(err, j.o.RowBytes)
 	}
 	if bytes.HasPrefix(head, []byte("\xff\xfe")) || bytes.HasPrefix(head, []byte("\xfe\xff")) {
 		return 0, badLine(1, "the file is UTF-16; save it as UTF-8")
@@ -163,9 +163,12 @@ func (j *csvJob) header() error {
 		return badLine(1, "the input is empty; the first line must name the columns, such as id,lon,lat")
 	}
 	if err != nil {
-		return csvFault(err)
+		return csvFault(err, j.o.RowBytes)
 	}
 	names = slices.Clone(names)
+	if len(names) > MaxColumns {
+		return badLine(1, "the first line names %d columns and %d are the limit", len(names), MaxColumns)
+	}
 	for i := range names {
 		if !utf8.ValidString(names[i]) {
 			return badLine(1, "the name of column %d is not UTF-8; save the file as UTF-8", i+1)
@@ -321,11 +324,11 @@ func (j *csvJob) needsQuotes(v string) bool {
 	return v != "" && (v[0] == ' ' || v[0] == '\t')
 }
 
-func csvFault(err error) error {
+func csvFault(err error, rowBytes int) error {
 	var p *csv.ParseError
 	switch {
 	case errors.Is(err, errRowTooLong):
-		return &InputError{Detail: fmt.Sprintf("a row is longer than %d bytes; is a quotation mark not closed?", MaxRowBytes), Line: 1}
+		return &InputError{Detail: fmt.Sprintf("a row is longer than %d bytes; is a quotation mark not closed?", rowBytes), Line: 1}
 	case errors.As(err, &p):
 		return badLine(p.Line, "%v", p.Err)
 	}

@@ -19,7 +19,7 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 	k := &asker{o: o}
 	w := bufio.NewWriterSize(out, 64<<10)
 	sc := bufio.NewScanner(in)
-	sc.Buffer(make([]byte, 0, 64<<10), MaxRowBytes)
+	sc.Buffer(make([]byte, 0, min(64<<10, o.RowBytes)), o.RowBytes)
 	var buf []byte
 	line := 0
 	for sc.Scan() {
@@ -51,7 +51,7 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 		}
 	}
 	if err := sc.Err(); errors.Is(err, bufio.ErrTooLong) {
-		return st, badLine(line+1, "the line is longer than %d bytes", MaxRowBytes)
+		return st, badLine(line+1, "the line is longer than %d bytes", o.RowBytes)
 	} else if err != nil {
 		return st, err
 	}
