@@ -137,8 +137,12 @@ func (s *Server) health(c echo.Context) error {
 	return sendJSON(c, map[string]string{"status": "ok"})
 }
 
-// ready says that requests are answered, and from which model.
+// ready says that requests are answered, and from which model. A service that
+// shuts down is no longer ready, while it still answers.
 func (s *Server) ready(c echo.Context) error {
+	if s.gate.draining.Load() {
+		return overload("draining", "The service is shutting down", "this instance takes no new work")
+	}
 	return sendJSON(c, struct {
 		Status string   `json:"status"`
 		Model  modelRef `json:"model"`

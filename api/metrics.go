@@ -17,6 +17,9 @@ type metrics struct {
 	seconds  *prometheus.HistogramVec
 	rows     *prometheus.CounterVec
 	faults   *prometheus.CounterVec
+	cut      *prometheus.CounterVec
+	refused  *prometheus.CounterVec
+	panics   prometheus.Counter
 }
 
 // newMetrics registers the metrics.
@@ -36,11 +39,12 @@ func newMetrics(reg *prometheus.Registry, models Models, version, commit string)
 			Name: "nearmargin_annotated_row_errors_total", Help: "Rows and features that got an error instead of an answer, by format.",
 		}, []string{"format"}),
 	}
+	m.operations()
 	info := prometheus.NewGaugeVec(prometheus.GaugeOpts{
 		Name: "nearmargin_build_info", Help: "Always 1; the labels say what runs and the model it started with.",
 	}, []string{"version", "commit", "model"})
 	info.WithLabelValues(version, commit, models.Active().Ref()).Set(1)
-	reg.MustRegister(m.requests, m.seconds, m.rows, m.faults, info)
+	reg.MustRegister(m.requests, m.seconds, m.rows, m.faults, m.cut, m.refused, m.panics, info)
 	return m
 }
 
