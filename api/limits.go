@@ -24,7 +24,7 @@ type Limits struct {
 var DefaultLimits = Limits{
 	BodyBytes: annotate.MaxArrayBytes,
 	RowBytes:  annotate.MaxRowBytes,
-	Batches:   8,
+	Batches:   16,
 	BatchTime: 6 * time.Hour,
 	StallTime: 30 * time.Second,
 }

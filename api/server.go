@@ -43,13 +43,14 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
+	turns   turns
 	echo    *echo.Echo
 }
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), gate: newGate(cfg.Limits.Batches), echo: echo.New()}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New()}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true

@@ -42,6 +42,7 @@ var commands = []command{
 	{"model check", "DIR|builtin", "check a model and name the place of every fault", modelCheck, nil},
 	{"model export", "NAME", "write a model as a directory", modelExport, exportFlags},
 	{"model rules", "", "print the rule table", modelRules, nil},
+	{"health", "URL", "ask a service whether it is well; for health checks", health, nil},
 	{"version", "", "print version, commit and model edition", version, nil},
 }
 
