@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"mime"
 	"net/http"
+	"os"
 	"strings"
 
 	"github.com/labstack/echo/v4"
@@ -67,6 +68,11 @@ func (s *Server) annotate(c echo.Context) error {
 	case err == nil:
 		out.finish(st)
 		return nil
+	case !c.Response().Committed && errors.Is(in.err, os.ErrDeadlineExceeded) && !overTime(ctx):
+		// net/http takes the deadline for the client's leaving; the client is there
+		s.metrics.cut.WithLabelValues(cutSlowSender).Inc()
+		c.Response().Header().Set(echo.HeaderConnection, "close")
+		return bodyProblem(in.err, limits.BodyBytes)
 	case c.Response().Committed || ctx.Err() != nil:
 		// The status is out, or nobody is left to read it. A broken body is the one
 		// way left to tell the reader that the answer is not whole.

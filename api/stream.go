@@ -129,13 +129,20 @@ func (w *batchWriter) finish(st annotate.Stats) {
 	h.Set(trailerErrors, strconv.FormatInt(st.Errors, 10))
 }
 
+// overTime reports whether a context's time is up, also where something that the
+// end of its time caused has cancelled it first.
+func overTime(ctx context.Context) bool {
+	end, ok := ctx.Deadline()
+	return ok && !time.Now().Before(end)
+}
+
 // cutReason tells why a batch ended before its end.
 func cutReason(ctx context.Context, in *batchReader, out *batchWriter, err error) string {
 	var input *annotate.InputError
 	switch cause := context.Cause(ctx); {
 	case errors.Is(cause, ErrShutdown):
 		return cutShutdown
-	case errors.Is(cause, errBatchTime):
+	case overTime(ctx):
 		return cutTime
 	case errors.Is(out.err, os.ErrDeadlineExceeded):
 		return cutSlowReader
