@@ -25,6 +25,7 @@ type csvJob struct {
 	decimal    bool   // decimal commas are read
 	newline    string // as in the input
 	width      int    // columns of the header
+	openHeader bool   // the last of them has a line break in its name
 	replaced   []int  // for each input column the added column that takes its place, or -1
 	appended   []int  // added columns that stand after the input's
 	lon, lat   int
@@ -56,6 +57,9 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 	if err := j.header(); err != nil {
 		return st, err
 	}
+	if j.openHeader && g.ended && skipped+j.in.InputOffset() == g.read && g.last != '"' {
+		return st, badLine(1, "a quotation mark is not closed; it takes in the rest of the input")
+	}
 	for {
 		if st.Rows%256 == 0 {
 			if err := ctx.Err(); err != nil {
@@ -65,8 +69,12 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 				o.Progress(st)
 			}
 		}
-		g.mark(skipped + j.in.InputOffset())
+		start := j.in.InputOffset()
+		g.mark(skipped + start)
 		row, err := j.in.Read()
+		if err == nil && j.in.InputOffset()-start > int64(o.RowBytes) { // the guard alone is as coarse as the reads are
+			err = errRowTooLong
+		}
 		if err == io.EOF {
 			break
 		}
@@ -194,6 +202,7 @@ func (j *csvJob) header() error {
 		return err
 	}
 	j.width = len(names)
+	j.openHeader = strings.IndexByte(names[len(names)-1], '\n') >= 0
 	added := map[string]int{}
 	for i, c := range wire.Columns {
 		added[o.Prefix+c] = i

@@ -127,6 +127,9 @@ func (f *features) stream(ctx context.Context) error {
 		if err := f.d.Decode(&raw); err != nil {
 			return err
 		}
+		if len(raw) > f.o.RowBytes { // the guard alone is as coarse as the reads are
+			return errRowTooLong
+		}
 		f.buf = f.buf[:0]
 		if f.st.Rows > 0 {
 			f.buf = append(f.buf, ',')
