@@ -50,10 +50,8 @@ func (s *Server) annotate(c echo.Context) error {
 	limits := &s.cfg.Limits
 	ctx, cancel := context.WithTimeoutCause(c.Request().Context(), limits.BatchTime, errBatchTime)
 	defer cancel()
-	t := &turn{all: s.turns}
-	defer t.give()
-	in := &batchReader{r: c.Request().Body, ctx: ctx, rc: rc, turn: t, stall: limits.StallTime}
-	out := &batchWriter{c: c, ctx: ctx, rc: rc, turn: t, stall: limits.StallTime, contentType: contentType}
+	in := &batchReader{r: c.Request().Body, ctx: ctx, rc: rc, stall: limits.StallTime}
+	out := &batchWriter{c: c, ctx: ctx, rc: rc, stall: limits.StallTime, contentType: contentType}
 	st, err := annotate.Run(ctx, in, out, format, annotate.Options{
 		Lookup:   l,
 		RowBytes: limits.RowBytes, ArrayBytes: limits.BodyBytes,

@@ -226,3 +226,17 @@ func TestAnnotatePolygons(t *testing.T) {
 		}
 	}
 }
+
+// TestAnnotateSiteAfterPolygon: an object with a site, after a Feature of a
+// polygon, gets the answer for its site.
+func TestAnnotateSiteAfterPolygon(t *testing.T) {
+	r := newRig(t)
+	w := r.ask(http.MethodPost, "/v1/annotate", "application/x-ndjson", `{"type":"Feature","properties":{},"geometry":{"type":"Polygon","coordinates":[[[50,-10],[70,-10],[70,10],[50,-10]]]}}`+"\n"+`{"lon":61,"lat":5}`+"\n")
+	lines := strings.Split(strings.TrimSpace(w.Body.String()), "\n")
+	if len(lines) != 2 {
+		t.Fatalf("%d lines: %s", len(lines), w.Body)
+	}
+	if want := `{"lon":61,"lat":5,"tectonic":` + strings.TrimSpace(r.get("/v1/point?lon=61&lat=5").Body.String()) + "}"; lines[1] != want {
+		t.Errorf("%s\nwant %s", lines[1], want)
+	}
+}

@@ -5,6 +5,7 @@ import (
 	"io"
 	"log/slog"
 	"net/http"
+	"time"
 
 	"github.com/labstack/echo/v4"
 	"github.com/prometheus/client_golang/prometheus"
@@ -22,9 +23,18 @@ type Models interface {
 	All() []*setting.Model
 }
 
-// Config is what a server is built from. The first five fields are needed.
+// Source says how the place fares that models come from.
+type Source interface {
+	// Degraded says since when, and why, newer models cannot be had; the time is zero
+	// where they can. The reason is told to anybody who asks.
+	Degraded() (since time.Time, reason string)
+}
+
+// Config is what a server is built from. Source and what follows Commit may be
+// left out.
 type Config struct {
 	Models   Models
+	Source   Source // nil where models come from no place that can fail
 	Log      *slog.Logger
 	Registry *prometheus.Registry
 	Version  string // of the program
@@ -43,14 +53,14 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
-	turns   turns
+	slots   chan struct{} // for pieces of batches
 	echo    *echo.Echo
 }
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New()}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New()}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true

@@ -50,7 +50,6 @@ type batchReader struct {
 	r      io.Reader
 	ctx    context.Context
 	rc     *http.ResponseController
-	turn   *turn
 	stall  time.Duration
 	waited time.Duration // for the body, since the last progress
 	gained int           // bytes since the last progress
@@ -64,7 +63,6 @@ func (b *batchReader) Read(p []byte) (int, error) {
 	if err := b.ctx.Err(); err != nil {
 		return 0, err
 	}
-	b.turn.give()
 	start := time.Now()
 	deadline := start.Add(b.stall - b.waited)
 	if end, ok := b.ctx.Deadline(); ok && end.Before(deadline) {
@@ -83,9 +81,6 @@ func (b *batchReader) Read(p []byte) (int, error) {
 	case err != nil:
 		b.err = err
 	}
-	if turnErr := b.turn.take(b.ctx); turnErr != nil && err == nil {
-		return n, turnErr
-	}
 	return n, err
 }
 
@@ -95,7 +90,6 @@ type batchWriter struct {
 	c           echo.Context
 	ctx         context.Context
 	rc          *http.ResponseController
-	turn        *turn
 	stall       time.Duration
 	contentType string
 	err         error
@@ -105,7 +99,6 @@ func (w *batchWriter) Write(p []byte) (int, error) {
 	if err := w.ctx.Err(); err != nil {
 		return 0, err
 	}
-	w.turn.give()
 	w.rc.SetWriteDeadline(time.Now().Add(w.stall)) // an in-memory recorder has none
 	r := w.c.Response()
 	if !r.Committed {
@@ -116,9 +109,8 @@ func (w *batchWriter) Write(p []byte) (int, error) {
 	n, err := r.Write(p)
 	if err != nil {
 		w.err = err
-		return n, err
 	}
-	return n, w.turn.take(w.ctx)
+	return n, err
 }
 
 // finish declares what was done, in the trailers.

@@ -11,7 +11,7 @@ import (
 
 // TestDockerfile: the image has nothing but the program, and runs it as nobody.
 func TestDockerfile(t *testing.T) {
-	raw, err := os.ReadFile("Dockerfile")
+	raw, err := os.ReadFile("Dockerfile.static")
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -57,6 +57,7 @@ type evidence struct {
 
 	slabs  [maxSlabs]slabEvidence
 	nSlabs int
+	watch  watch
 }
 
 // side says on which side of a convergent boundary the plate is.
@@ -70,15 +71,24 @@ const (
 
 // gather collects the evidence for a plate at a place.
 func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) {
-	e.limit = limitValues()
+	e.limit = baseLimits
+	e.watch.on = false
 	e.zone = NoKind
 	if a.Zone != nil {
 		e.zone = a.Zone.Kind
 	}
 	e.nearHotspot = a.Hotspot != nil
+	own := a.Plate.Code == plate // and so the nearest boundary bounds it
 	for s := range sources {
 		src := &sources[s]
-		hit, ok := l.m.network.NearestOf(p, src.kind, plate, src.role, src.reachKm)
+		if own && a.Nearest.Answers(src.kind, plate, src.role) {
+			e.km[s] = math.Inf(1)
+			if a.Nearest.DistanceKm <= src.reachKm {
+				e.hit[s], e.km[s], e.sigma[s] = a.Nearest.Hit, a.Nearest.DistanceKm, a.Nearest.Boundary.SigmaKm()
+			}
+			continue
+		}
+		hit, ok := l.m.network.NearestOfWith(p, src.kind, plate, src.role, src.reachKm, &a.sights)
 		if !ok {
 			e.km[s] = math.Inf(1)
 			continue
@@ -88,7 +98,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	e.gatherTrench(l, p)
 	e.gatherFlank(l, p, plate)
 	e.gatherCollision(plate)
-	e.gatherSlabs(l, p)
+	e.gatherSlabs(l, p, &a.sights)
 }
 
 // gatherTrench works out how squarely the nearest trench is seen, and whether a

@@ -36,9 +36,27 @@ func sheet(t *testing.T, id string, boundaries []string, turned bool, centre sph
 	}))
 }
 
-// sections returns a look-up on the synthetic model with four slabs: one north of
+// oblique returns a slab north of the vague trench that dips at 15 degrees to it.
+func oblique(t *testing.T) *slab.Slab {
+	t.Helper()
+	var list []slab.Contour
+	for _, c := range [][2]float64{{20, 0}, {60, 1}, {120, 2}} {
+		k := slab.Contour{DepthKm: c[0], SigmaKm: 5}
+		for _, lat := range []float64{0.2, 2, 4} {
+			k.Path = append(k.Path, sphere.LonLat{Lon: 170 + c[1] - 0.27*(lat-2), Lat: lat})
+		}
+		list = append(list, k)
+	}
+	return must(slab.New(slab.Spec{
+		ID: "oblique", Name: "Oblique", Kind: slab.Subduction, BoundaryIDs: []string{"vague-trench"}, Subducting: "BB", Overriding: "AA",
+		ArcMinDepthKm: arcMinKm, Source: "made up", SourceStatus: "memory", Surface: must(slab.NewContours(list)),
+	}))
+}
+
+// sections returns a look-up on the synthetic model with six slabs: one north of
 // the trench, a flat one below its lower end, one whose dip runs along the vague
-// trench, and one far from any trench, without one of its own.
+// trench, one that goes down from it and does not name it, one oblique to it, and
+// one far from any trench, without one of its own.
 func sections(t *testing.T) *setting.Lookup {
 	t.Helper()
 	var main []slab.Contour
@@ -55,6 +73,8 @@ func sections(t *testing.T) *setting.Lookup {
 		})),
 		sheet(t, "lower", []string{"trench"}, false, sphere.LonLat{Lon: -160}, [2]float64{620, 4}, [2]float64{640, 7}),
 		sheet(t, "turned", []string{"vague-trench"}, true, sphere.LonLat{Lon: middleLon(8), Lat: 3}, [2]float64{60, 0}, [2]float64{120, 2}, [2]float64{200, 4}),
+		sheet(t, "foreign", []string{"trench"}, false, sphere.LonLat{Lon: 150}, [2]float64{20, 0.3}, [2]float64{60, 1}, [2]float64{120, 2}),
+		oblique(t),
 		sheet(t, "lonely", nil, false, sphere.LonLat{Lon: middleLon(4), Lat: 40}, [2]float64{100, 0}, [2]float64{120, 1}, [2]float64{200, 2}),
 	}
 	return must(must(setting.NewModel(c)).Lookup(setting.Options{}))
@@ -191,6 +211,17 @@ func TestSectionChoosesItsLine(t *testing.T) {
 	}
 	if math.Abs(s.SiteKm-kmAt(3)) > 0.5 || s.Trench.CrossingDeg < 89.9 {
 		t.Errorf("the site is at %g km, crossing %g degrees; want %g and 90", s.SiteKm, s.Trench.CrossingDeg, kmAt(3))
+	}
+
+	// the line down the dip meets the trench at 15 degrees, 125 km up from the slab
+	s = section(t, l, setting.SiteAt(171.5, 0.6))
+	if s.Slab.ID != "oblique" || s.Line.From != setting.FromTrench || s.Trench.CrossingDeg < 89 {
+		t.Errorf("slab %s, line from %v, crossing %g degrees; want oblique, the trench, 90", s.Slab.ID, s.Line.From, s.Trench.CrossingDeg)
+	}
+
+	s = section(t, l, setting.SiteAt(150, 1.5))
+	if s.Slab.ID != "foreign" || !s.HasTrench || s.Trench.Boundary.ID() != "vague-trench" || math.Abs(s.SiteKm-kmAt(1.5)) > 0.5 {
+		t.Errorf("slab %s, trench %v, site at %g km; want the vague trench though the slab does not name it", s.Slab.ID, s.HasTrench, s.SiteKm)
 	}
 
 	s = section(t, l, setting.SiteAt(middleLon(4), 41))

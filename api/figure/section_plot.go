@@ -6,6 +6,7 @@ import (
 	"strconv"
 
 	"nearmargin/setting/slab"
+	"nearmargin/setting/sphere"
 )
 
 // class returns the name of a class for one slab of a section.
@@ -127,20 +128,21 @@ func (f *sectionFigure) drawJoin() {
 
 // drawArc hatches what lies between the arc band and the slab.
 func (f *sectionFigure) drawArc() {
+	p := &f.s.Profiles[0]
 	for _, r := range f.s.Arc.Ranges {
 		ring := []point{f.at(r.FromKm, 0)}
-		p := &f.s.Profiles[0]
+		add := func(km float64) {
+			if x, ok := p.Slab.Surface.At(sphere.FromLonLat(f.s.Line.At(km))); ok {
+				ring = append(ring, f.at(km, x.DepthKm))
+			}
+		}
+		add(r.FromKm)
 		for i := range p.Readings {
-			if km := f.s.Samples[i].Km; km >= r.FromKm && km <= r.ToKm && p.Has(i) {
-				if len(ring) == 1 {
-					ring = append(ring, f.at(r.FromKm, p.Readings[i].DepthKm))
-				}
+			if km := f.s.Samples[i].Km; km > r.FromKm && km < r.ToKm && p.Has(i) {
 				ring = append(ring, f.at(km, p.Readings[i].DepthKm))
 			}
 		}
-		if len(ring) > 1 {
-			ring = append(ring, point{f.x.px(r.ToKm), ring[len(ring)-1].y})
-		}
+		add(r.ToKm)
 		ring = append(ring, f.at(r.ToKm, 0))
 		f.leaf("path", attrs{"d", pathOf(ring, true), "fill", "url(#nm-hatch)", "fill-opacity", "0.45"})
 	}
@@ -177,16 +179,26 @@ func (f *sectionFigure) drawAxes() float64 {
 
 	up, down := f.directions()
 	name := "Distance from the " + f.zero() + " (km)"
+	const rowH = 17
 	y2 := low + 38
-	middle := f.x.at + f.plotW/2
-	if half := textWidth(name, textSize)/2 + 12 + math.Max(textWidth(up, textSize), textWidth(down, textSize)); 2*half > f.plotW {
-		text(name, middle, y2, "middle")
-		y2 += 17
-	} else {
-		text(name, middle, y2, "middle")
+	ends := math.Max(textWidth(up, textSize), textWidth(down, textSize)) + 12
+	right := f.x.at + f.plotW
+	switch w := textWidth(name, textSize); {
+	case w+2*ends <= f.plotW: // all in one row
+		text(name, f.x.at+f.plotW/2, y2, "middle")
+	case w <= f.plotW:
+		text(name, f.x.at+f.plotW/2, y2, "middle")
+		y2 += rowH
+	default:
+		text(name, f.x.at, y2, "start")
+		y2 += rowH
 	}
 	text(up, f.x.at, y2, "start")
-	text(down, f.x.at+f.plotW, y2, "end")
+	if 2*ends > f.plotW { // a very narrow plot
+		y2 += rowH
+		right = math.Max(right, f.x.at+ends)
+	}
+	text(down, right, y2, "end")
 	return y2 + 6
 }
 

@@ -48,24 +48,14 @@ var (
 	entityText = strings.NewReplacer("&lt;", "<", "&gt;", ">", "&quot;", `"`, "&amp;", "&")
 )
 
-// checkFigure checks what holds for every figure: well formed, of its size, no
-// number that is none, and no text that leaves it or lies on another.
-func checkFigure(t rapid.TB, doc []byte) {
-	t.Helper()
-	parse(t, doc, "text")
-	if bad := noNumber.Find(doc); bad != nil {
-		t.Fatalf("%q in the figure:\n%s", bad, doc)
-	}
-	size := sizeForm.FindSubmatch(doc)
-	if size == nil || string(size[1]) != string(size[2]) {
-		t.Fatalf("no size of 900 by something: %.300s", doc)
-	}
-	height, _ := strconv.ParseFloat(string(size[1]), 64)
-	type box struct {
-		text       string
-		l, r, t, b float64
-	}
-	var boxes []box
+// box is a text and about the room it takes, in px.
+type box struct {
+	text       string
+	l, r, t, b float64
+}
+
+// textBoxes returns the texts of a figure that run level.
+func textBoxes(doc []byte) (boxes []box) {
 	for _, m := range textForm.FindAllSubmatch(doc, -1) {
 		if strings.Contains(string(m[0]), "aria-hidden") || len(m[5]) > 0 {
 			continue
@@ -83,6 +73,23 @@ func checkFigure(t rapid.TB, doc []byte) {
 		}
 		boxes = append(boxes, box{text, x, x + w, y - size*0.75, y + size*0.1})
 	}
+	return boxes
+}
+
+// checkFigure checks what holds for every figure: well formed, of its size, no
+// number that is none, and no text that leaves it or lies on another.
+func checkFigure(t rapid.TB, doc []byte) {
+	t.Helper()
+	parse(t, doc, "text")
+	if bad := noNumber.Find(doc); bad != nil {
+		t.Fatalf("%q in the figure:\n%s", bad, doc)
+	}
+	size := sizeForm.FindSubmatch(doc)
+	if size == nil || string(size[1]) != string(size[2]) {
+		t.Fatalf("no size of 900 by something: %.300s", doc)
+	}
+	height, _ := strconv.ParseFloat(string(size[1]), 64)
+	boxes := textBoxes(doc)
 	if len(boxes) < 20 {
 		t.Fatalf("only %d texts", len(boxes))
 	}
@@ -93,6 +100,27 @@ func checkFigure(t rapid.TB, doc []byte) {
 		for _, b := range boxes[:i] {
 			if a.l < b.r && b.l < a.r && a.t < b.b && b.t < a.b {
 				t.Errorf("%q lies on %q", a.text, b.text)
+			}
+		}
+	}
+}
+
+var leadForm = regexp.MustCompile(`class="nm-lead"[^>]* stroke-width="0.8" d="M([0-9.]+) ([0-9.]+)L[0-9.]+ ([0-9.]+)"`)
+
+// checkLeads checks that no line from a label to its mark runs through a label.
+func checkLeads(t *testing.T, doc []byte) {
+	t.Helper()
+	leads := leadForm.FindAllSubmatch(doc, -1)
+	if len(leads) == 0 {
+		t.Error("no lead to a mark")
+	}
+	for _, m := range leads {
+		x, _ := strconv.ParseFloat(string(m[1]), 64)
+		top, _ := strconv.ParseFloat(string(m[2]), 64)
+		low, _ := strconv.ParseFloat(string(m[3]), 64)
+		for _, b := range textBoxes(doc) {
+			if b.l < x && x < b.r && b.t < low && top < b.b {
+				t.Errorf("a lead at x %.0f runs through %q", x, b.text)
 			}
 		}
 	}
@@ -120,6 +148,7 @@ func TestFiguresOfSixSlabs(t *testing.T) {
 		t.Run(c.name, func(t *testing.T) {
 			doc := Section(sectionOf(t, l, c.lon, c.lat, c.depthKm))
 			checkFigure(t, doc)
+			checkLeads(t, doc)
 			text := strings.Join(parse(t, doc, "text"), " ")
 			for _, want := range append(c.says, "Depth (km)", "Distance from", l.Model().Ref(), "A screening aid", "Slab: ", "\u00b1 1\u03c3") {
 				if !strings.Contains(text, want) {

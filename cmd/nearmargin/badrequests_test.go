@@ -158,11 +158,11 @@ func TestBadRequests(t *testing.T) {
 	if after.HeapAlloc > before.HeapAlloc+boundBytes || before.HeapAlloc > 512<<20 {
 		t.Errorf("heap after one round %d bytes, after two %d", before.HeapAlloc, after.HeapAlloc)
 	}
-	metrics := fetch(t, "http://"+address+"/metrics")
+	metrics := getText(t, "http://"+address+"/metrics")
 	if !strings.Contains(metrics, "nearmargin_panics_total 0\n") || strings.Contains(metrics, `status="5`) {
 		t.Errorf("a panic, or an answer of 5xx:\n%s", metrics)
 	}
-	if got := fetch(t, "http://"+address+"/v1/point?lon=-72.4&lat=-36.1"); !strings.Contains(got, `"code":"SA"`) {
+	if got := getText(t, "http://"+address+"/v1/point?lon=-72.4&lat=-36.1"); !strings.Contains(got, `"code":"SA"`) {
 		t.Errorf("afterwards a point is answered with %s", got)
 	}
 }
@@ -234,7 +234,7 @@ func checkProblem(t *testing.T, r *badRequest, res *http.Response, body []byte) 
 	}
 }
 
-func fetch(t *testing.T, url string) string {
+func getText(t *testing.T, url string) string {
 	t.Helper()
 	res, err := http.Get(url)
 	if err != nil {

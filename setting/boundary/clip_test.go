@@ -41,8 +41,11 @@ func anyArea(tb testing.TB, r *rand.Rand, n *Network) sphere.Shape {
 func TestInsideAgreesWithWalking(t *testing.T) {
 	r := seeded(t)
 	n := mustNetwork(t, synthetic(r, 24))
-	clipped := 0
-	for range 60 {
+	clipped, shapes := 0, 60
+	if testing.Short() {
+		shapes = 15
+	}
+	for range shapes {
 		s := anyArea(t, r, n)
 		got, want := map[string]float64{}, map[string]float64{}
 		pieces := 0
@@ -72,7 +75,7 @@ func TestInsideAgreesWithWalking(t *testing.T) {
 			}
 		}
 	}
-	if clipped < 60 {
+	if clipped < shapes {
 		t.Errorf("only %d boundaries were clipped", clipped)
 	}
 }
@@ -131,9 +134,13 @@ func TestPlateAtIsThatOfLocate(t *testing.T) {
 	n := mustNetwork(t, synthetic(r, 24))
 	for range 5000 {
 		p := anyPlace(r, n)
-		want, _ := n.Locate(p)
-		if got := n.PlateAt(p.Vec); got != want {
+		want, hit := n.Locate(p)
+		got, rad := n.PlateAt(p.Vec)
+		if got != want {
 			t.Fatalf("%v: plate %s, want %s", p.LonLat, got, want)
+		}
+		if d := sphere.RadToKm(rad); math.Abs(d-hit.DistanceKm) > 0.006*d+1e-6 {
+			t.Fatalf("%v: %g km to the nearest boundary, want about %g", p.LonLat, d, hit.DistanceKm)
 		}
 	}
 }

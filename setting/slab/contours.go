@@ -19,13 +19,13 @@ type Contour struct {
 // contourSurface is a surface between contours.
 //
 // Method: between two contours the depth follows from the distances d1 and d2 to
-// both, z = z1 + (z2-z1)·d1/(d1+d2); the dip is atan((z2-z1)/(d1+d2)), and its
-// direction that from the nearest point of the upper contour to that of the
-// lower. The footprint of each strip is the ring of its two contours and the arcs
-// that join their ends.
+// both, z = z1 + (z2-z1)·d1/(d1+d2). Dip and its direction are those of the gradient
+// of z, (z2-z1)·(d2·u1 + d1·u2)/(d1+d2)², with the unit vectors u1 away from the
+// nearest point of the upper contour and u2 towards that of the lower. The footprint
+// of each strip is the ring of its two contours and the arcs that join their ends.
 //
-// Accuracy: exact on the contours, continuous everywhere inside; where contours
-// are far from parallel the dip is a mean over the strip.
+// Accuracy: exact on the contours, continuous everywhere inside; dip and direction
+// jump where the nearest point does, as at kinks.
 type contourSurface struct {
 	contours  []contour
 	strips    []*sphere.Region
@@ -34,6 +34,7 @@ type contourSurface struct {
 	centre    sphere.Vec
 	capRad    float64
 	cosCap    float64
+	cap       sphere.Cap
 }
 
 type contour struct {
@@ -161,6 +162,7 @@ func (s *contourSurface) bound() {
 		}
 	}
 	s.cosCap = math.Cos(s.capRad)
+	s.cap = sphere.NewCap(s.centre, s.capRad)
 }
 
 // Contours returns the contours of a surface that was built from them, nil of any
@@ -176,6 +178,8 @@ func Contours(s Surface) []Contour {
 	}
 	return out
 }
+
+func (s *contourSurface) Cap() (sphere.Vec, float64) { return s.centre, s.capRad }
 
 func (s *contourSurface) At(p sphere.Vec) (Reading, bool) {
 	if p.Dot(s.centre) < s.cosCap {
@@ -203,31 +207,40 @@ const onContourRad = 1e-9
 // between reads strip i, between contour i and the next.
 func (s *contourSurface) between(p sphere.Vec, i int) Reading {
 	up, low := &s.contours[i], &s.contours[i+1]
-	q1, _, _, d1 := up.path.Nearest(p)
-	q2, _, _, d2 := low.path.Nearest(p)
+	q1, leg1, _, d1 := up.path.Nearest(p)
+	q2, leg2, _, d2 := low.path.Nearest(p)
 	d1, d2 = sphere.RadToKm(d1), sphere.RadToKm(d2)
-	t := 0.0
-	if d1+d2 > 0 {
-		t = d1 / (d1 + d2)
+	// unit vectors away from the upper contour and towards the lower; on a contour its normal to the right
+	away, towards := p.Sub(q1).Unit(), q2.Sub(p).Unit()
+	const onContourKm = 1e-6
+	if d1 < onContourKm {
+		leg := up.path.Leg(leg1)
+		away = leg.N.Scale(-1)
 	}
+	if d2 < onContourKm {
+		leg := low.path.Leg(leg2)
+		towards = leg.N.Scale(-1)
+	}
+	wide := max(d1+d2, onContourKm)
+	t, down := d1/wide, away.Scale(d2/wide).Add(towards.Scale(d1/wide)) // down·(z2-z1)/wide is the gradient
 	return Reading{
 		DepthKm:       up.depthKm + t*(low.depthKm-up.depthKm),
 		SigmaKm:       up.sigmaKm + t*(low.sigmaKm-up.sigmaKm),
-		DipDeg:        math.Atan2(low.depthKm-up.depthKm, max(d1+d2, 1e-6)) * 180 / math.Pi,
-		DipAzimuthDeg: p.Azimuth(q2.Sub(q1)),
+		DipDeg:        math.Atan2((low.depthKm-up.depthKm)*down.Norm(), wide) * 180 / math.Pi,
+		DipAzimuthDeg: p.Azimuth(down),
 		ThicknessKm:   math.NaN(),
 	}
 }
 
 func (s *contourSurface) Outside(p sphere.Vec, withinKm float64) (Outside, bool) {
-	if sphere.Angle(p, s.centre) > s.capRad+sphere.KmToRad(withinKm) {
+	if s.cap.Beyond(p, sphere.ReachOf(sphere.KmToRad(withinKm))) {
 		return Outside{}, false
 	}
 	last := len(s.contours) - 1
 	// the rim: first and last contour, and the arcs that join the contours' ends
-	best, bestRad, strip := sphere.Vec{}, math.Inf(1), 0
+	best, bestRad, strip := sphere.Vec{}, sphere.KmToRad(withinKm), -1
 	see := func(path *sphere.Path, stripOf func(leg int) int) {
-		if q, leg, _, rad := path.Nearest(p); rad < bestRad {
+		if q, leg, _, rad, ok := path.NearestWithin(p, bestRad); ok && (rad < bestRad || strip < 0) {
 			best, bestRad, strip = q, rad, stripOf(leg)
 		}
 	}
@@ -237,7 +250,7 @@ func (s *contourSurface) Outside(p sphere.Vec, withinKm float64) (Outside, bool)
 		see(e, func(leg int) int { return leg })
 	}
 	km := sphere.RadToKm(bestRad)
-	if km > withinKm {
+	if strip < 0 || km > withinKm {
 		return Outside{}, false
 	}
 	r := s.between(best, strip)

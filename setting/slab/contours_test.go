@@ -13,16 +13,14 @@ import (
 
 func TestBetweenParallelContours(t *testing.T) {
 	for _, c := range []struct {
-		name     string
-		westLon  float64
-		lonDeg   float64 // from the western end
-		latDeg   float64
-		depthKm  float64
-		sigmaKm  float64
-		dipRise  float64 // km a degree of arc
-		inside   bool
-		tolKm    float64
-		ifNotWhy string
+		name    string
+		westLon float64
+		lonDeg  float64 // from the western end
+		latDeg  float64
+		depthKm float64
+		sigmaKm float64
+		dipRise float64 // km a degree of arc
+		inside  bool
 	}{
 		{name: "a quarter down the first strip", lonDeg: 2, latDeg: -0.25, depthKm: 20, sigmaKm: 3, dipRise: 40, inside: true},
 		{name: "half way down the first strip", lonDeg: 0.7, latDeg: -0.5, depthKm: 30, sigmaKm: 4, dipRise: 40, inside: true},

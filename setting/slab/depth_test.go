@@ -1,7 +1,9 @@
 package slab
 
 import (
+	"cmp"
 	"math"
+	"slices"
 	"testing"
 
 	"pgregory.net/rapid"
@@ -53,23 +55,37 @@ func TestRelationNames(t *testing.T) {
 }
 
 // searched returns the distance from a site to the surface by trying a fine grid
-// of places all over the circle in which the nearest must lie.
+// of places all over the circle in which the nearest must lie, and a finer one
+// around each of the places that are almost as near as the best.
 func searched(s Surface, p sphere.Vec, siteDepthKm float64) float64 {
 	here, ok := s.At(p)
 	if !ok {
 		return nan
 	}
 	site := p.Scale(sphere.MeanRadiusKm - siteDepthKm)
-	best := math.Abs(here.DepthKm - siteDepthKm)
-	radius := 1.15 * best
 	east, north := p.EastNorth()
-	const n = 60
+	to := func(eastKm, northKm float64) float64 {
+		q := p.Add(east.Scale(eastKm / sphere.MeanRadiusKm)).Add(north.Scale(northKm / sphere.MeanRadiusKm)).Unit()
+		if r, ok := s.At(q); ok {
+			return q.Scale(sphere.MeanRadiusKm - r.DepthKm).Sub(site).Norm()
+		}
+		return math.Inf(1)
+	}
+	const n, fine, refined = 50, 8, 40
+	cell := 1.15 * math.Abs(here.DepthKm-siteDepthKm) / n
+	type place struct{ km, east, north float64 }
+	places := []place{{to(0, 0), 0, 0}}
 	for i := -n; i <= n; i++ {
 		for j := -n; j <= n; j++ {
-			e, k := radius*float64(i)/n/sphere.MeanRadiusKm, radius*float64(j)/n/sphere.MeanRadiusKm
-			q := p.Add(east.Scale(e)).Add(north.Scale(k)).Unit()
-			if r, ok := s.At(q); ok {
-				best = min(best, q.Scale(sphere.MeanRadiusKm-r.DepthKm).Sub(site).Norm())
+			places = append(places, place{to(cell*float64(i), cell*float64(j)), cell * float64(i), cell * float64(j)})
+		}
+	}
+	slices.SortFunc(places, func(a, b place) int { return cmp.Compare(a.km, b.km) })
+	best := places[0].km
+	for _, q := range places[:refined] {
+		for i := -fine; i <= fine; i++ {
+			for j := -fine; j <= fine; j++ {
+				best = min(best, to(q.east+cell*float64(i)/fine, q.north+cell*float64(j)/fine))
 			}
 		}
 	}
@@ -82,7 +98,7 @@ func checkDistance(t *rapid.T, surface Surface, p sphere.Vec) {
 		t.Skip("outside")
 	}
 	site := rapid.Float64Range(0, 400).Draw(t, "site depth")
-	s := &Slab{Spec{Surface: surface}}
+	s := &Slab{Spec: Spec{Surface: surface}}
 	got, want := s.Distance3D(p, site), searched(surface, p, site)
 	if !(got <= 1.02*want+0.01 && got >= 0.98*want-0.01) {
 		t.Fatalf("%v at %g km, slab at %g km dipping %g: distance %g, searched %g", p.LonLat(), site, r.DepthKm, r.DipDeg, got, want)
@@ -121,7 +137,7 @@ func TestDistance3DToAPlane(t *testing.T) {
 		surface := must[Surface](t)(NewContours([]Contour{parallel(20, 2, 0, 4, 0), parallel(deep, 9, 0, 4, -gap)}))
 		p := at(2, -gap/2)
 		r, _ := surface.At(p)
-		s := &Slab{Spec{Surface: surface}}
+		s := &Slab{Spec: Spec{Surface: surface}}
 		for _, clearance := range []float64{30, -30} {
 			steeper := math.Tan(dip*math.Pi/180) * sphere.MeanRadiusKm / (sphere.MeanRadiusKm - r.DepthKm)
 			want := 30 * math.Cos(math.Atan(steeper))
@@ -136,7 +152,7 @@ func TestDistance3DToAPlane(t *testing.T) {
 }
 
 func TestDistance3DOutside(t *testing.T) {
-	s := &Slab{Spec{Surface: southward(t, 0)}}
+	s := &Slab{Spec: Spec{Surface: southward(t, 0)}}
 	if got := s.Distance3D(at(2, 1), 10); !math.IsNaN(got) {
 		t.Errorf("outside of the footprint the distance is %g, want NaN", got)
 	}
