@@ -56,7 +56,7 @@ func inOrder[R any](ctx context.Context, o *Options,
 	failed := make(chan struct{})
 	wg.Go(func() {
 		for c := range order {
-			// <-c.done
+			<-c.done
 			if writeErr == nil {
 				if writeErr = write(c.out); writeErr != nil {
 					close(failed)
