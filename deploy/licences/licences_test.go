@@ -62,7 +62,7 @@ type module struct {
 func dependencies(t *testing.T, args ...string) []module {
 	t.Helper()
 	cmd := exec.Command("go", append([]string{"list", "-deps", "-f", `{{with .Module}}{{if not .Main}}{"Path":"{{.Path}}","Version":"{{.Version}}","Dir":{{printf "%q" .Dir}}}{{end}}{{end}}`}, args...)...)
-	cmd.Dir = ".."
+	cmd.Dir = "../.." // the module
 	out, err := cmd.Output()
 	if err != nil {
 		t.Fatalf("go list: %v", err)
