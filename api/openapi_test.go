@@ -87,7 +87,7 @@ func TestDocumentDescribesTheRoutes(t *testing.T) {
 		}
 	}
 	for _, r := range newRig(t).echo.Routes() {
-		path := strings.ReplaceAll(r.Path, ":id", "{id}")
+		path := strings.NewReplacer(":id", "{id}", "*", "{file}").Replace(r.Path)
 		served[r.Method+" "+path] = true
 	}
 	for _, r := range slices.Sorted(maps.Keys(served)) {

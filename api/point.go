@@ -1,9 +1,6 @@
 package api
 
 import (
-	"net/http"
-	"strconv"
-
 	"github.com/labstack/echo/v4"
 
 	"nearmargin/api/wire"
@@ -32,14 +29,4 @@ func (s *Server) point(c echo.Context) error {
 		return err
 	}
 	return sendBytes(c, echo.MIMEApplicationJSON, append(wire.AppendAnswer(make([]byte, 0, 4096), &a), '\n'))
-}
-
-// sendBytes sends a small body with its length.
-func sendBytes(c echo.Context, contentType string, body []byte) error {
-	h := c.Response().Header()
-	h.Set(echo.HeaderContentType, contentType)
-	h.Set(echo.HeaderContentLength, strconv.Itoa(len(body)))
-	c.Response().WriteHeader(http.StatusOK)
-	_, err := c.Response().Write(body)
-	return err
 }

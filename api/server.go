@@ -11,6 +11,7 @@ import (
 	"github.com/labstack/echo/v4"
 	"github.com/prometheus/client_golang/prometheus"
 
+	"nearmargin/api/page"
 	"nearmargin/setting"
 )
 
@@ -38,11 +39,16 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	echo    *echo.Echo
+	site    *page.Site
 }
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), echo: echo.New()}
+	site, err := page.New(OpenAPI())
+	if err != nil {
+		panic(err) // a file of the program's own
+	}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), echo: echo.New(), site: site}
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = echo.ExtractIPDirect()
@@ -52,6 +58,9 @@ func New(cfg Config) *Server {
 		"/v1/point":       s.point,
 		"/v1/area":        s.areaOfBox,
 		"/v1/boundaries":  s.boundaries,
+		"/v1/slabs":       s.slabs,
+		"/v1/zones":       s.zones,
+		"/v1/hotspots":    s.hotspots,
 		"/v1/section":     s.section,
 		"/v1/section.svg": s.sectionSVG,
 		"/v1/plates":      s.plates,
@@ -61,6 +70,9 @@ func New(cfg Config) *Server {
 		"/readyz":         s.ready,
 		"/metrics":        s.metrics.handler(cfg.Registry),
 		"/openapi.json":   s.openapi,
+		"/":               s.page,
+		"/reference":      s.page,
+		"/assets/*":       s.page,
 	} {
 		e.GET(path, h)
 		e.HEAD(path, h)
