@@ -17,6 +17,9 @@ import (
 //go:embed static
 var static embed.FS
 
+//go:embed template
+var templates embed.FS
+
 // contentTypes are the types of the files, by the ending of their names.
 var contentTypes = map[string]string{
 	".html":    "text/html; charset=utf-8",

@@ -1,5 +1,5 @@
 // The answer for a place, in plain language and in numbers.
-import { el, copyButton } from "./dom.js";
+import { el, fill, copyButton } from "./dom.js";
 import { words } from "./coords.js";
 import { labelWords, typeWords } from "./symbols.js";
 
@@ -47,15 +47,17 @@ export function motionSentence(m) {
   return `There the ${plateName(m.plate)} moves ${m.rate_mm_yr.toFixed(1)}${sigma} mm/yr towards the ${direction(m.azimuth_deg)} (${Math.round(m.azimuth_deg)}°) as seen from the ${plateName(m.relative_to)}${parts.length ? ": " + parts.join(", ") : ""}.`;
 }
 
+const kind = (type) => `${/^[aeiou]/.test(typeWords[type]) ? "an" : "a"} ${typeWords[type]}`;
+
 function nearestSentence(b, lead) {
-  if (b.distance_km === 0 || b.azimuth_deg === null) return `${lead} ${the(b.name)}, a ${typeWords[b.type]}, on which it lies.`;
-  return `${lead} ${the(b.name)}, a ${typeWords[b.type]}, ${km(b.distance_km)} ± ${km(b.distance_sigma_km)} km to the ${direction(b.azimuth_deg)} (${Math.round(b.azimuth_deg)}°).`;
+  if (b.distance_km === 0 || b.azimuth_deg === null) return `${lead} ${the(b.name)}, ${kind(b.type)}, on which it lies.`;
+  return `${lead} ${the(b.name)}, ${kind(b.type)}, ${km(b.distance_km)} ± ${km(b.distance_sigma_km)} km to the ${direction(b.azimuth_deg)} (${Math.round(b.azimuth_deg)}°).`;
 }
 
 const confidence = {
-  high: "High confidence: no other label is met when every limit, distance and position is moved by one σ.",
-  medium: "Medium confidence: moved by one σ, other labels of the same family are met.",
-  low: "Low confidence: moved by one σ, labels of another family are met.",
+  high: "confidence: no other label is met when every limit, distance and position is moved by one σ.",
+  medium: "confidence: moved by one σ, other labels of the same family are met.",
+  low: "confidence: moved by one σ, labels of another family are met.",
 };
 
 function boundaryRows(b) {
@@ -113,7 +115,8 @@ export function showAnswer(panel, a, query, sectionQuery) {
   const same = control && control.id === near.id;
   const side = a.plate.side_uncertain ? " (which side of the boundary is uncertain)" : "";
   const depth = a.site.depth_km === null ? "" : `, depth ${a.site.depth_km} km`;
-  panel.replaceChildren(
+  fill(
+    panel,
     el("h2", {}, name),
     el("p", { class: "place" }, words(a.site.lon, a.site.lat) + depth),
     el("p", { class: "lead" }, `On the ${a.plate.name} plate${side}, ${gloss}.`),

@@ -184,9 +184,8 @@ async function take(file, columns) {
     say(`Reading ${file.name}`);
     const got = await readFile(file.name, text, columns);
     if (got.polygon) {
-      const c = d3.geoCentroid(smallSide(got.polygon));
       const ring = got.polygon.type === "Polygon" && got.polygon.coordinates.length === 1 ? got.polygon.coordinates[0] : null;
-      globe.look({ lon: c[0], lat: c[1] });
+      fit(got.polygon.coordinates.flat(got.polygon.type === "Polygon" ? 1 : 2).map(([lon, lat]) => ({ lon, lat })));
       if (ring && ring.length <= 60) return areaOf(ring.slice(0, -1).map((p) => p.slice(0, 2)));
       return askArea(got.polygon);
     }
@@ -324,7 +323,7 @@ function show(s) {
 
 async function start() {
   key();
-  byId("legend").open = matchMedia("(min-width: 1200px)").matches;
+  byId("legend").open = matchMedia("(min-width: 1700px)").matches;
   show(state);
   addEventListener("popstate", () => show(read(location.hash)));
   addEventListener("hashchange", () => { if (location.hash !== write(state)) show(read(location.hash)); });

@@ -1,5 +1,5 @@
 // The answer for an area, in plain language and in numbers.
-import { el } from "./dom.js";
+import { el, fill } from "./dom.js";
 import { command, edition, km, labelName, list, num, table } from "./answer.js";
 import { typeWords } from "./symbols.js";
 
@@ -10,10 +10,11 @@ const span = (r, unit) => (r === null ? "not known" : `${r.min.toFixed(1)} to ${
 export function showArea(panel, a, polygon) {
   const top = a.settings[0], plates = a.plates.map((p) => `${p.name} (${percent(p.fraction)})`);
   const near = a.nearest_boundary, s = a.sampling;
-  panel.replaceChildren(
+  fill(
+    panel,
     el("h2", {}, "Area"),
     el("p", { class: "lead" }, `${Math.round(a.area_km2).toLocaleString("en")} km² on ${plates.length === 1 ? "the plate" : "the plates"} ${plates.join(", ")}.`),
-    el("p", {}, top ? `Most of it is ${labelName(top.label).toLowerCase()} (${percent(top.fraction)}). ` : "",
+    el("p", {}, top ? `The largest part is ${labelName(top.label).toLowerCase()} (${percent(top.fraction)}). ` : "",
       a.boundaries_inside.length ? `${a.boundaries_inside.length} plate ${a.boundaries_inside.length === 1 ? "boundary runs" : "boundaries run"} through it.`
         : `No plate boundary runs through it; the nearest is the ${near.name}, ${km(near.distance_km)} km away.`),
     el("h3", {}, "Settings"),
@@ -22,7 +23,7 @@ export function showArea(panel, a, polygon) {
       table("Boundaries inside", a.boundaries_inside.map((b) => [`${b.name} (${typeWords[b.type]}, ${b.left_plate} | ${b.right_plate})`, `${km(b.length_km)} km`,
         b.relative_motion ? span(b.relative_motion.rate_mm_yr, "mm/yr") : "not known"]), ["Boundary", "Length", "Rate"])] : []),
     ...(a.slabs.length ? [el("h3", {}, "Slabs below"),
-      table("Slabs below", a.slabs.map((x) => [x.name, percent(x.fraction), `${num(x.min_depth_km, null, "")}to ${num(x.max_depth_km, null, "km")}`]), ["Slab", "Share", "Depth of its top"])] : []),
+      table("Slabs below", a.slabs.map((x) => [x.name, percent(x.fraction), `${Math.round(x.min_depth_km)} to ${Math.round(x.max_depth_km)} km`]), ["Slab", "Share", "Depth of its top"])] : []),
     ...list("Cautions", a.notes.map((n) => n.detail)),
     el("p", { class: "sub" }, `Shares of settings from ${s.points} points, 1σ ${percent(s.standard_error)}; of plates from ${s.plate_points} points, 1σ ${percent(s.plate_standard_error)}.`),
     ...command(`curl -s -H 'Content-Type: application/geo+json' -d '${JSON.stringify(polygon)}' '${location.origin}/v1/area'`),

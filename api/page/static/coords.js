@@ -43,7 +43,7 @@ function withHemispheres(text) {
   const letters = t.match(/[NSEW]/g) || [];
   if (letters.length !== 2 || /[A-DF-MO-RT-VX-Z]/.test(t)) return null;
   const isLat = (c) => c === "N" || c === "S";
-  if (isLat(letters[0]) === isLat(letters[1])) return null;
+  if (isLat(letters[0]) === isLat(letters[1])) return { error: `both are ${isLat(letters[0]) ? "latitudes" : "longitudes"}; write 33.5 S 71.6 W` };
   const first = t.search(/[NSEW0-9]/);
   const before = /[NSEW]/.test(t[first]); // S33.5 W71.6 rather than 33.5S 71.6W
   const cut = before ? t.slice(first + 1).search(/[NSEW]/) + first + 1 : t.search(/[NSEW]/) + 1;

@@ -13,6 +13,11 @@ export function el(name, attrs, ...children) {
 
 export const byId = (id) => document.getElementById(id);
 
+// fill replaces what an element holds; absent parts are left out.
+export function fill(e, ...children) {
+  e.replaceChildren(...children.flat().filter((c) => c !== null && c !== undefined && c !== false));
+}
+
 // say speaks to assistive technology.
 export function say(text) {
   byId("status").textContent = text;

@@ -1,6 +1,6 @@
 // Files that are dropped: sites in CSV or GeoJSON, or a polygon.
 import { ask } from "./service.js";
-import { el, symbol } from "./dom.js";
+import { el, fill, symbol } from "./dom.js";
 import { labelName } from "./answer.js";
 import { siteColour, siteShape, labelWords } from "./symbols.js";
 
@@ -75,7 +75,8 @@ export function showSites(panel, name, got, dark, onpick) {
   const order = Object.keys(labelWords);
   const url = URL.createObjectURL(new Blob([got.text], { type: got.type }));
   const low = got.sites.filter((s) => s.confidence === "low").length;
-  panel.replaceChildren(
+  fill(
+    panel,
     el("h2", {}, name),
     el("p", { class: "lead" }, `${got.sites.length} ${got.sites.length === 1 ? "site has" : "sites have"} an answer${got.errors ? `, ${got.errors} ${got.errors === 1 ? "row has" : "rows have"} none` : ""}${low ? `; ${low} of low confidence (open markers)` : ""}.`),
     got.sites.length > mostDrawn ? el("p", {}, `The map shows the first ${mostDrawn}.`) : null,

@@ -107,14 +107,33 @@ export class Globe {
     if (layers.has("hotspots") && data.hotspots) this.drawHotspots();
     stroke({ type: "Sphere" }, p.ink, 1.2 * k);
     drawAnswer(this, projection, path);
+    this.drawScale();
     if (this.cross) this.drawCross();
+  }
+
+  // drawScale draws a bar that is true at the middle of the view.
+  drawScale() {
+    const { ctx, k, w, h, p } = this, perKm = this.projection().scale() / 6371;
+    const km = [5000, 2000, 1000, 500, 200, 100, 50, 20, 10, 5].find((s) => s * perKm < 150 * k) || 2;
+    const x = w - 14 * k, y = h - 16 * k, len = km * perKm;
+    for (const [colour, width] of [[p.halo, 5], [p.ink, 1.8]]) {
+      ctx.strokeStyle = colour;
+      ctx.lineWidth = width * k;
+      ctx.beginPath();
+      ctx.moveTo(x - len, y - 5 * k);
+      ctx.lineTo(x - len, y);
+      ctx.lineTo(x, y);
+      ctx.lineTo(x, y - 5 * k);
+      ctx.stroke();
+    }
+    this.text(`${km.toLocaleString("en")} km`, x - len / 2, y - 10 * k, 11, p.ink);
   }
 
   drawPlates(fill) {
     const tints = this.p.dark ? ["#7cc0f7", "#e8bf5e", "#58cbaa", "#d2adee", "#f59a63"] : ["#0a4a86", "#b08a00", "#00694f", "#6b2f94", "#b8420b"];
     const own = this.shown.answer?.plate.code;
     this.data.plates.forEach((f, i) => {
-      if (f.properties.code === own) fill(f, this.p.mark, 0.16);
+      if (f.properties.code === own) fill(f, this.p.mark, 0.08);
       else fill(f, tints[i % tints.length], 0.07);
     });
   }
@@ -160,10 +179,14 @@ export class Globe {
   }
 
   labelContours() {
+    const used = [];
     for (const f of this.data.slabs) {
       const c = f.geometry.type === "LineString" ? f.geometry.coordinates : f.geometry.coordinates[0];
       const xy = this.project(c[Math.floor(c.length / 2)]);
-      if (xy && xy[0] > 0 && xy[0] < this.w && xy[1] > 0 && xy[1] < this.h) this.text(`${f.properties.depth_km}`, xy[0], xy[1], 10, this.p.slab);
+      if (xy && xy[0] > 0 && xy[0] < this.w && xy[1] > 0 && xy[1] < this.h && used.every((u) => Math.hypot(u[0] - xy[0], (u[1] - xy[1]) * 1.6) > 24 * this.k)) {
+        used.push(xy);
+        this.text(`${f.properties.depth_km}`, xy[0], xy[1], 10, this.p.slab);
+      }
     }
   }
 
