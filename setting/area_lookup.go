@@ -71,9 +71,29 @@ func (l *Lookup) areaPlates(a *Area, out *AreaAnswer) {
 	}
 	g := a.sample(points)
 	class := make([]uint16, len(g.at))
+	clear := make([]float64, len(g.at))
 	var t tally[string]
-	for i, s := range g.at {
-		class[i] = t.add(l.m.network.PlateAt(s.At), s.Weight)
+	for _, p := range g.parts {
+		steps := p.steps()
+		for i := p.from; i < p.to; i++ {
+			// a neighbour already looked up, if nearer than its nearest boundary, has the same plate
+			for _, step := range steps {
+				j := i - step
+				if j < p.from {
+					continue
+				}
+				if left := clear[j] - sphere.Angle(g.at[i].At, g.at[j].At); left > 0 {
+					class[i], clear[i] = class[j], left
+					t.weight[class[i]] += g.at[i].Weight
+					break
+				}
+			}
+			if clear[i] == 0 {
+				var plate string
+				plate, clear[i] = l.m.network.PlateAt(g.at[i].At)
+				class[i] = t.add(plate, g.at[i].Weight)
+			}
+		}
 	}
 	t.each(func(code string, w float64) {
 		out.Plates = append(out.Plates, PlateShare{l.m.plates[code], w})
@@ -151,7 +171,8 @@ func (l *Lookup) areaSettings(a *Area, out *AreaAnswer) {
 	var e evidence
 	for i, s := range g.at {
 		place := boundary.PlaceAt(s.At.LonLat())
-		site.Plate, site.Zone = l.m.plates[l.m.network.PlateAt(s.At)], near.m.zoneAt(s.At)
+		plate, _ := l.m.network.PlateAt(s.At)
+		site.Plate, site.Zone = l.m.plates[plate], near.m.zoneAt(s.At)
 		near.gather(place, site.Plate.Code, &site, &e)
 		v, _ := e.decide()
 		class[i] = t.add(labelled{v.label, v.label.family(e.zone)}, s.Weight)

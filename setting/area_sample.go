@@ -37,26 +37,30 @@ func (a *Area) sample(n int) lattice {
 	return g
 }
 
+// steps returns how far apart in the list neighbours on the lattice stand: on a
+// golden lattice of N places by the two Fibonacci numbers around √N.
+func (p *latticePart) steps() [2]int {
+	f, next := 1, 1
+	for next*next < p.to-p.from {
+		f, next = next, f+next
+	}
+	return [2]int{f, next}
+}
+
 // spacingKm returns the side of the square that one place stands for.
 func (g *lattice) spacingKm(km2 float64) float64 { return math.Sqrt(km2 / float64(len(g.at))) }
 
 // standardError returns the largest standard error of the shares of classes, of
 // which every place has one; see [Sampling].
 //
-// Method: on a golden lattice the neighbours of place k are k+F and k+F', with F
-// and F' the Fibonacci numbers around √N; a line through the lattice parts about
+// Method: a line through the lattice parts about
 // as many such pairs as it crosses cells, and a cell with one random place adds
 // 1/6 of its square to the variance, on average over where the line crosses it.
 func (g *lattice) standardError(class []uint16, classes int) float64 {
 	variance := make([]float64, classes)
 	for _, p := range g.parts {
-		n := p.to - p.from
-		f, next := 1, 1
-		for next*next < n {
-			f, next = next, f+next
-		}
-		one := p.share / float64(n)
-		for _, step := range [...]int{f, next} {
+		one := p.share / float64(p.to-p.from)
+		for _, step := range p.steps() {
 			for i := p.from; i+step < p.to; i++ {
 				if a, b := class[i], class[i+step]; a != b {
 					variance[a] += one * one / 6

@@ -74,7 +74,6 @@ func labelAgain(segment string, north bool, km, sigmaKm float64, limit map[strin
 // alternatives are exactly the labels met.
 func TestAlternativesAreExactlyTheLabelsMet(t *testing.T) {
 	l := look(t, setting.Options{})
-	met := map[setting.Confidence]int{}
 	rapid.Check(t, func(t *rapid.T) {
 		s := segments[rapid.IntRange(0, len(segments)-1).Draw(t, "segment")]
 		north := rapid.Bool().Draw(t, "north")
@@ -141,11 +140,25 @@ func TestAlternativesAreExactlyTheLabelsMet(t *testing.T) {
 		if a.Confidence != confidence {
 			t.Fatalf("%s, %.3f km north: confidence %v with %v, want %v", s.id, signed, a.Confidence, got, confidence)
 		}
-		met[confidence]++
 	})
-	for _, c := range []setting.Confidence{setting.Low, setting.Medium, setting.High} {
-		if met[c] == 0 {
-			t.Errorf("no site of confidence %v was drawn", c)
+}
+
+func TestConfidence(t *testing.T) {
+	for _, c := range []struct {
+		segment string
+		km      float64
+		label   setting.Label
+		want    setting.Confidence
+	}{
+		{"rift", 10, setting.ContinentalRift, setting.High}, // either side of it
+		{"trench", 240, setting.VolcanicArc, setting.High},
+		{"trench", 145, setting.VolcanicArc, setting.Medium}, // or forearc
+		{"trench", -145, setting.OuterRise, setting.Low},     // or an interior
+		{"rift", 70, setting.ContinentalRift, setting.Low},
+		{"rift", 80, setting.PlateInterior, setting.Low},
+	} {
+		if a := answer(t, look(t, setting.Options{}), off(t, c.segment, c.km)); a.Label != c.label || a.Confidence != c.want {
+			t.Errorf("%s, %g km: %v of confidence %v with %v, want %v, %v", c.segment, c.km, a.Label, a.Confidence, names(a), c.label, c.want)
 		}
 	}
 }

@@ -215,7 +215,7 @@ func (c *cut) crossAny(list []*boundary.Boundary, reachKm float64, check bool) b
 		for i := 1; i < len(path); i++ {
 			leg, _ := sphere.NewArc(sphere.FromLonLat(path[i-1]), sphere.FromLonLat(path[i]))
 			for j := range arcs {
-				q, meets := arcs[j].Cross(&leg)
+				q, meets := meeting(&arcs[j], &leg)
 				if !meets {
 					continue
 				}
@@ -235,6 +235,27 @@ func (c *cut) crossAny(list []*boundary.Boundary, reachKm float64, check bool) b
 		}
 	}
 	return !math.IsInf(best, 1)
+}
+
+// meeting returns the point in which two arcs meet, and whether they do: also where
+// one ends on the other, unlike [sphere.Arc.Cross], since a line often runs through
+// a vertex of the trench.
+func meeting(a, b *sphere.Arc) (sphere.Vec, bool) {
+	const touching = 1e-12 // 6 µm
+	q := a.N.Cross(b.N)
+	if q.Norm() < 1e-9 { // on one great circle
+		return sphere.Vec{}, false
+	}
+	q = q.Unit()
+	if q.Dot(a.Midpoint()) < 0 {
+		q = q.Scale(-1)
+	}
+	for _, x := range [...]*sphere.Arc{a, b} {
+		if x.A.Cross(q).Dot(x.N) < -touching || q.Cross(x.B).Dot(x.N) < -touching {
+			return sphere.Vec{}, false
+		}
+	}
+	return q, true
 }
 
 // sinksBefore reports whether the plate that goes down at a leg of a boundary is

@@ -34,7 +34,7 @@ func (f *sectionFigure) legend() (out []entry) {
 		})
 	}
 	if _, ok := f.join(); ok {
-		add("trench to first known depth: joined for the eye", line("join"))
+		add("from the "+f.zero()+" to where depth is known: for the eye", line("join"))
 	}
 	if f.isSubduction() {
 		text := fmt.Sprintf("arc band: slab top %s to %s km deep", number(f.s.Arc.MinDepthKm, 0), number(f.s.Arc.MaxDepthKm, 0))
@@ -64,7 +64,7 @@ func (f *sectionFigure) legend() (out []entry) {
 		f.leaf("circle", like("ring", "cx", px(x+8), "cy", px(y), "r", "4"))
 	})
 	if d := f.s.Site.DepthKm; !math.IsNaN(d) {
-		text := fmt.Sprintf("site at %s km depth", number(d, 1))
+		text := fmt.Sprintf("site at %s km depth", trimmed(d, 1))
 		if f.s.IsBelow {
 			text += ", " + relation(&f.s.Below)
 		}

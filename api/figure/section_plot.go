@@ -6,6 +6,7 @@ import (
 	"strconv"
 
 	"nearmargin/setting/slab"
+	"nearmargin/setting/sphere"
 )
 
 // class returns the name of a class for one slab of a section.
@@ -21,8 +22,8 @@ func (f *sectionFigure) at(km, depthKm float64) point {
 func (f *sectionFigure) bottom() float64 { return f.y.at + f.plotH }
 
 const (
-	leastTickX = 62
-	leastTickY = 36
+	leastTickX = 50
+	leastTickY = 30
 )
 
 func (f *sectionFigure) depths() []float64 {
@@ -127,20 +128,21 @@ func (f *sectionFigure) drawJoin() {
 
 // drawArc hatches what lies between the arc band and the slab.
 func (f *sectionFigure) drawArc() {
+	p := &f.s.Profiles[0]
 	for _, r := range f.s.Arc.Ranges {
 		ring := []point{f.at(r.FromKm, 0)}
-		p := &f.s.Profiles[0]
+		add := func(km float64) {
+			if x, ok := p.Slab.Surface.At(sphere.FromLonLat(f.s.Line.At(km))); ok {
+				ring = append(ring, f.at(km, x.DepthKm))
+			}
+		}
+		add(r.FromKm)
 		for i := range p.Readings {
-			if km := f.s.Samples[i].Km; km >= r.FromKm && km <= r.ToKm && p.Has(i) {
-				if len(ring) == 1 {
-					ring = append(ring, f.at(r.FromKm, p.Readings[i].DepthKm))
-				}
+			if km := f.s.Samples[i].Km; km > r.FromKm && km < r.ToKm && p.Has(i) {
 				ring = append(ring, f.at(km, p.Readings[i].DepthKm))
 			}
 		}
-		if len(ring) > 1 {
-			ring = append(ring, point{f.x.px(r.ToKm), ring[len(ring)-1].y})
-		}
+		add(r.ToKm)
 		ring = append(ring, f.at(r.ToKm, 0))
 		f.leaf("path", attrs{"d", pathOf(ring, true), "fill", "url(#nm-hatch)", "fill-opacity", "0.45"})
 	}
@@ -177,16 +179,26 @@ func (f *sectionFigure) drawAxes() float64 {
 
 	up, down := f.directions()
 	name := "Distance from the " + f.zero() + " (km)"
+	const rowH = 17
 	y2 := low + 38
-	middle := f.x.at + f.plotW/2
-	if half := textWidth(name, textSize)/2 + 12 + math.Max(textWidth(up, textSize), textWidth(down, textSize)); 2*half > f.plotW {
-		text(name, middle, y2, "middle")
-		y2 += 17
-	} else {
-		text(name, middle, y2, "middle")
+	ends := math.Max(textWidth(up, textSize), textWidth(down, textSize)) + 12
+	right := f.x.at + f.plotW
+	switch w := textWidth(name, textSize); {
+	case w+2*ends <= f.plotW: // all in one row
+		text(name, f.x.at+f.plotW/2, y2, "middle")
+	case w <= f.plotW:
+		text(name, f.x.at+f.plotW/2, y2, "middle")
+		y2 += rowH
+	default:
+		text(name, f.x.at, y2, "start")
+		y2 += rowH
 	}
 	text(up, f.x.at, y2, "start")
-	text(down, f.x.at+f.plotW, y2, "end")
+	if 2*ends > f.plotW { // a very narrow plot
+		y2 += rowH
+		right = math.Max(right, f.x.at+ends)
+	}
+	text(down, right, y2, "end")
 	return y2 + 6
 }
 
@@ -199,11 +211,11 @@ func (f *sectionFigure) drawMarks() {
 		f.leaf("path", like("lead", "d", pathOf([]point{{x, from}, {x, f.y.at}}, false)))
 	}
 	site := f.x.px(f.s.SiteKm)
-	siteAt := f.beside(f.siteLabel(), site)
+	siteAt := f.beside(site, f.siteLabel(), f.shortSiteLabel())
 	trenchLane, siteLane := 0, 1
 	if f.s.HasTrench {
 		x := f.x.px(0)
-		trenchAt := f.beside(f.trenchLabel(), x)
+		trenchAt := f.beside(x, f.trenchLabel(), f.s.Trench.Boundary.Name())
 		if siteAt.covers(x) && !trenchAt.covers(site) {
 			trenchLane, siteLane = 1, 0
 		}
@@ -231,7 +243,7 @@ func (f *sectionFigure) drawArcBar(marks ...float64) {
 		x1, x2 := f.x.px(r.FromKm), f.x.px(r.ToKm)
 		f.leaf("rect", like("arcbar", "x", px(x1), "y", px(f.y.at-9), "width", px(math.Max(1, x2-x1)), "height", "7"))
 	}
-	at := f.beside("arc band", f.x.px(ranges[len(ranges)-1].ToKm))
+	at := f.beside(f.x.px(ranges[len(ranges)-1].ToKm), "arc band")
 	for _, x := range marks {
 		if at.covers(x) {
 			at = leftOf("arc band", f.x.px(ranges[0].FromKm))
@@ -262,14 +274,21 @@ func (l *labelAt) markX() float64 {
 
 const labelGap = 6 // between a mark and its label
 
-// beside places a label to the right of x, or to the left where it would leave the
-// figure.
-func (f *sectionFigure) beside(s string, x float64) labelAt {
-	w := textWidth(s, textSize)
-	if x+labelGap+w > figureW-8 {
-		return leftOf(s, x)
+// beside places the first of the texts that fits on the figure, to the right of x
+// where there is room, else to the left.
+func (f *sectionFigure) beside(x float64, texts ...string) (at labelAt) {
+	const edge = 8
+	for _, s := range texts {
+		w := textWidth(s, textSize)
+		at = labelAt{s, x + labelGap, x + labelGap + w, x + labelGap, "start"}
+		if at.right <= figureW-edge {
+			return at
+		}
+		if at = leftOf(s, x); at.left >= edge {
+			return at
+		}
 	}
-	return labelAt{s, x + labelGap, x + labelGap + w, x + labelGap, "start"}
+	return at
 }
 
 func leftOf(s string, x float64) labelAt {

@@ -41,7 +41,7 @@ func (f *sectionFigure) plate(code string) string {
 
 // place writes a position.
 func place(p sphere.LonLat) string {
-	return fmt.Sprintf("lon %s\u00b0, lat %s\u00b0", trimmed(p.Lon), trimmed(p.Lat))
+	return fmt.Sprintf("lon %s\u00b0, lat %s\u00b0", trimmed(p.Lon, 4), trimmed(p.Lat, 4))
 }
 
 // roughly writes a position with two decimals, about a kilometre.
@@ -49,9 +49,9 @@ func roughly(p sphere.LonLat) string {
 	return fmt.Sprintf("lon %s\u00b0, lat %s\u00b0", number(p.Lon, 2), number(p.Lat, 2))
 }
 
-// trimmed writes degrees with four decimals, less the zeros at the end.
-func trimmed(deg float64) string {
-	return strings.TrimSuffix(strings.TrimRight(number(deg, 4), "0"), ".")
+// trimmed writes a number with one to four decimals, less the zeros at the end.
+func trimmed(x float64, decimals int) string {
+	return strings.TrimSuffix(strings.TrimRight(number(x, decimals), "0"), ".")
 }
 
 var winds = [...]string{"N", "NNE", "NE", "ENE", "E", "ESE", "SE", "SSE", "S", "SSW", "SW", "WSW", "W", "WNW", "NW", "NNW"}
@@ -99,10 +99,18 @@ func (f *sectionFigure) siteLabel() string {
 	if s.SiteKm < 0 && s.HasTrench {
 		text += " on the side that goes down"
 	}
-	if !s.IsBelow {
-		return text + "; no slab known below it"
+	return text + "; " + f.belowSite()
+}
+
+// shortSiteLabel says what is below the site alone.
+func (f *sectionFigure) shortSiteLabel() string { return "site; " + f.belowSite() }
+
+func (f *sectionFigure) belowSite() string {
+	if !f.s.IsBelow {
+		return "no slab known below it"
 	}
-	return text + fmt.Sprintf("; slab top at %s km, dip %s\u00b0", plusMinus(s.Below.DepthKm, s.Below.SigmaKm), number(s.Below.DipDeg, 0))
+	b := &f.s.Below
+	return fmt.Sprintf("slab top at %s km, dip %s\u00b0", plusMinus(b.DepthKm, b.SigmaKm), number(b.DipDeg, 0))
 }
 
 // plusMinus writes a value with its σ where that is known.

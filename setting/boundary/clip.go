@@ -70,10 +70,11 @@ func (n *Network) legsWithin(centre sphere.Vec, rad float64) []int32 {
 	return out
 }
 
-// PlateAt returns the plate under a unit vector, as [Network.Locate] does.
-func (n *Network) PlateAt(p sphere.Vec) string {
+// PlateAt returns the plate under a unit vector, as [Network.Locate] does, and the
+// angle in radians to the nearest boundary, within which no other plate begins.
+func (n *Network) PlateAt(p sphere.Vec) (plate string, clearRad float64) {
 	first, _ := n.nearest(n.all, p, filter{}, reachOf(maxChordSq))
-	return n.plates[n.side(p, first)]
+	return n.plates[n.side(p, first)], 2 * math.Asin(math.Min(1, math.Sqrt(first.chordSq)/2))
 }
 
 // NearestToOutline returns the place on an outline, a set of closed rings, that

@@ -59,20 +59,3 @@ func BenchmarkArea(b *testing.B) {
 		})
 	}
 }
-
-func TestTmpShow(t *testing.T) {
-	m, _ := Load()
-	l, _ := m.Model.Lookup(setting.Options{})
-	a, err := setting.NewArea([][]sphere.LonLat{basin(1000, -72, -34, 5e5)})
-	if err != nil {
-		t.Fatal(err)
-	}
-	var out setting.AreaAnswer
-	l.Area(a, &out)
-	t.Log(out.AreaKm2, out.Sampling)
-	for _, x := range out.Plates { t.Log(x.Plate.Code, x.Fraction) }
-	for _, x := range out.Settings { t.Log(x.Label, x.Fraction) }
-	for _, x := range out.Boundaries { t.Log(x.Boundary.ID(), x.LengthKm, x.Motion) }
-	for _, x := range out.Slabs { t.Log(x.Slab.ID, x.Fraction,x.MinDepthKm,x.MedianDepthKm,x.MaxDepthKm) }
-	t.Log(out.Nearest.Boundary.ID(), out.Nearest.DistanceKm)
-}

@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -101,27 +102,34 @@ func layOut(name string, nodes []node) (*slab.Layer, error) {
 	if len(nodes) < 4 {
 		return nil, fault(name, 0, "%d nodes; a grid has at least 4", len(nodes))
 	}
-	lo, hi := nodes[0], nodes[0]
-	step := math.Inf(1)
-	for i, n := range nodes {
-		lo.lon, lo.lat = math.Min(lo.lon, n.lon), math.Min(lo.lat, n.lat)
-		hi.lon, hi.lat = math.Max(hi.lon, n.lon), math.Max(hi.lat, n.lat)
-		if i > 0 {
-			for _, d := range [...]float64{math.Abs(n.lon - nodes[i-1].lon), math.Abs(n.lat - nodes[i-1].lat)} {
-				if d > 1e-6 && d < step {
-					step = d
-				}
+	lo, hi := extent(nodes)
+	if hi.lon-lo.lon > 180 { // across ±180°
+		for i := range nodes {
+			if nodes[i].lon < 0 {
+				nodes[i].lon += 360
 			}
 		}
+		lo, hi = extent(nodes)
+	}
+	lons, lats := make([]float64, len(nodes)), make([]float64, len(nodes))
+	for i, n := range nodes {
+		lons[i], lats[i] = n.lon, n.lat
+	}
+	step, stepLat := leastGap(lons), leastGap(lats)
+	if !(math.Abs(step-stepLat) <= 0.02*min(step, stepLat)) { // true for +Inf, a single row or column
+		return nil, fault(name, 0, "the longitudes are %.6g degrees apart and the latitudes %.6g; want a grid with one step, at least 2 by 2", step, stepLat)
 	}
 	// the step over the whole width is better known than between two rounded nodes
 	cols := math.Round((hi.lon-lo.lon)/step) + 1
 	rows := math.Round((hi.lat-lo.lat)/step) + 1
-	if cols > 1 {
-		step = (hi.lon - lo.lon) / (cols - 1)
+	if mean := (hi.lon - lo.lon) / (cols - 1); math.Abs(mean-step) <= 0.02*step { // false where cols is 1
+		step = mean
 	}
 	if !(cols >= 2) || !(rows >= 2) || cols*rows > maxGridNodes {
 		return nil, fault(name, 0, "the nodes make a grid of %g by %g; want at least 2 by 2 and at most %d nodes", cols, rows, maxGridNodes)
+	}
+	if cells := cols * rows; cells > 10_000+200*float64(len(nodes)) {
+		return nil, fault(name, 0, "%d nodes on a grid of %g by %g with step %.6g; is one of them misplaced?", len(nodes), cols, rows, step)
 	}
 	l := &slab.Layer{West: lo.lon, South: lo.lat, Step: step, Cols: int(cols), Rows: int(rows)}
 	l.Values = make([]float32, l.Cols*l.Rows)
@@ -134,7 +142,35 @@ func layOut(name string, nodes []node) (*slab.Layer, error) {
 		if math.Abs(x-col) > 0.02 || math.Abs(y-row) > 0.02 {
 			return nil, fault(name, 0, "node %g, %g does not lie on a grid with step %g from %g, %g", n.lon, n.lat, step, lo.lon, lo.lat)
 		}
-		l.Values[int(row)*l.Cols+int(col)] = float32(n.value)
+		at, value := &l.Values[int(row)*l.Cols+int(col)], float32(n.value)
+		if have := *at; have == have && have != value { // not NaN
+			return nil, fault(name, 0, "node %g, %g stands twice, with %g and %g", n.lon, n.lat, have, value)
+		}
+		*at = value
 	}
 	return l, nil
+}
+
+// extent returns the least and the greatest longitude and latitude of nodes.
+func extent(nodes []node) (lo, hi node) {
+	lo, hi = nodes[0], nodes[0]
+	for _, n := range nodes[1:] {
+		lo.lon, lo.lat = math.Min(lo.lon, n.lon), math.Min(lo.lat, n.lat)
+		hi.lon, hi.lat = math.Max(hi.lon, n.lon), math.Max(hi.lat, n.lat)
+	}
+	return lo, hi
+}
+
+// leastGap returns the least difference between two of the numbers that is more
+// than rounding, +Inf where there is none.
+func leastGap(x []float64) float64 {
+	const rounding = 1e-4 // degrees, 11 m
+	slices.Sort(x)
+	least := math.Inf(1)
+	for i := 1; i < len(x); i++ {
+		if d := x[i] - x[i-1]; d > rounding && d < least {
+			least = d
+		}
+	}
+	return least
 }

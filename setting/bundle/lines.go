@@ -90,16 +90,12 @@ func (s *lineSet) parse(file, text string) error {
 	var cur *lineDraft
 	for i, raw := range strings.Split(text, "\n") {
 		n := i + 1
-		if !utf8.ValidString(raw) {
-			return &FileError{File: file, Line: n, Err: errNotUTF8}
+		body, words, err := splitLine(file, n, raw)
+		if err != nil {
+			return err
 		}
-		body, _, _ := strings.Cut(raw, "#")
-		words := strings.Fields(body)
 		if len(words) == 0 {
 			continue
-		}
-		if i := slices.IndexFunc(words, func(w string) bool { return strings.ContainsFunc(w, unicode.IsControl) }); i >= 0 {
-			return fault(file, n, "word %d, %q, holds a control character", i+1, words[i])
 		}
 		switch key := words[0]; {
 		case key == "node":
@@ -127,6 +123,21 @@ func (s *lineSet) parse(file, text string) error {
 		}
 	}
 	return nil
+}
+
+// splitLine returns what stands before any # in a line, and its words.
+func splitLine(file string, n int, raw string) (body string, words []string, err error) {
+	if !utf8.ValidString(raw) {
+		return "", nil, &FileError{File: file, Line: n, Err: errNotUTF8}
+	}
+	body, _, _ = strings.Cut(raw, "#")
+	words = strings.Fields(body)
+	for i, w := range words {
+		if strings.ContainsFunc(w, unicode.IsControl) {
+			return "", nil, fault(file, n, "word %d, %q, holds a control character", i+1, w)
+		}
+	}
+	return body, words, nil
 }
 
 func (s *lineSet) parseNode(file string, n int, words []string) error {

@@ -4,6 +4,8 @@ import (
 	"encoding/json"
 	"fmt"
 	"io/fs"
+	"maps"
+	"path"
 	"slices"
 	"strings"
 
@@ -15,6 +17,7 @@ import (
 const (
 	slabsFile    = "slabs/slabs.csv"
 	contoursFile = "slabs/contours.geojson"
+	gridPattern  = "slabs/*/*.xyz*"
 )
 
 var slabsColumns = []string{"slab", "name", "kind", "boundary_ids", "subducting_plate", "overriding_plate", "arc_min_depth_km", "source", "source_status"}
@@ -39,7 +42,10 @@ func (r *reader) slabs(c *setting.Contents) error {
 	case raw != nil && len(written) > 0:
 		return fault(slabsFile, 0, "stands beside slabs/*.txt; a model has one or the other")
 	case raw != nil:
-		c.Slabs, err = r.tableSlabs(raw)
+		c.Slabs, err = r.tableSlabs(raw, c.Boundaries)
+		return err
+	}
+	if err := r.noSlabFilesWithoutTable(); err != nil {
 		return err
 	}
 	resolve := lineResolver(c.Boundaries)
@@ -59,6 +65,21 @@ func (r *reader) slabs(c *setting.Contents) error {
 				return err
 			}
 			c.Slabs = append(c.Slabs, s)
+		}
+	}
+	return nil
+}
+
+// noSlabFilesWithoutTable refuses contours and grids that no table names: they
+// would be passed over in silence.
+func (r *reader) noSlabFilesWithoutTable() error {
+	for _, pattern := range [...]string{contoursFile, gridPattern} {
+		names, err := fs.Glob(r.dir, pattern)
+		if err != nil {
+			return err
+		}
+		if len(names) > 0 {
+			return fault(names[0], 0, "stands without %s, which names the slabs", slabsFile)
 		}
 	}
 	return nil
@@ -96,7 +117,11 @@ func lineResolver(boundaries []*boundary.Boundary) func(string) []string {
 }
 
 // tableSlabs reads slabs.csv with contours.geojson and grids.
-func (r *reader) tableSlabs(raw []byte) ([]*slab.Slab, error) {
+func (r *reader) tableSlabs(raw []byte, boundaries []*boundary.Boundary) ([]*slab.Slab, error) {
+	known := map[string]bool{}
+	for _, b := range boundaries {
+		known[b.ID()] = true
+	}
 	t, err := readTable(slabsFile, raw, slabsColumns)
 	if err != nil {
 		return nil, err
@@ -110,6 +135,7 @@ func (r *reader) tableSlabs(raw []byte) ([]*slab.Slab, error) {
 		}
 	}
 	var out []*slab.Slab
+	first := map[string]int{} // row of each slab
 	for i := range t.rows {
 		s := slab.Spec{
 			ID: t.cell(i, "slab"), Name: t.cell(i, "name"), BoundaryIDs: strings.Fields(t.cell(i, "boundary_ids")),
@@ -118,6 +144,15 @@ func (r *reader) tableSlabs(raw []byte) ([]*slab.Slab, error) {
 		}
 		if !nameForm.MatchString(s.ID) {
 			return nil, t.fault(i, "slab %q must be lower-case letters, digits and hyphens", s.ID)
+		}
+		if row, twice := first[s.ID]; twice {
+			return nil, t.fault(i, "slab %q stands already at line %d", s.ID, t.lines[row])
+		}
+		first[s.ID] = i
+		for _, id := range s.BoundaryIDs {
+			if !known[id] {
+				return nil, t.fault(i, "slab %q: there is no boundary %q", s.ID, id)
+			}
 		}
 		if s.Kind, err = slab.ParseKind(t.cell(i, "kind")); err != nil {
 			return nil, t.fault(i, "%v", err)
@@ -135,8 +170,17 @@ func (r *reader) tableSlabs(raw []byte) ([]*slab.Slab, error) {
 		}
 		out = append(out, built)
 	}
-	for id := range contours {
+	for _, id := range slices.Sorted(maps.Keys(contours)) {
 		return nil, fault(contoursFile, 0, "slab %q is not in %s", id, slabsFile)
+	}
+	grids, err := fs.Glob(r.dir, gridPattern)
+	if err != nil {
+		return nil, err
+	}
+	for _, name := range grids {
+		if id := path.Base(path.Dir(name)); !slices.ContainsFunc(out, func(s *slab.Slab) bool { return s.ID == id }) {
+			return nil, fault(name, 0, "slab %q is not in %s", id, slabsFile)
+		}
 	}
 	return out, nil
 }
@@ -148,6 +192,8 @@ func (r *reader) surface(id string, contours []slab.Contour) (slab.Surface, erro
 		return nil, err
 	}
 	switch {
+	case layers.Depth == nil && layers != (slab.Layers{}):
+		return nil, fault("slabs/"+id+"/depth.xyz", 0, "the file is missing, and other layers of the slab are there")
 	case layers.Depth != nil && len(contours) > 0:
 		return nil, fault(slabsFile, 0, "slab %q has contours and a grid; a slab has one or the other", id)
 	case layers.Depth != nil:
@@ -174,12 +220,12 @@ func readContours(raw []byte) (map[string][]slab.Contour, error) {
 		in := func(err error) error {
 			return &FileError{File: contoursFile, Detail: fmt.Sprintf("features[%d] (slab %q)", i, f.Properties.Slab), Err: err}
 		}
-		path, err := readPath(f.Geometry)
+		line, err := readPath(f.Geometry)
 		if err != nil {
 			return nil, in(err)
 		}
 		id := f.Properties.Slab
-		out[id] = append(out[id], slab.Contour{DepthKm: f.Properties.DepthKm, SigmaKm: f.Properties.SigmaKm, Path: path})
+		out[id] = append(out[id], slab.Contour{DepthKm: f.Properties.DepthKm, SigmaKm: f.Properties.SigmaKm, Path: line})
 	}
 	return out, nil
 }

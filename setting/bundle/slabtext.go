@@ -47,8 +47,10 @@ func parseSlabs(file, text string) ([]*slabDraft, error) {
 	var cur *slabDraft
 	for i, raw := range strings.Split(text, "\n") {
 		n := i + 1
-		body, _, _ := strings.Cut(raw, "#")
-		words := strings.Fields(body)
+		body, words, err := splitLine(file, n, raw)
+		if err != nil {
+			return nil, err
+		}
 		if len(words) == 0 {
 			continue
 		}

@@ -3,6 +3,7 @@ package slab
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"nearmargin/setting/sphere"
 )
@@ -18,20 +19,21 @@ type Contour struct {
 // contourSurface is a surface between contours.
 //
 // Method: between two contours the depth follows from the distances d1 and d2 to
-// both, z = z1 + (z2-z1)·d1/(d1+d2); the dip is atan((z2-z1)/(d1+d2)), and its
-// direction that from the nearest point of the upper contour to that of the
-// lower. The footprint of each strip is the ring of its two contours and the arcs
-// that join their ends.
+// both, z = z1 + (z2-z1)·d1/(d1+d2). Dip and its direction are those of the gradient
+// of z, (z2-z1)·(d2·u1 + d1·u2)/(d1+d2)², with the unit vectors u1 away from the
+// nearest point of the upper contour and u2 towards that of the lower. The footprint
+// of each strip is the ring of its two contours and the arcs that join their ends.
 //
-// Accuracy: exact on the contours, continuous everywhere inside; where contours
-// are far from parallel the dip is a mean over the strip.
+// Accuracy: exact on the contours, continuous everywhere inside; dip and direction
+// jump where the nearest point does, as at kinks.
 type contourSurface struct {
-	contours []contour
-	strips   []*sphere.Region
-	ends     [2]*sphere.Path // the arcs that join the contours' starts, and their ends
-	centre   sphere.Vec
-	capRad   float64
-	cosCap   float64
+	contours  []contour
+	strips    []*sphere.Region
+	footprint *sphere.Region  // of all strips
+	ends      [2]*sphere.Path // the arcs that join the contours' starts, and their ends
+	centre    sphere.Vec
+	capRad    float64
+	cosCap    float64
 }
 
 type contour struct {
@@ -54,7 +56,7 @@ func NewContours(cs []Contour) (Surface, error) {
 			return nil, fmt.Errorf("contour %d: depth_km is %g; it must be within 0 and 800", i+1, c.DepthKm)
 		case i > 0 && c.DepthKm <= cs[i-1].DepthKm:
 			return nil, fmt.Errorf("contour %d: depth_km %g does not lie below the one before, %g", i+1, c.DepthKm, cs[i-1].DepthKm)
-		case !(c.SigmaKm > 0):
+		case !(c.SigmaKm > 0) || math.IsInf(c.SigmaKm, 0):
 			return nil, fmt.Errorf("contour %g km: sigma_km is %g; it must be more than 0", c.DepthKm, c.SigmaKm)
 		}
 		var pts []sphere.Vec
@@ -79,25 +81,50 @@ func NewContours(cs []Contour) (Surface, error) {
 			return nil, fmt.Errorf("the contours' ends: %w", err)
 		}
 	}
+	if err := s.addFootprint(); err != nil {
+		return nil, err
+	}
 	s.bound()
 	return s, nil
 }
 
+// addFootprint closes the ring around all strips: the first contour, the ends of
+// all, the last contour, the starts of all.
+func (s *contourSurface) addFootprint() error {
+	last := len(s.contours) - 1
+	ring := slices.Clone(s.contours[0].given.Path)
+	for _, c := range s.contours[1:last] {
+		ring = append(ring, c.given.Path[len(c.given.Path)-1])
+	}
+	ring = appendReversed(ring, s.contours[last].given.Path)
+	for i := last - 1; i >= 0; i-- {
+		ring = append(ring, s.contours[i].given.Path[0])
+	}
+	var err error
+	if s.footprint, err = sphere.NewRegion(ring); err != nil {
+		return fmt.Errorf("around all contours: %w", err)
+	}
+	return nil
+}
+
+func appendReversed(to, path []sphere.LonLat) []sphere.LonLat {
+	for j := len(path) - 1; j >= 0; j-- {
+		to = append(to, path[j])
+	}
+	return to
+}
+
 // addStrip closes the ring between contour i-1 and contour i, and checks that the
-// lower lies to the right of the upper.
+// lower runs the same way as the upper and lies to the right of it.
 func (s *contourSurface) addStrip(i int) error {
 	up, low := &s.contours[i-1], &s.contours[i]
-	var ring []sphere.LonLat
-	ring = append(ring, up.given.Path...)
-	for j := len(low.given.Path) - 1; j >= 0; j-- {
-		ring = append(ring, low.given.Path[j])
-	}
+	ring := appendReversed(slices.Clone(up.given.Path), low.given.Path)
 	region, err := sphere.NewRegion(append(ring, ring[0]))
 	if err != nil {
 		return fmt.Errorf("between the contours of %g and %g km: %w", up.depthKm, low.depthKm, err)
 	}
 	s.strips = append(s.strips, region)
-	left, n := 0, low.path.Len()
+	left, against, n := 0, 0, low.path.Len()
 	for j := range n {
 		leg := low.path.Leg(j)
 		m := leg.Midpoint()
@@ -106,6 +133,12 @@ func (s *contourSurface) addStrip(i int) error {
 		if where == sphere.Inside && upper.Side(m) > 0 {
 			left++
 		}
+		if upper.Tangent(upper.Midpoint()).Dot(leg.B.Sub(leg.A)) < 0 {
+			against++
+		}
+	}
+	if against*2 > n {
+		return fmt.Errorf("the contours of %g and %g km run in opposite directions; the slab must deepen to the right of both", up.depthKm, low.depthKm)
 	}
 	if left*2 > n {
 		return fmt.Errorf("the contour of %g km lies to the left of that of %g km; the slab must deepen to the right", low.depthKm, up.depthKm)
@@ -153,24 +186,44 @@ func (s *contourSurface) At(p sphere.Vec) (Reading, bool) {
 			return s.between(p, i), true
 		}
 	}
+	// a place on the contour that two strips share may count as outside of both
+	if s.footprint.Contains(p) {
+		for i := 1; i < len(s.contours)-1; i++ {
+			if _, _, _, rad := s.contours[i].path.Nearest(p); rad < onContourRad {
+				return s.between(p, i), true
+			}
+		}
+	}
 	return Reading{}, false
 }
+
+// onContourRad is the distance within which a place counts as on a contour: 6 mm.
+const onContourRad = 1e-9
 
 // between reads strip i, between contour i and the next.
 func (s *contourSurface) between(p sphere.Vec, i int) Reading {
 	up, low := &s.contours[i], &s.contours[i+1]
-	q1, _, _, d1 := up.path.Nearest(p)
-	q2, _, _, d2 := low.path.Nearest(p)
+	q1, leg1, _, d1 := up.path.Nearest(p)
+	q2, leg2, _, d2 := low.path.Nearest(p)
 	d1, d2 = sphere.RadToKm(d1), sphere.RadToKm(d2)
-	t := 0.0
-	if d1+d2 > 0 {
-		t = d1 / (d1 + d2)
+	// unit vectors away from the upper contour and towards the lower; on a contour its normal to the right
+	away, towards := p.Sub(q1).Unit(), q2.Sub(p).Unit()
+	const onContourKm = 1e-6
+	if d1 < onContourKm {
+		leg := up.path.Leg(leg1)
+		away = leg.N.Scale(-1)
 	}
+	if d2 < onContourKm {
+		leg := low.path.Leg(leg2)
+		towards = leg.N.Scale(-1)
+	}
+	wide := max(d1+d2, onContourKm)
+	t, down := d1/wide, away.Scale(d2/wide).Add(towards.Scale(d1/wide)) // down·(z2-z1)/wide is the gradient
 	return Reading{
 		DepthKm:       up.depthKm + t*(low.depthKm-up.depthKm),
 		SigmaKm:       up.sigmaKm + t*(low.sigmaKm-up.sigmaKm),
-		DipDeg:        math.Atan2(low.depthKm-up.depthKm, max(d1+d2, 1e-6)) * 180 / math.Pi,
-		DipAzimuthDeg: p.Azimuth(q2.Sub(q1)),
+		DipDeg:        math.Atan2((low.depthKm-up.depthKm)*down.Norm(), wide) * 180 / math.Pi,
+		DipAzimuthDeg: p.Azimuth(down),
 		ThicknessKm:   math.NaN(),
 	}
 }

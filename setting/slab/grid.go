@@ -23,6 +23,17 @@ func (l *Layer) check(name string) error {
 	return nil
 }
 
+// within checks that every value there is lies within a range.
+func (l *Layer) within(name, unit string, least, most float64) error {
+	for i, v := range l.Values {
+		if x := float64(v); x < least || x > most { // false for NaN
+			lon, lat := l.West+float64(i%l.Cols)*l.Step, l.South+float64(i/l.Cols)*l.Step
+			return fmt.Errorf("%s: the node at %.6g, %.6g has %.6g; it must be within %g and %g%s", name, lon, lat, x, least, most, unit)
+		}
+	}
+	return nil
+}
+
 // node returns the value at a node, NaN outside of the grid.
 func (l *Layer) node(col, row int) float64 {
 	if l == nil || col < 0 || row < 0 || col >= l.Cols || row >= l.Rows {
@@ -60,13 +71,21 @@ func NewGrid(l Layers) (Surface, error) {
 		return nil, fmt.Errorf("the depth layer is missing")
 	}
 	for _, x := range [...]struct {
-		name  string
-		layer *Layer
-	}{{"depth", l.Depth}, {"sigma", l.Sigma}, {"dip", l.Dip}, {"strike", l.Strike}, {"thickness", l.Thickness}} {
+		name        string
+		layer       *Layer
+		unit        string
+		least, most float64
+	}{
+		{"depth", l.Depth, ", km positive down", 0, 800}, {"sigma", l.Sigma, " km", 0, 800}, {"thickness", l.Thickness, " km", 0, 800},
+		{"dip", l.Dip, " degrees", 0, 90}, {"strike", l.Strike, " degrees", -360, 360},
+	} {
 		if x.layer == nil {
 			continue
 		}
 		if err := x.layer.check(x.name); err != nil {
+			return nil, err
+		}
+		if err := x.layer.within(x.name, x.unit, x.least, x.most); err != nil {
 			return nil, err
 		}
 		d := l.Depth

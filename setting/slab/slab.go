@@ -3,7 +3,6 @@ package slab
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"nearmargin/setting/sphere"
 )
@@ -101,7 +100,7 @@ func New(s Spec) (*Slab, error) {
 		return fail("id is empty")
 	case s.Name == "":
 		return fail("name is empty")
-	case s.Kind == NoKind:
+	case s.Kind == NoKind || int(s.Kind) >= len(kindNames):
 		return fail("kind is missing; the kinds are %v", AllKinds)
 	case s.Subducting == "" || s.Overriding == "":
 		return fail("subducting_plate %q and overriding_plate %q must both be given", s.Subducting, s.Overriding)
@@ -114,7 +113,7 @@ func New(s Spec) (*Slab, error) {
 	case s.Surface == nil:
 		return fail("has neither contours nor a grid")
 	}
-	s.BoundaryIDs = slices.Clone(s.BoundaryIDs)
+	s.BoundaryIDs = append([]string(nil), s.BoundaryIDs...)
 	return &Slab{s}, nil
 }
 

@@ -39,5 +39,5 @@ func crossingLat(a, b LonLat) float64 {
 	if q.X > 0 {
 		q = q.Scale(-1)
 	}
-	return math.Round(q.Unit().LonLat().Lat*1e6) / 1e6
+	return math.Round(q.Unit().LonLat().Lat*1e6)/1e6 + 0 // no minus zero
 }

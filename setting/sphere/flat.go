@@ -54,6 +54,15 @@ func (e *flatEdge) holds(p planar) bool {
 
 func near2(p, q planar) bool { return math.Hypot(p.x-q.x, p.y-q.y) <= onEdge }
 
+// beside reports whether both ends of f lie clearly on one side of e's line.
+func (e *flatEdge) beside(f *flatEdge) bool {
+	dx, dy := e.b.x-e.a.x, e.b.y-e.a.y
+	a := float64(dx*(f.a.y-e.a.y)) - float64(dy*(f.a.x-e.a.x))
+	b := float64(dx*(f.b.y-e.a.y)) - float64(dy*(f.b.x-e.a.x))
+	least := onEdge * (math.Abs(dx) + math.Abs(dy)) // no less than onEdge times the length
+	return a > least && b > least || a < -least && b < -least
+}
+
 // bands finds edges by height: a list of edges for each of many equal bands.
 type bands struct {
 	low, perBand float64 // lower end, and height of a band
@@ -62,7 +71,7 @@ type bands struct {
 }
 
 // maxPerEdge bounds how many bands an edge may stand in, on average.
-const maxPerEdge = 8
+const maxPerEdge = 16
 
 func newBands(edges []flatEdge) bands {
 	low, high := math.Inf(1), math.Inf(-1)
@@ -111,6 +120,28 @@ func (b *bands) fill(edges []flatEdge, n, total int) {
 // with what counts as on an edge to spare.
 func (b *bands) span(lo, hi float64, n int) (from, to int) {
 	return b.clamp((lo-b.low-2*onEdge)/b.perBand, n), b.clamp((hi-b.low+2*onEdge)/b.perBand, n)
+}
+
+// between returns the lowest and highest x of the part of an edge that lies
+// between two heights, with what counts as on an edge to spare; false where none
+// does.
+func (e *flatEdge) between(low, high float64) (from, to float64, ok bool) {
+	low, high = low-4*onEdge, high+4*onEdge
+	p, q := e.a, e.b
+	if p.y > q.y {
+		p, q = q, p
+	}
+	if q.y < low || p.y > high {
+		return 0, 0, false
+	}
+	from, to = p.x, q.x
+	if p.y < low {
+		from = e.xAt(low)
+	}
+	if q.y > high {
+		to = e.xAt(high)
+	}
+	return min(from, to) - 2*onEdge, max(from, to) + 2*onEdge, true
 }
 
 func (b *bands) clamp(x float64, n int) int {

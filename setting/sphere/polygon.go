@@ -148,8 +148,11 @@ func (p *Polygon) flatten(from [][]int32) error {
 	for i, ring := range p.rings {
 		for j, v := range ring {
 			d := v.Dot(p.centre)
-			if d < minCosCap {
-				return shapeError(i, int(from[i][j]), "the ring does not fit into a hemisphere (its middle is taken at %.4g, %.4g); divide the polygon into smaller ones", p.centre.LonLat().Lon, p.centre.LonLat().Lat)
+			switch {
+			case d < minCosCap && i == 0:
+				return shapeError(0, -1, "the ring does not fit into a hemisphere (its middle is taken at %.4g, %.4g); divide the polygon into smaller ones", p.centre.LonLat().Lon, p.centre.LonLat().Lat)
+			case d < minCosCap:
+				return holeOutside(i, from[i][j], v)
 			}
 			p.cosCap = min(p.cosCap, d)
 			x, y := v.Dot(ex), v.Dot(ey)

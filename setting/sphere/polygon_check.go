@@ -1,6 +1,7 @@
 package sphere
 
 import (
+	"cmp"
 	"math"
 	"slices"
 )
@@ -13,25 +14,46 @@ func (p *Polygon) checkRings() error {
 			return shapeError(i, -1, "the ring's positions all lie on one line and enclose no area")
 		}
 	}
-	// all pairs that share a band, by their left ends
-	order := make([]int32, 0, 64)
+	var parts []edgePart
 	for k := range p.bands.num() {
-		order = append(order[:0], p.bands.list(k)...)
-		slices.SortFunc(order, func(a, b int32) int {
-			if c := p.edges[a].minX() - p.edges[b].minX(); c != 0 {
-				return int(math.Copysign(1, c))
+		list := p.bands.list(k)
+		cuts := 1 + min(15, len(list)/500)
+		low, step := p.bands.low+float64(k)*p.bands.perBand, p.bands.perBand/float64(cuts)
+		for i := range cuts {
+			parts = p.partsBetween(list, low+float64(i)*step, low+float64(i+1)*step, parts[:0])
+			if err := p.checkParts(parts); err != nil {
+				return err
 			}
-			return int(a - b)
-		})
-		for n, i := range order {
-			right := p.edges[i].maxX() + onEdge
-			for _, j := range order[n+1:] {
-				if p.edges[j].minX() > right {
-					break
-				}
-				if err := p.checkPair(min(i, j), max(i, j)); err != nil {
-					return err
-				}
+		}
+	}
+	return nil
+}
+
+// edgePart is the part of an edge between two heights.
+type edgePart struct {
+	from, to float64 // lowest and highest x
+	edge     int32
+}
+
+func (p *Polygon) partsBetween(list []int32, low, high float64, parts []edgePart) []edgePart {
+	for _, i := range list {
+		if from, to, ok := p.edges[i].between(low, high); ok {
+			parts = append(parts, edgePart{from, to, i})
+		}
+	}
+	return parts
+}
+
+// checkParts checks all pairs of edges whose parts overlap from left to right.
+func (p *Polygon) checkParts(parts []edgePart) error {
+	slices.SortFunc(parts, func(a, b edgePart) int { return cmp.Or(cmp.Compare(a.from, b.from), cmp.Compare(a.edge, b.edge)) })
+	for n, e := range parts {
+		for _, f := range parts[n+1:] {
+			if f.from > e.to {
+				break
+			}
+			if err := p.checkPair(min(e.edge, f.edge), max(e.edge, f.edge)); err != nil {
+				return err
 			}
 		}
 	}
@@ -60,7 +82,7 @@ func (p *Polygon) straight(ring int) bool {
 // checkPair reports an error where two edges meet as they must not.
 func (p *Polygon) checkPair(i, j int32) error {
 	e, f := &p.edges[i], &p.edges[j]
-	if e.maxY() < f.minY()-onEdge || f.maxY() < e.minY()-onEdge {
+	if e.beside(f) || f.beside(e) {
 		return nil
 	}
 	if e.ring != f.ring {
@@ -156,6 +178,11 @@ func (p *Polygon) checkHoles() error {
 	return nil
 }
 
+func holeOutside(ring int, position int32, v Vec) error {
+	at := v.LonLat()
+	return shapeError(ring, int(position), "the hole lies outside of the polygon's outer ring, near %.6g, %.6g; a hole must be inside it", at.Lon, at.Lat)
+}
+
 // ringCount says of a place which rings it is inside of, and which it is on.
 type ringCount struct {
 	p      *Polygon
@@ -179,10 +206,10 @@ func (c *ringCount) check(q planar, ring, position int32) error {
 			c.on[e.ring] = true
 		}
 	}
-	at := c.p.round(q).LonLat()
 	if !c.in[0] && !c.on[0] {
-		return shapeError(int(ring), int(position), "the hole lies outside of the polygon's outer ring, near %.6g, %.6g; a hole must be inside it", at.Lon, at.Lat)
+		return holeOutside(int(ring), position, c.p.round(q))
 	}
+	at := c.p.round(q).LonLat()
 	for _, r := range c.seen {
 		if r != 0 && r != ring && c.in[r] && !c.on[r] {
 			return shapeError(int(ring), int(position), "the hole overlaps the hole of ring %d, near %.6g, %.6g; make one hole of the two", r, at.Lon, at.Lat)

@@ -191,7 +191,7 @@ func TestHolesAreTakenOff(t *testing.T) {
 // TestAreaOfAnyRingAgreesWithDice throws places at a cap around the ring.
 func TestAreaOfAnyRingAgreesWithDice(t *testing.T) {
 	r := rand.New(rand.NewPCG(7, 7))
-	for range 20 {
+	for range fewer(20) {
 		s := anyShape(t, r)
 		c, rad := s.Cap()
 		sum, n := 0.0, 100000
