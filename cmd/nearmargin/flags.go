@@ -19,7 +19,8 @@ type flags struct {
 	listen, out, format, dir      string
 	lonColumn, latColumn          string
 	depthColumn, uncertaintyCol   string
-	prefix                        string
+	prefix, title                 string
+	asJSON                        bool
 	depthUnit, depthDatum         string
 	elevationColumn               string
 	depthKm, uncertaintyKm, ageMa optional
@@ -97,7 +98,7 @@ func (f *flags) parse(args []string) error {
 		// one flag at a time: what follows it may be a negative number again
 		n := 1
 		if name := strings.TrimLeft(args[0], "-"); !strings.Contains(name, "=") {
-			if fl := f.set.Lookup(name); fl != nil && len(args) > 1 {
+			if fl := f.set.Lookup(name); fl != nil && !isBool(fl) && len(args) > 1 {
 				n = 2
 			}
 		}
@@ -110,6 +111,12 @@ func (f *flags) parse(args []string) error {
 		args = args[n:]
 	}
 	return nil
+}
+
+// isBool reports whether a flag stands alone.
+func isBool(fl *flag.Flag) bool {
+	b, ok := fl.Value.(interface{ IsBoolFlag() bool })
+	return ok && b.IsBoolFlag()
 }
 
 // usage prints the command's flags.
