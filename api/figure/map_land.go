@@ -111,7 +111,9 @@ func landAt(v sphere.Vec, rings [][]sphere.LonLat) bool {
 			continue
 		}
 		within := circles(pts)
-		if clockwise := turn(pts) > 0; clockwise != (i == 0) { // it holds the far side instead
+		if middle, small := compact(ring); small { // the direction of a sliver says nothing
+			within = within && v.Dot(middle) > 0
+		} else if clockwise := turn(pts) > 0; clockwise != (i == 0) { // it holds the far side instead
 			within = !within
 		}
 		if within {
@@ -119,6 +121,23 @@ func landAt(v sphere.Vec, rings [][]sphere.LonLat) bool {
 		}
 	}
 	return inside
+}
+
+// compact returns the middle of a ring and whether all of it lies within 60° of that.
+func compact(ring []sphere.LonLat) (middle sphere.Vec, small bool) {
+	for _, p := range ring {
+		middle = middle.Add(sphere.FromLonLat(p))
+	}
+	if middle.Norm() == 0 {
+		return middle, false
+	}
+	middle = middle.Unit()
+	for _, p := range ring {
+		if middle.Dot(sphere.FromLonLat(p)) < 0.5 {
+			return middle, false
+		}
+	}
+	return middle, true
 }
 
 // circles reports whether a ring in the plane goes round the origin.
