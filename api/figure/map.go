@@ -185,14 +185,12 @@ type meshLabel struct {
 // drawMesh draws meridians and parallels and returns their labels.
 func (m *locationMap) drawMesh() (labels []meshLabel) {
 	degPx := m.k * math.Pi / 180
-	step := 30.0
-	for _, s := range []float64{0.5, 1, 2, 5, 10, 20} {
-		if s*degPx >= 90 {
-			step = s
-			break
-		}
+	shrink := 1.0 // of a degree of longitude at the middle
+	if az, ok := m.proj.(*azimuthal); ok {
+		shrink = math.Max(math.Cos(az.centre.LonLat().Lat*math.Pi/180), 0.05)
 	}
-	for lon := -180.0; lon < 180; lon += step {
+	step, lonStep := meshStep(degPx), meshStep(degPx*shrink)
+	for lon := -180.0; lon < 180; lon += lonStep {
 		var line []sphere.LonLat
 		for lat := -90.0; lat <= 90; lat += 1 {
 			line = append(line, sphere.LonLat{Lon: lon, Lat: lat})
@@ -211,6 +209,16 @@ func (m *locationMap) drawMesh() (labels []meshLabel) {
 		}
 	}
 	return labels
+}
+
+// meshStep returns the degrees between lines so that they stand some 90 px apart.
+func meshStep(degPx float64) float64 {
+	for _, s := range []float64{0.5, 1, 2, 5, 10, 15} {
+		if s*degPx >= 90 {
+			return s
+		}
+	}
+	return 30
 }
 
 // meshLine draws a line and returns where it crosses an edge of the frame, on which a
@@ -234,7 +242,7 @@ func (m *locationMap) meshLine(line []sphere.LonLat, off func(point) float64) (a
 			if a*b < 0 {
 				f := a / (a - b)
 				c := point{run[n-1].x + f*(q.x-run[n-1].x), run[n-1].y + f*(q.y-run[n-1].y)}
-				if m.within(c, 1) && c.x > m.x-1 && c.x < m.x+m.w-30 {
+				if m.within(c, 1) && c.x > m.x-1 && c.x < m.x+m.w-150 {
 					at, ok = c, true
 				}
 			}

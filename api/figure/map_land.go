@@ -47,10 +47,10 @@ func (m *locationMap) drawLand() {
 			var pts []point
 			for _, p := range ring {
 				if q, ok := m.to(p); ok {
-					near = near || m.within(q, 200)
 					pts = append(pts, q)
 				}
 			}
+			near = near || m.meets(pts)
 			d.WriteString(pathOf(pts, true))
 		}
 		// Where the antipode is land, so is all beyond the rings.
@@ -63,6 +63,16 @@ func (m *locationMap) drawLand() {
 			m.leaf("path", like("land", "d", d.String()))
 		}
 	}
+}
+
+// meets reports whether the box around points meets the frame.
+func (m *locationMap) meets(pts []point) bool {
+	low, high := point{math.Inf(1), math.Inf(1)}, point{math.Inf(-1), math.Inf(-1)}
+	for _, p := range pts {
+		low = point{math.Min(low.x, p.x), math.Min(low.y, p.y)}
+		high = point{math.Max(high.x, p.x), math.Max(high.y, p.y)}
+	}
+	return low.x < m.x+m.w && high.x > m.x && low.y < m.y+m.h && high.y > m.y
 }
 
 // worldRing appends a ring on a world map. Longitudes run on past ±180°, and the ring
