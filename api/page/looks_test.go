@@ -24,6 +24,7 @@ func TestSizesAndThemes(t *testing.T) {
 				for _, bad := range eval[[]string](b, contrastScript) {
 					t.Error(bad)
 				}
+				t.Logf("the first answer came %.0f ms after the page was asked for", eval[float64](b, `performance.getEntriesByType("resource").find((e) => e.name.includes("/v1/point")).responseEnd`))
 				b.quiet()
 			})
 		}
