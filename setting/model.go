@@ -36,6 +36,7 @@ type Contents struct {
 	Hotspots                    []Hotspot
 	Slabs                       []*slab.Slab
 	Land                        []*Land // land near spreading ridges
+	Warnings                    []Warning
 }
 
 // Model is one edition of everything that an answer rests on.
@@ -189,6 +190,9 @@ func (m *Model) Slabs() []*slab.Slab { return slices.Clone(m.c.Slabs) }
 
 // Land returns the outlines of land near spreading ridges.
 func (m *Model) Land() []*Land { return slices.Clone(m.c.Land) }
+
+// Warnings returns the known faults of the model's data.
+func (m *Model) Warnings() []Warning { return slices.Clone(m.c.Warnings) }
 
 // DefaultMotion returns the name of the motion model used where none is asked for.
 func (m *Model) DefaultMotion() string { return m.c.DefaultMotion }

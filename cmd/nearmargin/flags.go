@@ -24,6 +24,7 @@ type flags struct {
 	depthUnit, depthDatum         string
 	elevationColumn               string
 	depthKm, uncertaintyKm, ageMa optional
+	build                         buildOptions
 }
 
 // optional is a number that may be absent.

@@ -3,6 +3,7 @@ package main
 import (
 	"context"
 	"fmt"
+	"strings"
 
 	"nearmargin/setting"
 )
@@ -24,6 +25,16 @@ func modelCheck(p *program, _ context.Context, f *flags) error {
 	faults := m.Network().Faults()
 	for _, x := range faults {
 		fmt.Fprintf(p.stdout, "%.4f %.4f %s: %s\n", x.At.Lon, x.At.Lat, x.Code, x.Detail)
+	}
+	for _, w := range m.Warnings() {
+		if strings.HasPrefix(w.Code, "network_") {
+			continue // found again above
+		}
+		at := ""
+		if w.Placed {
+			at = fmt.Sprintf("%.4f %.4f ", w.At.Lon, w.At.Lat)
+		}
+		fmt.Fprintf(p.stdout, "warning kept with the edition: %s%s: %s\n", at, w.Code, w.Detail)
 	}
 	bounded := map[string]bool{}
 	for _, code := range m.Network().Plates() {

@@ -43,6 +43,7 @@ var commands = []command{
 	{"summary", "FILE|-", "count an annotated file by setting, boundary type and distance", summary, summaryFlags},
 	{"model check", "DIR|builtin", "check a model and name the place of every fault", modelCheck, nil},
 	{"model export", "NAME", "write a model as a directory", modelExport, exportFlags},
+	{"model build", "", "build a model directory from published data sets", modelBuild, buildFlags},
 	{"model rules", "", "print the rule table", modelRules, nil},
 	{"version", "", "print version, commit and model edition", version, nil},
 }

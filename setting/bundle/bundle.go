@@ -138,6 +138,13 @@ func (r *reader) contents() (c setting.Contents, tables map[string]*table, err e
 			return c, nil, err
 		}
 	}
+	if raw, err = r.file(warningsFile, true); err != nil {
+		return c, nil, err
+	} else if raw != nil {
+		if c.Warnings, err = readWarnings(raw); err != nil {
+			return c, nil, err
+		}
+	}
 	if err = r.slabs(&c); err != nil {
 		return c, nil, err
 	}
@@ -237,6 +244,9 @@ func (b *Bundle) encode(in info, m *setting.Model, tables map[string]*table) err
 	}
 	if hs := m.Hotspots(); len(hs) > 0 {
 		b.files[hotspotsFile] = writeHotspots(hs)
+	}
+	if ws := m.Warnings(); len(ws) > 0 {
+		b.files[warningsFile] = writeWarnings(ws)
 	}
 	return nil
 }

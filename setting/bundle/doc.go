@@ -11,6 +11,7 @@
 //	zones.geojson            polygons of diffuse deformation (optional)
 //	hotspots.csv             name,lon,lat,source (optional)
 //	land.geojson             outlines of land near spreading ridges (optional)
+//	warnings.csv             code,lon,lat,detail of known faults of the data (optional)
 //	slabs/slabs.csv          one row a slab, with
 //	slabs/contours.geojson   contours of equal depth, or
 //	slabs/SLAB/depth.xyz     grids: depth, sigma, dip, strike, thickness, also .gz;
@@ -19,5 +20,6 @@
 // Reading is strict: an unknown member, a missing column or a number out of
 // range is an error that names the file, the place in it and what would be
 // right. Writing is canonical: the same model gives the same bytes, and the
-// model's checksum is taken over them.
+// model's checksum is taken over them. A [Draft] puts a new model together from
+// parts; package published reads those from the files of their authors.
 package bundle

@@ -6,16 +6,11 @@ import (
 	"compress/gzip"
 	"fmt"
 	"io"
-	"math"
-	"slices"
 	"strconv"
 	"strings"
 
 	"nearmargin/setting/slab"
 )
-
-// maxGridNodes bounds one layer of a gridded slab.
-const maxGridNodes = 50_000_000
 
 // grid reads a slab's layers; Depth is nil where it has no grid.
 func (r *reader) grid(id string) (slab.Layers, error) {
@@ -52,13 +47,10 @@ func (r *reader) grid(id string) (slab.Layers, error) {
 	return l, nil
 }
 
-// node is one line of an .xyz file.
-type node struct{ lon, lat, value float64 }
-
 // readLayer reads lon,lat,value lines in any order, on a regular grid; a value of
 // NaN, or a node left out, has none.
 func readLayer(name string, text io.Reader) (*slab.Layer, error) {
-	var nodes []node
+	var nodes []slab.Node
 	sc := bufio.NewScanner(text)
 	for line := 1; sc.Scan(); line++ {
 		s := strings.TrimSpace(sc.Text())
@@ -69,108 +61,34 @@ func readLayer(name string, text io.Reader) (*slab.Layer, error) {
 		if err != nil {
 			return nil, fault(name, line, "%v", err)
 		}
-		if nodes = append(nodes, n); len(nodes) > maxGridNodes {
-			return nil, fault(name, line, "more than %d nodes", maxGridNodes)
+		if nodes = append(nodes, n); len(nodes) > slab.MaxNodes {
+			return nil, fault(name, line, "more than %d nodes", slab.MaxNodes)
 		}
 	}
 	if err := sc.Err(); err != nil {
 		return nil, &FileError{File: name, Err: err}
 	}
-	return layOut(name, nodes)
+	l, err := slab.LayOut(nodes)
+	if err != nil {
+		return nil, &FileError{File: name, Err: err}
+	}
+	return l, nil
 }
 
-func parseNode(s string) (node, error) {
+func parseNode(s string) (slab.Node, error) {
 	f := strings.FieldsFunc(s, func(r rune) bool { return r == ',' || r == ' ' || r == '\t' })
 	if len(f) != 3 {
-		return node{}, fmt.Errorf("%q has %d numbers; want lon,lat,value", s, len(f))
+		return slab.Node{}, fmt.Errorf("%q has %d numbers; want lon,lat,value", s, len(f))
 	}
 	var x [3]float64
 	for i := range f {
 		var err error
 		if x[i], err = strconv.ParseFloat(f[i], 64); err != nil {
-			return node{}, fmt.Errorf("%q is not a number", f[i])
+			return slab.Node{}, fmt.Errorf("%q is not a number", f[i])
 		}
 	}
 	if !(x[0] >= -180 && x[0] <= 360) || !(x[1] >= -90 && x[1] <= 90) {
-		return node{}, fmt.Errorf("%g, %g is not a longitude and a latitude", x[0], x[1])
+		return slab.Node{}, fmt.Errorf("%g, %g is not a longitude and a latitude", x[0], x[1])
 	}
-	return node{x[0], x[1], x[2]}, nil
-}
-
-// layOut puts nodes on a grid.
-func layOut(name string, nodes []node) (*slab.Layer, error) {
-	if len(nodes) < 4 {
-		return nil, fault(name, 0, "%d nodes; a grid has at least 4", len(nodes))
-	}
-	lo, hi := extent(nodes)
-	if hi.lon-lo.lon > 180 { // across ±180°
-		for i := range nodes {
-			if nodes[i].lon < 0 {
-				nodes[i].lon += 360
-			}
-		}
-		lo, hi = extent(nodes)
-	}
-	lons, lats := make([]float64, len(nodes)), make([]float64, len(nodes))
-	for i, n := range nodes {
-		lons[i], lats[i] = n.lon, n.lat
-	}
-	step, stepLat := leastGap(lons), leastGap(lats)
-	if !(math.Abs(step-stepLat) <= 0.02*min(step, stepLat)) { // true for +Inf, a single row or column
-		return nil, fault(name, 0, "the longitudes are %.6g degrees apart and the latitudes %.6g; want a grid with one step, at least 2 by 2", step, stepLat)
-	}
-	// the step over the whole width is better known than between two rounded nodes
-	cols := math.Round((hi.lon-lo.lon)/step) + 1
-	rows := math.Round((hi.lat-lo.lat)/step) + 1
-	if mean := (hi.lon - lo.lon) / (cols - 1); math.Abs(mean-step) <= 0.02*step { // false where cols is 1
-		step = mean
-	}
-	if !(cols >= 2) || !(rows >= 2) || cols*rows > maxGridNodes {
-		return nil, fault(name, 0, "the nodes make a grid of %g by %g; want at least 2 by 2 and at most %d nodes", cols, rows, maxGridNodes)
-	}
-	if cells := cols * rows; cells > 10_000+200*float64(len(nodes)) {
-		return nil, fault(name, 0, "%d nodes on a grid of %g by %g with step %.6g; is one of them misplaced?", len(nodes), cols, rows, step)
-	}
-	l := &slab.Layer{West: lo.lon, South: lo.lat, Step: step, Cols: int(cols), Rows: int(rows)}
-	l.Values = make([]float32, l.Cols*l.Rows)
-	for i := range l.Values {
-		l.Values[i] = float32(math.NaN())
-	}
-	for _, n := range nodes {
-		x, y := (n.lon-lo.lon)/step, (n.lat-lo.lat)/step
-		col, row := math.Round(x), math.Round(y)
-		if math.Abs(x-col) > 0.02 || math.Abs(y-row) > 0.02 {
-			return nil, fault(name, 0, "node %g, %g does not lie on a grid with step %g from %g, %g", n.lon, n.lat, step, lo.lon, lo.lat)
-		}
-		at, value := &l.Values[int(row)*l.Cols+int(col)], float32(n.value)
-		if have := *at; have == have && have != value { // not NaN
-			return nil, fault(name, 0, "node %g, %g stands twice, with %g and %g", n.lon, n.lat, have, value)
-		}
-		*at = value
-	}
-	return l, nil
-}
-
-// extent returns the least and the greatest longitude and latitude of nodes.
-func extent(nodes []node) (lo, hi node) {
-	lo, hi = nodes[0], nodes[0]
-	for _, n := range nodes[1:] {
-		lo.lon, lo.lat = math.Min(lo.lon, n.lon), math.Min(lo.lat, n.lat)
-		hi.lon, hi.lat = math.Max(hi.lon, n.lon), math.Max(hi.lat, n.lat)
-	}
-	return lo, hi
-}
-
-// leastGap returns the least difference between two of the numbers that is more
-// than rounding, +Inf where there is none.
-func leastGap(x []float64) float64 {
-	const rounding = 1e-4 // degrees, 11 m
-	slices.Sort(x)
-	least := math.Inf(1)
-	for i := 1; i < len(x); i++ {
-		if d := x[i] - x[i-1]; d > rounding && d < least {
-			least = d
-		}
-	}
-	return least
+	return slab.Node{Lon: x[0], Lat: x[1], Value: x[2]}, nil
 }

@@ -258,12 +258,12 @@ func TestDistributedGridsComeBack(t *testing.T) {
 			if err != nil || len(f) != 3 {
 				t.Fatalf("%s: %q: %v", zone, line, err)
 			}
-			if math.IsNaN(n.value) { // its node stands for the extent
+			if math.IsNaN(n.Value) { // its node stands for the extent
 				fmt.Fprintf(&out, "%s,%s,NaN\n", f[0], f[1])
 				continue
 			}
 			fmt.Fprintf(&out, "%s,%s,%s\n", f[0], f[1], strings.TrimPrefix(f[2], "-")) // positive down
-			given[zone] = append(given[zone], place{n.lon, n.lat, -n.value})
+			given[zone] = append(given[zone], place{n.Lon, n.Lat, -n.Value})
 		}
 		if err := os.MkdirAll(filepath.Join(dir, "slabs", zone), 0o755); err != nil {
 			t.Fatal(err)

@@ -289,7 +289,33 @@ function key() {
     ctx.scale(2, 2);
     strokeLines(ctx, [[[2, 11], [50, 11]]], look, p, 1, 1);
     return el("li", {}, c, look.name);
-  }));
+  }), ...otherKeys(p));
+}
+
+// otherKeys draws the samples of what is not a boundary.
+function otherKeys(p) {
+  const line = (ctx, colour, width, dash = []) => {
+    ctx.strokeStyle = colour;
+    ctx.lineWidth = width;
+    ctx.setLineDash(dash);
+    ctx.beginPath();
+    ctx.moveTo(2, 9);
+    ctx.lineTo(50, 9);
+    ctx.stroke();
+  };
+  return [
+    ["Slab contour, km", (ctx) => line(ctx, p.slab, 1)],
+    ["Diffuse zone (hatched)", (ctx) => line(ctx, p.zone, 1, [2, 2])],
+    ["Hotspot", (ctx) => { ctx.fillStyle = p.hot; ctx.beginPath(); ctx.arc(26, 9, 3.2, 0, 7); ctx.fill(); }],
+    ["To the nearest boundary", (ctx) => line(ctx, p.mark, 1.8)],
+    ["To the controlling one", (ctx) => line(ctx, p.mark, 1.8, [7, 4])],
+    ["Motion of the plate across, 1σ at its tip", (ctx) => { line(ctx, p.ink, 2); ctx.fillStyle = p.ink; ctx.beginPath(); ctx.moveTo(51, 9); ctx.lineTo(43, 5); ctx.lineTo(43, 13); ctx.fill(); }],
+  ].map(([name, draw]) => {
+    const c = el("canvas", { width: 104, height: 36, "aria-hidden": "true" }), ctx = c.getContext("2d");
+    ctx.scale(2, 2);
+    draw(ctx);
+    return el("li", {}, c, name);
+  });
 }
 matchMedia("(prefers-color-scheme: dark)").addEventListener("change", key);
 

@@ -99,9 +99,9 @@ function velocity(globe, b) {
     ctx.stroke(error);
   }
   ctx.restore();
-  const tip = len + along + 10 * k;
   const words = `${m.rate_mm_yr.toFixed(0)}${m.rate_sigma_mm_yr === null ? "" : " ± " + m.rate_sigma_mm_yr.toFixed(1)} mm/yr`;
-  globe.text(words, from[0] + Math.cos(angle) * (tip + Math.abs(Math.cos(angle)) * 32 * k), from[1] + Math.sin(angle) * (tip + 6 * k), 12, p.ink, "600");
+  const half = words.length * 3.6 * k, off = len + along + 8 * k; // from the tip, so that the words stand clear of it
+  globe.text(words, from[0] + Math.cos(angle) * (off + half * Math.abs(Math.cos(angle))), from[1] + Math.sin(angle) * (off + half * Math.abs(Math.cos(angle)) + 4 * k), 12, p.ink, "600");
 }
 
 function drawSites(globe) {
