@@ -88,6 +88,9 @@ type tab struct {
 // where tools are required.
 func chromium(t *testing.T) string {
 	t.Helper()
+	if testing.Short() {
+		t.Skip("-short: no browser is started")
+	}
 	for _, name := range []string{"chromium", "chromium-browser", "google-chrome"} {
 		if path, err := exec.LookPath(name); err == nil {
 			return path
@@ -118,12 +121,20 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	if dark {
 		scheme = "dark"
 	}
+	if fragment == noScript {
+		b.run(emulation.SetScriptExecutionDisabled(true))
+	}
 	b.run(log.Enable(), emulation.SetDeviceMetricsOverride(int64(width), int64(height), 1, width < 500),
 		emulation.SetEmulatedMedia().WithFeatures([]*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: scheme}}),
 		chromedp.Navigate(b.url+"/"+fragment))
-	b.wait("the page is ready", `document.documentElement.dataset.ready === "yes"`)
+	if !strings.HasPrefix(fragment, noScript) {
+		b.wait("the page is ready", `document.documentElement.dataset.ready === "yes"`)
+	}
 	return b
 }
+
+// noScript as a fragment opens the page without JavaScript.
+const noScript = "?no-script"
 
 func (b *tab) listen(ev any) {
 	b.mu.Lock()

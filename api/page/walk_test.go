@@ -65,6 +65,57 @@ func TestAsAPersonWould(t *testing.T) {
 	b.quiet()
 }
 
+// TestDrawnArea draws a triangle with the mouse over the Andes.
+func TestDrawnArea(t *testing.T) {
+	h := newHost(t)
+	b := newTab(t, h, 1280, 800, false, "#view=-70,-30,4")
+	b.run(chromedp.Click("#draw"), chromedp.MouseClickXY(380, 350), chromedp.MouseClickXY(480, 350))
+	if !eval[bool](b, `document.querySelector("#finish").hidden`) {
+		t.Error("two corners can be finished")
+	}
+	b.run(chromedp.MouseClickXY(430, 500), chromedp.Click("#finish"))
+	b.heading("Area")
+	if got := textOf(b, "#panel"); !strings.Contains(got, "South America (") || !strings.Contains(got, "km²") {
+		t.Errorf("the answer is %.300q", got)
+	}
+	link := eval[string](b, "location.hash")
+	b.run(chromedp.Navigate("about:blank"), chromedp.Navigate(b.url+"/"+link))
+	b.heading("Area")
+	b.quiet()
+}
+
+// TestPanAndZoom drags the map and turns the wheel: the link follows.
+func TestPanAndZoom(t *testing.T) {
+	h := newHost(t)
+	b := newTab(t, h, 1280, 800, false, "#view=0,0,2")
+	b.run(chromedp.Evaluate(`(() => {
+		const c = document.querySelector("#globe"), at = (type, x, y) => c.dispatchEvent(new PointerEvent(type, {pointerId: 1, clientX: x, clientY: y, button: 0, bubbles: true}));
+		c.setPointerCapture = () => {};
+		at("pointerdown", 400, 400); at("pointermove", 300, 400); at("pointerup", 300, 400);
+	})()`, nil))
+	b.wait("the drag is in the link", `/view=([\d.]+),0\.00,2/.test(location.hash) && Number(location.hash.match(/view=([\d.]+)/)[1]) > 5`)
+	if textOf(b, "#panel h2") != "In what tectonic setting does a place lie?" {
+		t.Error("a drag asked for an answer")
+	}
+	b.run(chromedp.Evaluate(`document.querySelector("#globe").dispatchEvent(new WheelEvent("wheel", {deltaY: -400, clientX: 420, clientY: 430, cancelable: true}))`, nil))
+	b.wait("the zoom is in the link", `Number(location.hash.match(/view=[^,]+,[^,]+,([\d.]+)/)[1]) > 3`)
+	b.quiet()
+}
+
+// TestWithoutJavaScript: the page says what it is and where to go.
+func TestWithoutJavaScript(t *testing.T) {
+	h := newHost(t)
+	b := newTab(t, h, 800, 600, false, noScript)
+	var text string
+	b.run(chromedp.Text("#panel", &text, chromedp.ByQuery))
+	for _, want := range []string{"In what tectonic setting", "needs JavaScript", "/v1/point?lon=", "API reference"} {
+		if !strings.Contains(text, want) {
+			t.Errorf("without JavaScript the page lacks %q; it says %q", want, text)
+		}
+	}
+	b.shot("no-script")
+}
+
 // ask types coordinates and sends them.
 func ask(b *tab, text string) {
 	b.t.Helper()
