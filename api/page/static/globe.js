@@ -30,7 +30,7 @@ export class Globe {
     this.canvas.height = Math.round(this.h * dpr);
     this.dpr = dpr;
     this.k = Math.min(Math.max(Math.min(this.w, this.h) / 900, 0.8), 2);
-    this.redraw();
+    this.draw(); // at once: the new size has emptied the canvas
   }
 
   // projection builds the projection of the view.
