@@ -4,6 +4,7 @@ import (
 	_ "embed"
 	"net/http"
 	"net/url"
+	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -87,10 +88,10 @@ type modelsInfo struct {
 	Commit  string      `json:"commit"`
 }
 
-func (s *Server) infoOf(m *setting.Model) modelInfo {
+func infoOf(m *setting.Model, active bool) modelInfo {
 	info := modelInfo{
 		modelRef: refOf(m), Title: m.Title(), Licence: m.Licence(), Citations: append([]string{}, m.Citations()...),
-		Active: m == s.cfg.Models.Active(), DefaultMotion: m.DefaultMotion(),
+		Active: active, DefaultMotion: m.DefaultMotion(),
 		Plates: len(m.Plates()), Boundaries: len(m.Network().Boundaries()), Junctions: len(m.Junctions()),
 		Slabs: len(m.Slabs()), Zones: len(m.Zones()), Hotspots: len(m.Hotspots()),
 	}
@@ -108,8 +109,8 @@ func (s *Server) models(c echo.Context) error {
 		return err
 	}
 	out := modelsInfo{Version: s.cfg.Version, Commit: s.cfg.Commit}
-	for _, m := range s.cfg.Models.All() {
-		out.Models = append(out.Models, s.infoOf(m))
+	for i, m := range s.cfg.Models.All() {
+		out.Models = append(out.Models, infoOf(m, i == 0))
 	}
 	return sendJSON(c, out)
 }
@@ -129,7 +130,7 @@ func (s *Server) model(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	return sendJSON(c, s.infoOf(m))
+	return sendJSON(c, infoOf(m, m == s.cfg.Models.Active()))
 }
 
 // health says that the process runs.
@@ -137,12 +138,23 @@ func (s *Server) health(c echo.Context) error {
 	return sendJSON(c, map[string]string{"status": "ok"})
 }
 
-// ready says that requests are answered, and from which model.
+type readiness struct {
+	Status string   `json:"status"`
+	Model  modelRef `json:"model"`
+	Since  string   `json:"degraded_since,omitempty"`
+	Reason string   `json:"reason,omitempty"`
+}
+
+// ready says that requests are answered, and from which model; also where newer
+// models cannot be had.
 func (s *Server) ready(c echo.Context) error {
-	return sendJSON(c, struct {
-		Status string   `json:"status"`
-		Model  modelRef `json:"model"`
-	}{"ready", refOf(s.cfg.Models.Active())})
+	out := readiness{Status: "ready", Model: refOf(s.cfg.Models.Active())}
+	if s.cfg.Source != nil {
+		if since, reason := s.cfg.Source.Degraded(); !since.IsZero() {
+			out.Status, out.Since, out.Reason = "degraded", since.UTC().Format(time.RFC3339Nano), reason
+		}
+	}
+	return sendJSON(c, out)
 }
 
 //go:embed openapi.json

@@ -20,7 +20,7 @@ type metrics struct {
 }
 
 // newMetrics registers the metrics.
-func newMetrics(reg *prometheus.Registry, models Models, version, commit string) *metrics {
+func newMetrics(cfg Config) *metrics {
 	m := &metrics{
 		requests: prometheus.NewCounterVec(prometheus.CounterOpts{
 			Name: "nearmargin_http_requests_total", Help: "Requests answered, by route, method and status (aborted: the answer was broken off).",
@@ -39,9 +39,34 @@ func newMetrics(reg *prometheus.Registry, models Models, version, commit string)
 	info := prometheus.NewGaugeVec(prometheus.GaugeOpts{
 		Name: "nearmargin_build_info", Help: "Always 1; the labels say what runs and the model it started with.",
 	}, []string{"version", "commit", "model"})
-	info.WithLabelValues(version, commit, models.Active().Ref()).Set(1)
-	reg.MustRegister(m.requests, m.seconds, m.rows, m.faults, info)
+	info.WithLabelValues(cfg.Version, cfg.Commit, cfg.Models.Active().Ref()).Set(1)
+	cfg.Registry.MustRegister(m.requests, m.seconds, m.rows, m.faults, info, activeModel{cfg.Models})
+	if cfg.Source != nil {
+		cfg.Registry.MustRegister(prometheus.NewGaugeFunc(prometheus.GaugeOpts{
+			Name: "nearmargin_degraded_since_timestamp_seconds", Help: "Since when newer models cannot be had, in seconds since 1970; 0 where they can.",
+		}, func() float64 {
+			since, _ := cfg.Source.Degraded()
+			if since.IsZero() {
+				return 0
+			}
+			return float64(since.UnixMilli()) / 1000
+		}))
+	}
 	return m
+}
+
+// activeModel tells which model is active at the time of asking.
+type activeModel struct{ models Models }
+
+var activeModelDesc = prometheus.NewDesc("nearmargin_active_model_info", "Always 1; the labels say which model is active.", []string{"model", "sha256"}, nil)
+
+// Describe implements prometheus.Collector.
+func (a activeModel) Describe(c chan<- *prometheus.Desc) { c <- activeModelDesc }
+
+// Collect implements prometheus.Collector.
+func (a activeModel) Collect(c chan<- prometheus.Metric) {
+	m := a.models.Active()
+	c <- prometheus.MustNewConstMetric(activeModelDesc, prometheus.GaugeValue, 1, m.Ref(), m.SHA256())
 }
 
 var knownMethods = map[string]bool{

@@ -25,9 +25,17 @@ type Models interface {
 	All() []*setting.Model
 }
 
-// Config is what a server is built from; every field is needed.
+// Source says how the place fares that models come from.
+type Source interface {
+	// Degraded says since when, and why, newer models cannot be had; the time is zero
+	// where they can. The reason is told to anybody who asks.
+	Degraded() (since time.Time, reason string)
+}
+
+// Config is what a server is built from; every field but Source is needed.
 type Config struct {
 	Models   Models
+	Source   Source // nil where models come from no place that can fail
 	Log      *slog.Logger
 	Registry *prometheus.Registry
 	Version  string // of the program
@@ -48,7 +56,7 @@ func New(cfg Config) *Server {
 	if err != nil {
 		panic(err) // a file of the program's own
 	}
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg.Registry, cfg.Models, cfg.Version, cfg.Commit), echo: echo.New(), site: site}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), echo: echo.New(), site: site}
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = echo.ExtractIPDirect()

@@ -18,8 +18,11 @@ func TestDomainImports(t *testing.T) {
 		{"nearmargin/setting/boundary", []string{"nearmargin/setting/motion", "nearmargin/setting", "encoding/json"}},
 		{"nearmargin/setting/motion", []string{"nearmargin/setting/boundary", "nearmargin/setting", "encoding/json"}},
 		{"nearmargin/setting/bundle", []string{"net/http", "database/sql", "github.com/labstack/echo/v4", "nearmargin/api", "nearmargin/setting/builtin"}},
-		{"nearmargin/setting/bundle/published", []string{"net/http", "database/sql", "nearmargin/api", "nearmargin/fetch", "nearmargin/setting/builtin"}},
-		{"nearmargin/fetch", []string{"nearmargin/setting"}},
+		{"nearmargin/setting/bundle/published", []string{"net/http", "database/sql", "nearmargin/api", "nearmargin/cmd/internal/fetch", "nearmargin/setting/builtin"}},
+		{"nearmargin/cmd/internal/fetch", []string{"nearmargin/setting"}},
+		{"nearmargin/setting/revision", []string{"net/http", "database/sql", "encoding/json", "nearmargin/setting/bundle", "nearmargin/api"}},
+		{"nearmargin/store", []string{"github.com/labstack/echo/v4", "nearmargin/api", "nearmargin/setting/builtin", "nearmargin/store/storetest"}},
+		{"nearmargin/cmd/nearmargin", []string{"nearmargin/store/storetest", "github.com/testcontainers/testcontainers-go"}},
 		{"nearmargin/api", []string{"nearmargin/setting/builtin", "nearmargin/setting/bundle"}},
 	} {
 		out, err := exec.Command("go", "list", "-deps", c.pkg).Output()

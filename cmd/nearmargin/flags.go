@@ -6,6 +6,7 @@ import (
 	"io"
 	"strconv"
 	"strings"
+	"time"
 )
 
 // flags holds a command's flags and arguments.
@@ -23,6 +24,9 @@ type flags struct {
 	asJSON                        bool
 	depthUnit, depthDatum         string
 	elevationColumn               string
+	database                      string
+	databaseWait, databasePoll    time.Duration
+	editions                      int
 	depthKm, uncertaintyKm, ageMa optional
 	build                         buildOptions
 }
@@ -60,6 +64,19 @@ func newFlags(c *command, env func(string) string) *flags {
 
 func (f *flags) modelFlag() {
 	f.set.StringVar(&f.model, "model", "builtin", "the model: builtin, or a `directory`")
+}
+
+// databaseFlag adds the flag of a database's URL; why says what for.
+func (f *flags) databaseFlag(why string) {
+	f.set.StringVar(&f.database, "database", "", why+": a PostgreSQL `URL` or key-value string")
+}
+
+// needDatabase checks that a database was named.
+func (f *flags) needDatabase() error {
+	if f.database == "" {
+		return usageError("--database is missing; name one, such as postgres://user@host/name, or set NEARMARGIN_DATABASE")
+	}
+	return nil
 }
 
 func (f *flags) motionFlags() {

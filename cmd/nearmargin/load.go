@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"os"
+	"sync/atomic"
 
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
@@ -31,16 +32,17 @@ func load(name string) (*bundle.Bundle, error) {
 	return b, nil
 }
 
-// one is the api.Models of a program that serves a single model.
-type one struct{ m *setting.Model }
+// single is the api.Models of a program that serves one model, which may be changed
+// for another in one step.
+type single struct{ m atomic.Pointer[setting.Model] }
 
-func (o one) Active() *setting.Model { return o.m }
+func (s *single) Active() *setting.Model { return s.m.Load() }
 
-func (o one) Find(ref string) (*setting.Model, bool) {
-	if ref == o.m.ID() || ref == o.m.Ref() {
-		return o.m, true
+func (s *single) Find(ref string) (*setting.Model, bool) {
+	if m := s.m.Load(); ref == m.ID() || ref == m.Ref() {
+		return m, true
 	}
 	return nil, false
 }
 
-func (o one) All() []*setting.Model { return []*setting.Model{o.m} }
+func (s *single) All() []*setting.Model { return []*setting.Model{s.m.Load()} }

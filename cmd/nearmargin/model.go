@@ -6,10 +6,13 @@ import (
 	"strings"
 
 	"nearmargin/setting"
+	"nearmargin/setting/bundle"
+	"nearmargin/store"
 )
 
 func exportFlags(f *flags) {
 	f.set.StringVar(&f.dir, "dir", "", "`directory` to write; it must be empty or absent")
+	f.databaseFlag("where NAME is ID@EDITION, or ID for its active edition, in a database")
 }
 
 // modelCheck checks a model and names the place of every fault.
@@ -56,14 +59,23 @@ func modelCheck(p *program, _ context.Context, f *flags) error {
 }
 
 // modelExport writes a model's canonical files.
-func modelExport(p *program, _ context.Context, f *flags) error {
+func modelExport(p *program, ctx context.Context, f *flags) error {
 	if err := f.wantArgs(1, 1); err != nil {
 		return err
 	}
 	if f.dir == "" {
 		return usageError("--dir is missing; name the directory to write")
 	}
-	b, err := load(f.args[0])
+	var b *bundle.Bundle
+	var err error
+	if f.database == "" {
+		b, err = load(f.args[0])
+	} else {
+		err = withStore(ctx, f, func(s *store.Store) (err error) {
+			b, err = s.Load(ctx, f.args[0])
+			return err
+		})
+	}
 	if err != nil {
 		return err
 	}

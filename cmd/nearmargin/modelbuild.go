@@ -9,7 +9,7 @@ import (
 
 	"golang.org/x/term"
 
-	"nearmargin/fetch"
+	"nearmargin/cmd/internal/fetch"
 	"nearmargin/setting/bundle"
 	"nearmargin/setting/bundle/published"
 )

@@ -81,15 +81,15 @@ func TestReadmeCommands(t *testing.T) {
 	}
 }
 
-// startServer serves the built-in model on a free port until the test ends.
-func startServer(t *testing.T) (address string) {
+// startServer serves the built-in model, or what the flags say, on a free port until the test ends.
+func startServer(t *testing.T, flags ...string) (address string) {
 	t.Helper()
 	ctx, cancel := context.WithCancel(context.Background())
 	logs, w := io.Pipe()
 	done := make(chan int, 1)
 	go func() {
 		p := &program{env: func(string) string { return "" }, stdin: strings.NewReader(""), stdout: io.Discard, stderr: w}
-		done <- p.run(ctx, []string{"serve", "--listen", "127.0.0.1:0"})
+		done <- p.run(ctx, append([]string{"serve", "--listen", "127.0.0.1:0"}, flags...))
 		w.Close()
 	}()
 	found := make(chan string, 1)

@@ -44,6 +44,11 @@ var commands = []command{
 	{"model check", "DIR|builtin", "check a model and name the place of every fault", modelCheck, nil},
 	{"model export", "NAME", "write a model as a directory", modelExport, exportFlags},
 	{"model build", "", "build a model directory from published data sets", modelBuild, buildFlags},
+	{"model import", "DIR|builtin", "write a model into a database as a new edition", modelImport, importFlags},
+	{"model list", "", "list the editions in a database", modelList, listFlags},
+	{"model activate", "ID@EDITION", "make an edition the active one", modelActivate, activateFlags},
+	{"model diff", "A B", "tell what changed from one model to another, and by how much", modelDiff, diffFlags},
+	{"migrate", "", "bring a database's schema to the newest version", migrate, migrateFlags},
 	{"model rules", "", "print the rule table", modelRules, nil},
 	{"version", "", "print version, commit and model edition", version, nil},
 }

@@ -6,17 +6,26 @@ import (
 	"log/slog"
 	"net"
 	"net/http"
+	"os"
+	"os/signal"
+	"sync"
+	"syscall"
 	"time"
 
 	"github.com/prometheus/client_golang/prometheus"
 	"github.com/prometheus/client_golang/prometheus/collectors"
 
 	"nearmargin/api"
+	"nearmargin/store"
 )
 
 func serveFlags(f *flags) {
 	f.modelFlag()
 	f.set.StringVar(&f.listen, "listen", "127.0.0.1:8080", "`address` to listen on")
+	f.databaseFlag("serve the active edition of a database instead of --model, and follow it")
+	f.set.DurationVar(&f.databaseWait, "database-wait", 0, "how `long` to wait at the start for a database that does not answer")
+	f.set.DurationVar(&f.databasePoll, "database-poll", store.DefaultPoll, "how `often` to look for another active edition besides being told")
+	f.set.IntVar(&f.editions, "editions", store.DefaultKeep, "how `many` of the editions that were activated last stay loaded")
 }
 
 const (
@@ -32,17 +41,17 @@ func serve(p *program, ctx context.Context, f *flags) error {
 		return err
 	}
 	log := slog.New(slog.NewJSONHandler(p.stderr, nil))
-	b, err := load(f.model)
+	hup := make(chan os.Signal, 1)
+	signal.Notify(hup, syscall.SIGHUP)
+	defer signal.Stop(hup)
+	models, source, follow, err := open(ctx, f, log, hup)
 	if err != nil {
 		return err
-	}
-	for _, x := range b.Model.Network().Faults() {
-		log.Warn("fault of the boundary network", "lon", x.At.Lon, "lat", x.At.Lat, "code", x.Code, "detail", x.Detail)
 	}
 	reg := prometheus.NewRegistry()
 	reg.MustRegister(collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	srv := &http.Server{
-		Handler:           api.New(api.Config{Models: one{b.Model}, Log: log, Registry: reg, Version: release, Commit: commit()}),
+		Handler:           api.New(api.Config{Models: models, Source: source, Log: log, Registry: reg, Version: release, Commit: commit()}),
 		ReadHeaderTimeout: headerTimeout,
 		IdleTimeout:       idleTimeout,
 		MaxHeaderBytes:    maxHeaderBytes,
@@ -52,7 +61,12 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	if err != nil {
 		return err
 	}
-	log.Info("listening", "address", l.Addr().String(), "version", release, "commit", commit(), "model", b.Model.Ref(), "sha256", b.Model.SHA256())
+	log.Info("listening", "address", l.Addr().String(), "version", release, "commit", commit(), "model", models.Active().Ref(), "sha256", models.Active().SHA256())
+	fctx, stop := context.WithCancel(ctx)
+	var following sync.WaitGroup
+	following.Go(func() { follow(fctx) })
+	defer following.Wait()
+	defer stop()
 	done := make(chan error, 1)
 	go func() { done <- srv.Serve(l) }()
 	select {

@@ -1,0 +1,93 @@
+package storetest
+
+import (
+	"io"
+	"net"
+	"sync"
+)
+
+// proxy passes connections on to a server and can cut them.
+type proxy struct {
+	target   string
+	listener net.Listener
+	mu       sync.Mutex
+	down     bool
+	open     map[net.Conn]bool
+}
+
+func newProxy(target string) (*proxy, error) {
+	if _, _, err := net.SplitHostPort(target); err != nil {
+		target = net.JoinHostPort(target, "5432")
+	}
+	l, err := net.Listen("tcp", "127.0.0.1:0")
+	if err != nil {
+		return nil, err
+	}
+	p := &proxy{target: target, listener: l, open: map[net.Conn]bool{}}
+	go p.serve()
+	return p, nil
+}
+
+func (p *proxy) address() string { return p.listener.Addr().String() }
+
+func (p *proxy) serve() {
+	for {
+		c, err := p.listener.Accept()
+		if err != nil {
+			return
+		}
+		go p.pass(c)
+	}
+}
+
+// keep notes a connection, or closes it where the proxy is cut.
+func (p *proxy) keep(c net.Conn) bool {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	if p.down {
+		c.Close()
+		return false
+	}
+	p.open[c] = true
+	return true
+}
+
+func (p *proxy) pass(c net.Conn) {
+	if !p.keep(c) {
+		return
+	}
+	s, err := net.Dial("tcp", p.target)
+	if err != nil || !p.keep(s) {
+		c.Close()
+		return
+	}
+	done := make(chan struct{}, 2)
+	for _, x := range [...][2]net.Conn{{c, s}, {s, c}} {
+		go func() {
+			_, _ = io.Copy(x[0], x[1]) // a cut is what the test wants
+			done <- struct{}{}
+		}()
+	}
+	<-done
+	c.Close()
+	s.Close()
+	p.mu.Lock()
+	delete(p.open, c)
+	delete(p.open, s)
+	p.mu.Unlock()
+}
+
+func (p *proxy) cut() {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	p.down = true
+	for c := range p.open {
+		c.Close()
+	}
+}
+
+func (p *proxy) mend() {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	p.down = false
+}
