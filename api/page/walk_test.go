@@ -331,6 +331,27 @@ func TestServiceGoesAway(t *testing.T) {
 	b.quiet("ERR_CONNECTION_REFUSED", "ERR_CONNECTION_RESET", "ERR_EMPTY_RESPONSE", "ERR_CONNECTION_CLOSED")
 }
 
+// TestEditionChanges: when answers come from another edition, the map follows.
+func TestEditionChanges(t *testing.T) {
+	h := newHost(t)
+	b := newTab(t, h, 1280, 800, false, "#site=-71.6,-33.5")
+	b.heading("Forearc")
+	b.run(chromedp.Evaluate(`(() => {
+		const real = window.fetch;
+		window.asked = [];
+		window.fetch = async (path, o) => {
+			window.asked.push(String(path));
+			const r = await real(path, o);
+			if (!String(path).startsWith("/v1/point")) return r;
+			return new Response((await r.text()).replace(/"sha256":"[0-9a-f]+"/, '"sha256":"' + "0".repeat(64) + '"'), {status: r.status, headers: r.headers});
+		};
+	})()`, nil))
+	ask(b, "27.7 N 85.3 E")
+	b.heading("Collision zone")
+	b.wait("the boundaries are asked for again", `window.asked.includes("/v1/boundaries")`)
+	b.quiet()
+}
+
 // TestAsksNoOtherHost records every request of a whole visit.
 func TestAsksNoOtherHost(t *testing.T) {
 	h := newHost(t)

@@ -73,6 +73,7 @@ function askPoint() {
     document.title = `${labelName(a.setting.label)}, ${words(a.site.lon, a.site.lat, 2)} · nearmargin`;
     say(`${labelName(a.setting.label)} on the ${a.plate.name} plate, confidence ${a.setting.confidence}`);
     globe.redraw();
+    follow(a);
   });
 }
 
@@ -334,6 +335,31 @@ const landOf = async (file) => {
   return topojson.feature(t, t.objects.land);
 };
 
+// loadModel fetches what the map shows of the active model.
+let shownModel = "";
+async function loadModel() {
+  const [lines, plates, models] = await Promise.all([askJSON("/v1/boundaries"), askJSON("/v1/plates"), askJSON("/v1/models")]);
+  const names = new Map(plates.plates.map((p) => [p.code, p.name]));
+  setPlateNames(names);
+  shownModel = plates.model.sha256;
+  globe.data.boundaries = lines.features;
+  globe.data.plates = platePolygons(lines, names);
+  const active = models.models.find((m) => m.active);
+  byId("motion").replaceChildren(el("option", { value: "" }, active.default_motion), ...active.motion_models.filter((m) => m.name !== active.default_motion).map((m) => el("option", { value: m.name }, m.name)));
+  byId("motion").value = state.motion;
+  if (globe.shown.answer && state.site) showAnswer(panel, globe.shown.answer, pointQuery(), pointQuery()); // with the plates' names
+}
+
+// follow fetches the model again where an answer comes from another edition than the
+// map shows.
+function follow(a) {
+  if (!shownModel || a.model.sha256 === shownModel) return;
+  shownModel = "";
+  for (const name of Object.keys(layerPaths)) globe.data[name] = null;
+  load("model", loadModel);
+  for (const name of state.layers) needLayer(name);
+}
+
 // show brings the page to a state, as at the start and when going back.
 function show(s) {
   state = s;
@@ -355,17 +381,7 @@ async function start() {
   addEventListener("hashchange", () => { if (location.hash !== write(state)) show(read(location.hash)); });
   await Promise.all([
     load("land", async () => { globe.data.land = await landOf("land-110m.json"); }),
-    load("model", async () => {
-      const [lines, plates, models] = await Promise.all([askJSON("/v1/boundaries"), askJSON("/v1/plates"), askJSON("/v1/models")]);
-      const names = new Map(plates.plates.map((p) => [p.code, p.name]));
-      setPlateNames(names);
-      globe.data.boundaries = lines.features;
-      globe.data.plates = platePolygons(lines, names);
-      const active = models.models.find((m) => m.active);
-      byId("motion").replaceChildren(el("option", { value: "" }, active.default_motion), ...active.motion_models.filter((m) => m.name !== active.default_motion).map((m) => el("option", { value: m.name }, m.name)));
-      byId("motion").value = state.motion;
-      if (globe.shown.answer && state.site) showAnswer(panel, globe.shown.answer, pointQuery(), pointQuery()); // with the plates' names
-    }),
+    load("model", loadModel),
   ]);
   document.documentElement.dataset.ready = "yes";
   load("fine land", async () => { globe.data.fine = await landOf("land-50m.json"); });
