@@ -6,6 +6,7 @@ import (
 	"io"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 )
@@ -149,5 +150,25 @@ func TestMapAndSummaryRefuse(t *testing.T) {
 				t.Errorf("status %d, want %d; stderr %q, want %q in it", got.status, c.status, got.stderr, c.stderr)
 			}
 		})
+	}
+}
+
+// TestSummaryBins: a bin holds its lower end and not its upper.
+func TestSummaryBins(t *testing.T) {
+	in := "lon,lat,ts_setting,ts_distance_km\n"
+	for _, d := range []string{"0", "9.99", "10", "24.9", "1599.99", "1600", "9000", ""} {
+		in += "1,2,plate_interior," + d + "\n"
+	}
+	got := invoke(t, nil, in, "summary", "-", "--json")
+	var s fileSummary
+	if err := json.Unmarshal([]byte(got.stdout), &s); err != nil {
+		t.Fatalf("%v: %s", err, got.stderr)
+	}
+	var counts []int
+	for _, b := range s.Distances {
+		counts = append(counts, b.Rows)
+	}
+	if want := []int{2, 2, 0, 0, 0, 0, 0, 1, 2}; !slices.Equal(counts, want) {
+		t.Errorf("bins %v, want %v", counts, want)
 	}
 }
