@@ -1,6 +1,8 @@
 package api
 
 import (
+	"sync"
+
 	"github.com/labstack/echo/v4"
 
 	"nearmargin/api/wire"
@@ -24,9 +26,20 @@ func (s *Server) point(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	var a setting.Answer
-	if err := l.At(site, &a); err != nil {
+	room := answerRooms.Get().(*answerRoom)
+	defer answerRooms.Put(room)
+	if err := l.At(site, &room.answer); err != nil {
 		return err
 	}
-	return sendBytes(c, echo.MIMEApplicationJSON, append(wire.AppendAnswer(make([]byte, 0, 4096), &a), '\n'))
+	room.body = append(wire.AppendAnswer(room.body[:0], &room.answer), '\n')
+	return sendBytes(c, echo.MIMEApplicationJSON, room.body)
 }
+
+
+// answerRoom is what one answer and its text take, kept for the next request.
+type answerRoom struct {
+	answer setting.Answer
+	body   []byte
+}
+
+var answerRooms = sync.Pool{New: func() any { return new(answerRoom) }}

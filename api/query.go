@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"math"
 	"net/url"
-	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -66,7 +65,41 @@ func (q *query) err() error {
 // text returns a parameter, "" where it is absent.
 func (q *query) text(name string) string { return q.values.Get(name) }
 
-var decimalForm = regexp.MustCompile(`^[+-]?([0-9]+(\.[0-9]*)?|\.[0-9]+)([eE][+-]?[0-9]{1,3})?$`)
+// isDecimal reports whether a text is a number in decimal notation: a sign or
+// none, digits with a point or without, at least one of them, and an exponent of
+// at most three digits or none.
+func isDecimal(s string) bool {
+	digits := func(most int) int {
+		n := 0
+		for n < len(s) && n < most && s[n] >= '0' && s[n] <= '9' {
+			n++
+		}
+		s = s[n:]
+		return n
+	}
+	skip := func(set string) bool {
+		if s == "" || strings.IndexByte(set, s[0]) < 0 {
+			return false
+		}
+		s = s[1:]
+		return true
+	}
+	skip("+-")
+	n := digits(len(s))
+	if skip(".") {
+		n += digits(len(s))
+	}
+	if n == 0 {
+		return false
+	}
+	if skip("eE") {
+		skip("+-")
+		if digits(3) == 0 {
+			return false
+		}
+	}
+	return s == ""
+}
 
 // number returns a parameter's number, NaN where it is absent.
 func (q *query) number(name string, required bool) float64 {
@@ -92,7 +125,7 @@ func parseDecimal(s string) (float64, error) {
 	if len(shown) > most {
 		shown = shown[:most] + "..."
 	}
-	if !decimalForm.MatchString(s) {
+	if !isDecimal(s) {
 		if strings.Contains(s, ",") {
 			return 0, fmt.Errorf("%q is not a number; write a decimal point", shown)
 		}

@@ -35,7 +35,7 @@ func sendBytes(c echo.Context, contentType string, body []byte) error {
 		etag := `W/"` + hex.EncodeToString(sum[:12]) + `"`
 		h.Set("ETag", etag)
 		h.Set(echo.HeaderCacheControl, cacheActive)
-		if strings.Contains(r.URL.Query().Get("model"), "@") {
+		if strings.Contains(r.URL.RawQuery, "model=") && strings.Contains(r.URL.Query().Get("model"), "@") {
 			h.Set(echo.HeaderCacheControl, cacheEdition)
 		}
 		if page.Matches(r.Header.Get("If-None-Match"), etag) {

@@ -33,6 +33,7 @@ type Answer struct {
 	Model        *Model
 	MotionModel  string // the motion model asked for
 	plateAcross  string
+	sights       boundary.Sights
 	scratch      [2]evidence // what the rules compare, for the site's plate and the one across
 }
 

@@ -55,7 +55,9 @@ type Cause struct {
 func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	e := &a.scratch[0]
 	l.gather(p, a.Plate.Code, a, e)
+	e.watch = watch{on: true, siteKm: a.Site.sigmaKm()}
 	v, rule := e.decide()
+	e.watch.on = false
 	a.Label, a.Family = v.label, v.label.family(e.zone)
 	l.control(a, e, v)
 	reason := e.reason(v, rule)
@@ -105,15 +107,24 @@ func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
 	switch {
 	case v.by != noSource:
 		a.IsControlled = true
-		a.Controlling = l.boundaryAnswer(a, e.hit[v.by])
+		a.Controlling = l.controlling(a, &e.hit[v.by])
 	case v.slab >= 0 && !math.IsInf(e.slabs[v.slab].trenchKm, 1):
 		a.IsControlled = true
-		a.Controlling = l.boundaryAnswer(a, e.slabs[v.slab].trench)
+		a.Controlling = l.controlling(a, &e.slabs[v.slab].trench)
 	}
 }
 
+// controlling is boundaryAnswer for a hit that often is the nearest.
+func (l *Lookup) controlling(a *Answer, h *boundary.Hit) BoundaryAnswer {
+	if h.Boundary == a.Nearest.Boundary && h.NearestVec == a.Nearest.NearestVec && h.Along == a.Nearest.Along {
+		return a.Nearest
+	}
+	return l.boundaryAnswer(a, *h)
+}
+
 // vary moves every distance, every slab's depth, the site and every limit by one
-// σ either way, one at a time, and notes each other label that is met.
+// σ either way, one at a time, and notes each other label that is met. What the
+// watch has not marked leaves the verdict as it is and is not tried.
 func (e *evidence) vary(a *Answer) {
 	try := func(c Cause) {
 		v, rule := e.decide()
@@ -124,17 +135,25 @@ func (e *evidence) vary(a *Answer) {
 		}
 	}
 	for s := range sources {
+		if !e.watch.km[s] {
+			continue
+		}
 		e.varyOne(&e.km[s], e.sigma[s], Cause{Kind: CauseDistance}, e.nameOf(s), try)
 		e.varyOne(&e.km[s], a.Site.sigmaKm(), Cause{Kind: CauseSite}, e.nameOf(s), try)
 	}
 	for i := range e.slabs[:e.nSlabs] {
 		s := &e.slabs[i]
-		e.varyOne(&s.z, s.sigma, Cause{Kind: CauseDepth}, s.slab.Name, try)
-		if !math.IsInf(s.trenchKm, 1) {
+		if e.watch.z[i] {
+			e.varyOne(&s.z, s.sigma, Cause{Kind: CauseDepth}, s.slab.Name, try)
+		}
+		if e.watch.trench[i] && !math.IsInf(s.trenchKm, 1) {
 			e.varyOne(&s.trenchKm, s.trench.Boundary.SigmaKm(), Cause{Kind: CauseDistance}, s.trench.Boundary.Name(), try)
 		}
 	}
 	for i := range Limits {
+		if !e.watch.limit[i] {
+			continue
+		}
 		e.varyOne(&e.limit[i], Limits[i].Sigma, Cause{Kind: CauseLimit}, Limits[i].Name, try)
 	}
 }
@@ -167,7 +186,7 @@ func (e *evidence) pastEnds(a *Answer) {
 		if s.beyond != slab.PastEnd || s.slab.Kind != slab.Subduction || s.outKm > e.limit[limitPastRim] {
 			continue
 		}
-		if label, _, limit := e.slabLabel(s); label != NoLabel {
+		if label, _, limit := e.slabLabel(i); label != NoLabel {
 			a.alternative(label, Cause{Kind: CauseSlabEnd, By: s.outKm, Name: s.slab.Name, Rule: ruleSlabDepth, Limit: limit}, e.zone)
 		}
 	}

@@ -47,7 +47,7 @@ type evidence struct {
 	hit   [numSources]boundary.Hit
 
 	flankKmPerMyr float64 // half spreading rate; NaN where unknown
-	flankCos      float64 // distance along the spreading direction = km × flankCos
+	flankCos      float64 // distance along the spreading direction = km × flankCos; more than 1 past an offset
 	onLand        bool    // the site lies on land near a spreading ridge
 	trenchSquare  float64 // sine of the angle between the trench and the line of sight: 1 square to it
 	trenchHasSlab bool    // a slab surface goes down from the nearest trench
@@ -57,6 +57,7 @@ type evidence struct {
 
 	slabs  [maxSlabs]slabEvidence
 	nSlabs int
+	watch  watch
 }
 
 // side says on which side of a convergent boundary the plate is.
@@ -70,15 +71,24 @@ const (
 
 // gather collects the evidence for a plate at a place.
 func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) {
-	e.limit = limitValues()
+	e.limit = baseLimits
+	e.watch.on = false
 	e.zone = NoKind
 	if a.Zone != nil {
 		e.zone = a.Zone.Kind
 	}
 	e.nearHotspot = a.Hotspot != nil
+	own := a.Plate.Code == plate // and so the nearest boundary bounds it
 	for s := range sources {
 		src := &sources[s]
-		hit, ok := l.m.network.NearestOf(p, src.kind, plate, src.role, src.reachKm)
+		if own && a.Nearest.Answers(src.kind, plate, src.role) {
+			e.km[s] = math.Inf(1)
+			if a.Nearest.DistanceKm <= src.reachKm {
+				e.hit[s], e.km[s], e.sigma[s] = a.Nearest.Hit, a.Nearest.DistanceKm, a.Nearest.Boundary.SigmaKm()
+			}
+			continue
+		}
+		hit, ok := l.m.network.NearestOfWith(p, src.kind, plate, src.role, src.reachKm, &a.sights)
 		if !ok {
 			e.km[s] = math.Inf(1)
 			continue
@@ -88,7 +98,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	e.gatherTrench(l, p)
 	e.gatherFlank(l, p, plate)
 	e.gatherCollision(plate)
-	e.gatherSlabs(l, p)
+	e.gatherSlabs(l, p, &a.sights)
 }
 
 // gatherTrench works out how squarely the nearest trench is seen, and whether a
@@ -107,6 +117,10 @@ func (e *evidence) gatherTrench(l *Lookup, p boundary.Place) {
 	}
 }
 
+// squareOn is the cosine of the angle up to which a ridge counts as seen along the
+// direction of spreading.
+const squareOn = 0.97
+
 // gatherFlank works out how fast the sea floor moves away from the nearest
 // ridge, and how much of the distance to it lies along that direction.
 func (e *evidence) gatherFlank(l *Lookup, p boundary.Place, plate string) {
@@ -124,6 +138,13 @@ func (e *evidence) gatherFlank(l *Lookup, p boundary.Place, plate string) {
 	e.flankKmPerMyr = m.RateMmYr / 2
 	if !math.IsNaN(h.AzimuthDeg) {
 		e.flankCos = math.Abs(math.Cos((h.AzimuthDeg - m.AzimuthDeg) * math.Pi / 180))
+		if e.flankCos < squareOn && e.km[sourceRidge] > 0 {
+			// the nearest ridge is off to the side: the one that made this floor lies along
+			// the direction of spreading, past an offset
+			if along, ok := l.m.network.AlongTo(p, m.AzimuthDeg, boundary.SpreadingRidge, plate, 2*e.limit[limitFlank]); ok {
+				e.flankCos = along / e.km[sourceRidge]
+			}
+		}
 	}
 }
 

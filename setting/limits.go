@@ -74,6 +74,9 @@ var Limits = [numLimits]Limit{
 	{limitCollisionZone, "collision_zone", 600, 600 * fifteen, "km", "common practice: width of a broad collision belt"},
 }
 
+// baseLimits are the limits as they stand in the table.
+var baseLimits = limitValues()
+
 func limitValues() (v [numLimits]float64) {
 	for i := range Limits {
 		v[i] = Limits[i].Value

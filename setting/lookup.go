@@ -73,7 +73,7 @@ func (l *Lookup) At(s Site, a *Answer) error {
 	l.reset(s, a)
 	place := boundary.PlaceAt(lonLatOf(s))
 
-	code, hit := l.m.network.Locate(place)
+	code, hit := l.m.network.LocateWith(place, &a.sights)
 	a.Plate = l.m.plates[code]
 	a.plateAcross, _ = hit.Boundary.Opposite(code)
 	a.Nearest = l.boundaryAnswer(a, hit)
@@ -140,7 +140,7 @@ func (l *Lookup) nearby(p boundary.Place, a *Answer) {
 		if t == a.Nearest.Boundary.Type() {
 			continue
 		}
-		if h, ok := l.m.network.NearestOf(p, t, "", boundary.AnyRole, nearbyReachKm); ok {
+		if h, ok := l.m.network.NearestOfWith(p, t, "", boundary.AnyRole, nearbyReachKm, &a.sights); ok {
 			a.Nearby.add(Nearby{h.Boundary, h.DistanceKm, h.AzimuthDeg})
 		}
 	}

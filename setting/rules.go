@@ -96,10 +96,22 @@ func decideTrench(e *evidence) (verdict, bool) {
 	if e.km[sourceSubducting] < e.km[s] {
 		s = sourceSubducting
 	}
+	if e.watch.on {
+		e.watchTrench()
+	}
 	if e.km[s] <= max(e.limit[limitTrench], e.sigma[s]) {
 		return decided(Trench, s, limitTrench)
 	}
 	return undecided, false
+}
+
+// watchTrench marks all that [decideTrench] compares, where a move may count.
+func (e *evidence) watchTrench() {
+	for _, s := range [...]source{sourceOverriding, sourceSubducting} {
+		if e.km[s] <= max(e.limit[limitTrench]+Limits[limitTrench].Sigma, e.sigma[s])+e.moveKm(s)+1e-6 {
+			e.watch.km[sourceOverriding], e.watch.km[sourceSubducting], e.watch.limit[limitTrench] = true, true, true
+		}
+	}
 }
 
 // onBoundary pairs each source that rule 2 looks at with its limit and label,
@@ -121,10 +133,14 @@ func decideOnBoundary(e *evidence) (verdict, bool) {
 	if over >= 0 && e.slabs[over].beyond != slab.NotBeyond {
 		over = -1
 	}
+	if e.watch.on {
+		e.watchRatios()
+	}
 	best, bestRatio := -1, math.Inf(1)
 	for i := range onBoundary {
 		c := &onBoundary[i]
 		ratio := e.km[c.by] / e.limit[c.limit]
+		e.within(c.by, c.limit) // for the watch
 		if ratio > 1 {
 			continue
 		}
@@ -148,17 +164,42 @@ func decideOnBoundary(e *evidence) (verdict, bool) {
 		if c.by == sourceRidge {
 			v.label = BackArcSpreading
 		} else {
-			v.also, _, _ = e.slabLabel(&e.slabs[over])
+			v.also, _, _ = e.slabLabel(over)
 		}
 	}
 	return v, true
+}
+
+// watchRatios marks the distances and limits of the boundaries that
+// [decideOnBoundary] may compare with each other, where there are several.
+func (e *evidence) watchRatios() {
+	var in [len(onBoundary)]bool
+	n := 0
+	for i := range onBoundary {
+		c := &onBoundary[i]
+		if in[i] = e.km[c.by]-e.moveKm(c.by) <= e.limit[c.limit]+Limits[c.limit].Sigma+1e-6; in[i] {
+			n++
+		}
+	}
+	if n < 2 {
+		return
+	}
+	for i := range onBoundary {
+		if in[i] {
+			e.watch.km[onBoundary[i].by], e.watch.limit[onBoundary[i].limit] = true, true
+		}
+	}
 }
 
 // overSlab reports whether a boundary may decide although a slab is below: a
 // ridge where the slab is deep enough, a rift or transform within its own 1σ.
 func (e *evidence) overSlab(by source, over int) bool {
 	if by == sourceRidge {
+		e.watchDepth(over, limitSpreadingDepth, 1)
 		return e.slabs[over].z > e.limit[limitSpreadingDepth]
+	}
+	if e.watch.on && sees(e.km[by], e.sigma[by], e.moveKm(by)) {
+		e.watch.km[by] = true
 	}
 	return e.km[by] <= e.sigma[by]
 }
@@ -169,11 +210,11 @@ func decideSlab(e *evidence) (verdict, bool) {
 		return undecided, false
 	}
 	s := &e.slabs[i]
-	label, also, limit := e.slabLabel(s)
+	label, also, limit := e.slabLabel(i)
 	if label == NoLabel || label == BackArc && e.nearOwnTrench() {
 		return undecided, false
 	}
-	if also == NoLabel && e.collides(s) {
+	if also == NoLabel && e.collides(i) {
 		also = CollisionZone
 	}
 	return verdict{label: label, also: also, by: noSource, slab: i, limit: limit, neverHi: s.beyond != slab.NotBeyond}, true
@@ -182,13 +223,13 @@ func decideSlab(e *evidence) (verdict, bool) {
 // nearOwnTrench reports whether the site lies between a trench and the start of
 // its slab: a slab of another trench far below does not make that a back-arc.
 func (e *evidence) nearOwnTrench() bool {
-	return e.beforeSlab() && e.trenchSquare >= minTrenchSquare && e.km[sourceOverriding] < e.limit[limitForearc]
+	return e.beforeSlab() && e.trenchSquare >= minTrenchSquare && e.closer(sourceOverriding, limitForearc)
 }
 
 // collides reports whether a slab goes down from continental convergence near the
 // site: it is as well a collision zone.
-func (e *evidence) collides(s *slabEvidence) bool {
-	return s.trenchKm <= e.limit[limitCollisionUpper] && s.trench.Boundary.Type() == boundary.ContinentalConvergent
+func (e *evidence) collides(i int) bool {
+	return e.trenchWithin(i, limitCollisionUpper) && e.slabs[i].trench.Boundary.Type() == boundary.ContinentalConvergent
 }
 
 // minTrenchSquare is the sine of the smallest angle between a trench and the line
@@ -204,7 +245,7 @@ func decideTrenchDistance(e *evidence) (verdict, bool) {
 		limit LimitID
 		label Label
 	}{{limitForearc, Forearc}, {limitArc, VolcanicArc}, {limitBackArc, BackArc}} {
-		if e.km[sourceOverriding] < e.limit[band.limit] {
+		if e.closer(sourceOverriding, band.limit) {
 			v, _ := decided(band.label, sourceOverriding, band.limit)
 			v.neverHi = e.trenchHasSlab && !e.beforeSlab() // off the end of the slab that is known
 			return v, true
@@ -228,21 +269,34 @@ func (e *evidence) beforeSlab() bool {
 }
 
 func decideOuterRise(e *evidence) (verdict, bool) {
-	if e.km[sourceSubducting] <= e.limit[limitOuterRise] {
+	if e.within(sourceSubducting, limitOuterRise) {
 		return decided(OuterRise, sourceSubducting, limitOuterRise)
 	}
 	return undecided, false
 }
 
 func decideRidgeFlank(e *evidence) (verdict, bool) {
-	if e.km[sourceRidge] <= e.limit[limitFlank] && e.flankAge() < e.limit[limitFlankAge] { // false for NaN
+	if e.within(sourceRidge, limitFlank) && e.youngFlank() {
 		return verdict{label: RidgeFlank, by: sourceRidge, slab: -1, limit: limitFlankAge, neverHi: e.onLand}, true
 	}
 	return undecided, false
 }
 
+// youngFlank reports whether the sea floor is younger than the limit; false where
+// its age is not known.
+func (e *evidence) youngFlank() bool {
+	age := e.flankAge()
+	if e.watch.on {
+		if sees(age, e.limit[limitFlankAge], e.moveKm(sourceRidge)*e.flankCos/e.flankKmPerMyr) {
+			e.watch.km[sourceRidge] = true
+		}
+		e.watchLimit(age, limitFlankAge, 1)
+	}
+	return age < e.limit[limitFlankAge]
+}
+
 func decideConvergent(e *evidence) (verdict, bool) {
-	if e.km[sourceConvergent] <= e.limit[limitConvergent] {
+	if e.within(sourceConvergent, limitConvergent) {
 		return decided(ConvergentMargin, sourceConvergent, limitConvergent)
 	}
 	return undecided, false
@@ -256,7 +310,7 @@ func decideCollision(e *evidence) (verdict, bool) {
 	case sideLower:
 		limit = limitCollisionLower
 	}
-	if e.km[sourceCollision] <= e.limit[limit] {
+	if e.within(sourceCollision, limit) {
 		return decided(CollisionZone, sourceCollision, limit)
 	}
 	for i := range e.slabs[:e.nSlabs] {
@@ -264,7 +318,7 @@ func decideCollision(e *evidence) (verdict, bool) {
 			return verdict{label: CollisionZone, by: noSource, slab: i}, true
 		}
 	}
-	if e.zone == CollisionKind && e.km[sourceCollision] <= e.limit[limitCollisionZone] {
+	if e.zone == CollisionKind && e.within(sourceCollision, limitCollisionZone) {
 		return decided(CollisionZone, sourceCollision, limitCollisionZone)
 	}
 	return undecided, false
@@ -282,7 +336,7 @@ func decideInterior(e *evidence) (verdict, bool) {
 // decide, else NoLabel.
 func (e *evidence) deepSlab() Label {
 	if i := e.decidingSlab(); i >= 0 {
-		if label, also, _ := e.slabLabel(&e.slabs[i]); label == NoLabel {
+		if label, also, _ := e.slabLabel(i); label == NoLabel {
 			return also
 		}
 	}

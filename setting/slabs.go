@@ -31,10 +31,13 @@ const slabTrenchReachKm = 3000
 
 // gatherSlabs collects every slab below the place, and those whose rim or end is
 // within reach.
-func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
+func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place, sights *boundary.Sights) {
 	e.nSlabs = 0
-	const margin = 1 + 3*fifteen
+	const margin = 1 + 3*fifteen // of the limit, less than slab.NearKm in all
 	for i, s := range l.m.c.Slabs {
+		if !s.Near(p.Vec) {
+			continue
+		}
 		x := slabEvidence{slab: s, index: i, trenchKm: math.Inf(1)}
 		var in bool
 		if x.reading, in = s.Surface.At(p.Vec); !in {
@@ -48,7 +51,7 @@ func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
 		if math.IsNaN(x.sigma) {
 			x.sigma = unknownDepthSigmaKm
 		}
-		if h, ok := l.m.slabGroups[i].Nearest(p, slabTrenchReachKm); ok {
+		if h, ok := l.m.slabGroups[i].NearestWith(p, slabTrenchReachKm, sights); ok {
 			x.trench, x.trenchKm = h, h.DistanceKm
 		}
 		e.slabs[e.nSlabs] = x
@@ -62,7 +65,7 @@ func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
 // one in the arc band, else the shallowest; where none is below, the nearest of
 // those past whose down-dip rim the site is. It returns -1 where there is none.
 func (e *evidence) decidingSlab() int {
-	best := -1
+	best, below := -1, 0
 	inBand := func(i int) bool {
 		s := &e.slabs[i]
 		return s.z >= s.slab.ArcMinDepthKm*e.limit[limitArcMin] && s.z <= e.limit[limitSlabArc]
@@ -72,15 +75,25 @@ func (e *evidence) decidingSlab() int {
 		if s.slab.Kind != slab.Subduction || s.beyond != slab.NotBeyond {
 			continue
 		}
+		below++
 		if best < 0 || inBand(i) && !inBand(best) || inBand(i) == inBand(best) && s.z < e.slabs[best].z {
 			best = i
 		}
 	}
 	if best >= 0 {
+		if e.watch.on && below > 1 {
+			for i := range e.slabs[:e.nSlabs] {
+				e.watch.z[i] = true
+			}
+			e.watch.limit[limitArcMin], e.watch.limit[limitSlabArc] = true, true
+		}
 		return best
 	}
 	for i := range e.slabs[:e.nSlabs] {
 		s := &e.slabs[i]
+		if e.watch.on && s.beyond == slab.PastRim {
+			e.watchLimit(s.outKm, limitPastRim, 1)
+		}
 		if s.slab.Kind == slab.Subduction && s.beyond == slab.PastRim && s.outKm <= e.limit[limitPastRim] && (best < 0 || s.outKm < e.slabs[best].outKm) {
 			best = i
 		}
@@ -88,20 +101,24 @@ func (e *evidence) decidingSlab() int {
 	return best
 }
 
-// label returns what a slab makes of the site above it: the label, one more that
+// slabLabel returns what slab i makes of the site above it: the label, one more that
 // is as well possible, and the limit that decides. NoLabel means that the slab is
 // too deep or too far.
-func (e *evidence) slabLabel(s *slabEvidence) (label, also Label, limit LimitID) {
-	switch arcMin := s.slab.ArcMinDepthKm * e.limit[limitArcMin]; {
-	case s.z < e.limit[limitSlabForearc]:
+func (e *evidence) slabLabel(i int) (label, also Label, limit LimitID) {
+	s := &e.slabs[i]
+	if e.watchDepth(i, limitSlabForearc, 1); s.z < e.limit[limitSlabForearc] {
 		return Forearc, NoLabel, limitSlabForearc
-	case s.z < arcMin:
+	}
+	if e.watchDepth(i, limitArcMin, s.slab.ArcMinDepthKm); s.z < s.slab.ArcMinDepthKm*e.limit[limitArcMin] {
 		return Forearc, VolcanicArc, limitArcMin
-	case s.z <= e.limit[limitSlabArc]:
+	}
+	if e.watchDepth(i, limitSlabArc, 1); s.z <= e.limit[limitSlabArc] {
 		return VolcanicArc, NoLabel, limitSlabArc
-	case s.z <= e.limit[limitSlabArcMaybe]:
+	}
+	if e.watchDepth(i, limitSlabArcMaybe, 1); s.z <= e.limit[limitSlabArcMaybe] {
 		return BackArc, VolcanicArc, limitSlabArcMaybe
-	case s.z <= e.limit[limitSlabBackArc] && s.trenchKm <= e.limit[limitSlabTrench]:
+	}
+	if e.watchDepth(i, limitSlabBackArc, 1); s.z <= e.limit[limitSlabBackArc] && e.trenchWithin(i, limitSlabTrench) {
 		return BackArc, NoLabel, limitSlabBackArc
 	}
 	return NoLabel, BackArc, limitSlabBackArc

@@ -30,6 +30,8 @@ type csvJob struct {
 	lon, lat   int
 	depth, unc int // -1 where not asked for
 	elevation  int
+	guard      *guard
+	skipped    int64 // bytes before those that the reader has seen
 	buf        []byte
 	cells      wire.Cells
 	answer     setting.Answer
@@ -56,42 +58,66 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 	if err := j.header(); err != nil {
 		return st, err
 	}
-	for {
-		if st.Rows%256 == 0 {
-			if err := ctx.Err(); err != nil {
-				return st, err
-			}
-			if o.Progress != nil {
-				o.Progress(st)
-			}
-		}
-		g.mark(skipped + j.in.InputOffset())
-		row, err := j.in.Read()
-		if err == io.EOF {
-			break
-		}
-		if err != nil {
-			return st, csvFault(err)
-		}
-		if n := len(row); g.ended && skipped+j.in.InputOffset() == g.read && strings.IndexByte(row[n-1], '\n') >= 0 && g.last != '"' {
-			line, _ := j.in.FieldPos(n - 1)
-			return st, badLine(line, "a quotation mark is not closed; it takes in the rest of the input")
-		}
-		st.Rows++
-		if !j.row(row) {
-			st.Errors++
-		}
-		if _, err := j.out.Write(j.buf); err != nil {
-			return st, err
-		}
+	j.guard, j.skipped = g, skipped
+	st, err = inOrder(ctx, o, j.read, j.worker, func(b []byte) error {
+		_, err := j.out.Write(b)
+		return err
+	})
+	if err != nil {
+		return st, err
 	}
 	if err := j.out.Flush(); err != nil {
 		return st, err
 	}
-	if o.Progress != nil {
-		o.Progress(st)
-	}
 	return st, nil
+}
+
+// csvRows are the fields of a chunk's rows, end to end.
+type csvRows struct {
+	fields []string
+	ends   []int
+}
+
+// read fills a chunk with rows.
+func (j *csvJob) read(c *chunk[csvRows]) (more bool, err error) {
+	r := &c.rows
+	r.fields, r.ends = r.fields[:0], r.ends[:0]
+	start := j.in.InputOffset()
+	for c.n < chunkRows && j.in.InputOffset()-start < chunkBytes {
+		j.guard.mark(j.skipped + j.in.InputOffset())
+		row, err := j.in.Read()
+		if err == io.EOF {
+			return false, nil
+		}
+		if err != nil {
+			return false, csvFault(err)
+		}
+		if n := len(row); j.guard.ended && j.skipped+j.in.InputOffset() == j.guard.read && strings.IndexByte(row[n-1], '\n') >= 0 && j.guard.last != '"' {
+			line, _ := j.in.FieldPos(n - 1)
+			return false, badLine(line, "a quotation mark is not closed; it takes in the rest of the input")
+		}
+		c.n++
+		r.fields = append(r.fields, row...)
+		r.ends = append(r.ends, len(r.fields))
+	}
+	return true, nil
+}
+
+// worker returns a function that makes output rows of a chunk.
+func (j *csvJob) worker() func(*chunk[csvRows]) {
+	w := *j
+	return func(c *chunk[csvRows]) {
+		w.buf = c.out
+		from := 0
+		for _, to := range c.rows.ends {
+			if !w.row(c.rows.fields[from:to]) {
+				c.errors++
+			}
+			from = to
+		}
+		c.out = w.buf
+		clear(c.rows.fields) // the text of the rows may go
+	}
 }
 
 // sniff looks at the first line: byte order mark, separator, end of line. It
@@ -230,7 +256,7 @@ func optionalColumn(names []string, given, parameter, what string) (int, error) 
 	return findColumn(names, given, parameter, what, nil)
 }
 
-// row builds the output row in j.buf and reports whether it has an answer.
+// row appends the output row to j.buf and reports whether it has an answer.
 func (j *csvJob) row(in []string) bool {
 	err := j.ask(in)
 	if err != nil {
@@ -238,7 +264,6 @@ func (j *csvJob) row(in []string) bool {
 	} else {
 		j.cells.Set(&j.answer)
 	}
-	j.buf = j.buf[:0]
 	for i := range j.width {
 		switch {
 		case j.replaced[i] >= 0:

@@ -108,7 +108,7 @@ func member(obj gjson.Result, given, what string, fits *regexp.Regexp) (string, 
 	var found gjson.Result
 	name, twice := "", ""
 	obj.ForEach(func(key, value gjson.Result) bool {
-		if given != "" && key.Str != given || given == "" && !fits.MatchString(key.Str) {
+		if given != "" && key.Str != given || given == "" && !(mayFit(key.Str) && fits.MatchString(key.Str)) {
 			return true
 		}
 		if name != "" {
@@ -125,6 +125,20 @@ func member(obj gjson.Result, given, what string, fits *regexp.Regexp) (string, 
 		return "", fmt.Errorf("%s %w: there is no such member", what, errMissing)
 	}
 	return numberText(found, name)
+}
+
+// mayFit is a quick test that every name of a coordinate passes.
+func mayFit(name string) bool {
+	for i := range len(name) {
+		switch name[i] {
+		case ' ', '\t', '\n', '\f', '\r':
+		case 'l', 'L':
+			return true
+		default:
+			return false
+		}
+	}
+	return false
 }
 
 // numberText returns the text of a JSON number, or of a string that may hold

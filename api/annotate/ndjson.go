@@ -15,50 +15,66 @@ import (
 // annotateNDJSON copies lines of JSON objects and adds a member to each. A line
 // that is no object becomes one that holds its text and what is wrong.
 func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
-	var st Stats
-	k := &asker{o: o}
 	w := bufio.NewWriterSize(out, 64<<10)
 	sc := bufio.NewScanner(in)
 	sc.Buffer(make([]byte, 0, 64<<10), MaxRowBytes)
-	var buf []byte
 	line := 0
-	for sc.Scan() {
-		if line%256 == 0 {
-			if err := ctx.Err(); err != nil {
-				return st, err
+	read := func(c *chunk[lines]) (more bool, err error) {
+		r := &c.rows
+		r.text, r.ends, r.before = r.text[:0], r.ends[:0], line
+		for len(r.ends) < chunkRows && len(r.text) < chunkBytes {
+			if !sc.Scan() {
+				if err := sc.Err(); errors.Is(err, bufio.ErrTooLong) {
+					return false, badLine(line+1, "the line is longer than %d bytes", MaxRowBytes)
+				} else if err != nil {
+					return false, err
+				}
+				return false, nil
 			}
-			if o.Progress != nil {
-				o.Progress(st)
+			line++
+			raw := sc.Bytes()
+			if line == 1 {
+				raw = bytes.TrimPrefix(raw, byteOrderMark)
 			}
-		}
-		line++
-		raw := sc.Bytes()
-		if line == 1 {
-			raw = bytes.TrimPrefix(raw, byteOrderMark)
-		}
-		raw = bytes.TrimSpace(raw)
-		buf = buf[:0]
-		if len(raw) > 0 {
-			st.Rows++
-			var ok bool
-			if buf, ok = k.line(buf, raw, line); !ok {
-				st.Errors++
+			if raw = bytes.TrimSpace(raw); len(raw) > 0 {
+				c.n++
 			}
+			r.text = append(r.text, raw...)
+			r.ends = append(r.ends, len(r.text))
 		}
-		buf = append(buf, '\n')
-		if _, err := w.Write(buf); err != nil {
-			return st, err
+		return true, nil
+	}
+	newWorker := func() func(*chunk[lines]) {
+		k := &asker{o: o}
+		return func(c *chunk[lines]) {
+			from := 0
+			for i, to := range c.rows.ends {
+				if from < to {
+					var ok bool
+					if c.out, ok = k.line(c.out, c.rows.text[from:to], c.rows.before+i+1); !ok {
+						c.errors++
+					}
+				}
+				c.out = append(c.out, '\n')
+				from = to
+			}
 		}
 	}
-	if err := sc.Err(); errors.Is(err, bufio.ErrTooLong) {
-		return st, badLine(line+1, "the line is longer than %d bytes", MaxRowBytes)
-	} else if err != nil {
+	st, err := inOrder(ctx, o, read, newWorker, func(b []byte) error {
+		_, err := w.Write(b)
+		return err
+	})
+	if err != nil {
 		return st, err
 	}
-	if o.Progress != nil {
-		o.Progress(st)
-	}
 	return st, w.Flush()
+}
+
+// lines are the lines of a chunk, end to end.
+type lines struct {
+	text   []byte
+	ends   []int
+	before int // lines before the first
 }
 
 // line appends one line's object with its answer.

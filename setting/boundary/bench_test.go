@@ -1,11 +1,14 @@
 package boundary
 
 import (
+	"fmt"
 	"math"
 	"testing"
+	"unsafe"
 
 	"github.com/golang/geo/s2"
 
+	"nearmargin/internal/rounds"
 	"nearmargin/setting/sphere"
 )
 
@@ -113,5 +116,87 @@ func BenchmarkNewNetwork(b *testing.B) {
 		if n := mustNetwork(b, specs); len(n.Faults()) != 0 {
 			b.Fatal("faults")
 		}
+	}
+}
+
+// BenchmarkNearestRatio gives how many times S2's closest-edge query takes of the
+// search on the sphere, the two measured in turn, on networks of about 5,800 and
+// 58,000 legs, and what the indices cost.
+func BenchmarkNearestRatio(b *testing.B) {
+	for _, perEdge := range []int{467, 4670} {
+		r := seeded(b)
+		n := mustNetwork(b, synthetic(r, perEdge))
+		x := newS2Index(n)
+		for _, near := range []bool{false, true} {
+			b.Run(fmt.Sprintf("legs=%d/near=%t", n.NumLegs(), near), func(b *testing.B) {
+				var places [4096]Place
+				var points [len(places)]s2.Point
+				var want [len(places)]float64
+				for i := range places {
+					v := anyVec(r)
+					if near {
+						v = n.legs[r.IntN(len(n.legs))].arc.At(r.Float64())
+						rad := sphere.KmToRad(300) * math.Sqrt(r.Float64())
+						v = v.Scale(math.Cos(rad)).Add(v.Cross(anyVec(r)).Unit().Scale(math.Sin(rad)))
+					}
+					places[i] = PlaceAt(v.LonLat())
+					points[i] = s2Point(places[i].LonLat)
+					want[i] = x.query.Distance(s2.NewMinDistanceToPointTarget(points[i])).Angle().Radians()
+				}
+				check := func(i int, got float64) {
+					if math.Abs(got-want[i%len(want)]) > 1e-7 { // 0.6 m: S2 works with squared chords
+						b.Fatalf("%g rad, want %g", got, want[i%len(want)])
+					}
+				}
+				for b.Loop() {
+					ns := rounds.Medians(101, rounds.Slice, func(i int) {
+						f, _ := n.nearest(n.all, places[i%len(places)].Vec, filter{}, reachOf(maxChordSq))
+						check(i, chordAngle(f.chordSq))
+					}, func(i int) {
+						check(i, x.query.Distance(s2.NewMinDistanceToPointTarget(points[i%len(points)])).Angle().Radians())
+					})
+					b.ReportMetric(ns[0], "ns/search")
+					b.ReportMetric(ns[1], "ns/S2")
+					b.ReportMetric(ns[1]/ns[0], "S2/search")
+				}
+			})
+		}
+	}
+}
+
+// BenchmarkIndexRatio gives how the building of the index for all legs compares
+// with that of S2's, in turn, and how many bytes a leg it takes: trees, cells and
+// the legs themselves.
+func BenchmarkIndexRatio(b *testing.B) {
+	for _, perEdge := range []int{467, 4670} {
+		n := mustNetwork(b, synthetic(seeded(b), perEdge))
+		b.Run(fmt.Sprintf("legs=%d", n.NumLegs()), func(b *testing.B) {
+			every := make([]int32, len(n.legs))
+			for i := range every {
+				every[i] = int32(i)
+			}
+			size := int(unsafe.Sizeof(leg{})) * len(n.legs)
+			for _, t := range append(n.byType[:], n.all) {
+				size += int(unsafe.Sizeof(branch{}))*len(t.branches) + 4*len(t.order)
+			}
+			c := n.all.cells
+			size += (12+4*NumTypes)*len(c.centres) + 4*len(c.starts) + int(unsafe.Sizeof(cellEntry{}))*len(c.entries)
+			for b.Loop() {
+				ns := rounds.Medians(11, rounds.Slice, func(int) {
+					t := newTree(n.legs, every)
+					if t.cells = n.newCells(t); len(t.cells.entries) == 0 {
+						b.Fatal("no entries")
+					}
+				}, func(int) {
+					if newS2Index(n) == nil {
+						b.Fatal("no index")
+					}
+				})
+				b.ReportMetric(ns[0]/1e6, "ms/index")
+				b.ReportMetric(ns[1]/1e6, "ms/S2index")
+				b.ReportMetric(ns[0]/ns[1], "index/S2index")
+				b.ReportMetric(float64(size)/float64(len(n.legs)), "B/leg")
+			}
+		})
 	}
 }

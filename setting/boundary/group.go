@@ -30,5 +30,11 @@ func (n *Network) Group(ids []string) (*Group, error) {
 // Nearest returns the boundary of the group that is nearest to a place, within
 // maxKm, and whether there is one.
 func (g *Group) Nearest(p Place, maxKm float64) (Hit, bool) {
-	return g.n.nearestIn(g.t, p, filter{noPlate, AnyRole}, maxKm)
+	var s Sights
+	return g.NearestWith(p, maxKm, &s)
+}
+
+// NearestWith is [Group.Nearest] that uses and adds to the sights from the place.
+func (g *Group) NearestWith(p Place, maxKm float64, s *Sights) (Hit, bool) {
+	return g.n.nearestIn(g.t, p, filter{noPlate, AnyRole}, maxKm, s)
 }

@@ -9,10 +9,8 @@ import (
 // leg is one great-circle arc of a boundary, with all that the search reads.
 type leg struct {
 	arc      sphere.Arc
-	fromA    sphere.Vec // N×A: p·fromA > 0 where the foot of p lies beyond A
-	fromB    sphere.Vec // B×N: p·fromB > 0 where the foot of p lies before B
-	boundary int32      // index into Network.boundaries
-	nodeA    int32      // index into Network.nodes where A is an end of the boundary, else -1
+	boundary int32 // index into Network.boundaries
+	nodeA    int32 // index into Network.nodes where A is an end of the boundary, else -1
 	nodeB    int32
 	left     uint8 // index into Network.plates
 	right    uint8
@@ -23,7 +21,7 @@ type leg struct {
 const noPlate = math.MaxUint8
 
 func newLeg(arc sphere.Arc) leg {
-	return leg{arc: arc, fromA: arc.N.Cross(arc.A), fromB: arc.B.Cross(arc.N)}
+	return leg{arc: arc}
 }
 
 // atEnd is how far beyond an end a foot must lie to count as inside the leg, as
@@ -34,7 +32,9 @@ const atEnd = 1e-15
 // chordSq returns the square of the chord from p to the nearest point of the
 // leg, a measure that grows with the distance and is exact for small ones.
 func (l *leg) chordSq(p sphere.Vec) (float64, sphere.Where) {
-	if p.Dot(l.fromA) > atEnd && p.Dot(l.fromB) > atEnd {
+	// along the arc's direction at the foot of p: A lies behind it and B before
+	ahead := l.arc.N.Cross(p)
+	if ahead.Dot(l.arc.A) < -atEnd && ahead.Dot(l.arc.B) > atEnd {
 		h := p.Dot(l.arc.N)
 		h2 := h * h
 		// chord² = 2(1-cos d) with sin d = |h|, without the loss of digits in 1-cos

@@ -61,36 +61,41 @@ const coincideKm = 1e-9
 // Accuracy: the nearest point is that on the sphere; over a geodesic the true
 // minimum is nearer by 16 m at the most in 99 of 100 places.
 func (n *Network) Locate(p Place) (plate string, nearest Hit) {
+	var s Sights
+	return n.LocateWith(p, &s)
+}
+
+// LocateWith is [Network.Locate] that uses and adds to the sights from the place.
+func (n *Network) LocateWith(p Place, s *Sights) (plate string, nearest Hit) {
+	s.start(n, p)
 	first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
 	side := n.side(p.Vec, first)
-	return n.plates[side], n.refine(n.all, p, filter{side, Bounding}, first)
+	return n.plates[side], n.refine(n.all, p, filter{side, Bounding}, first, s)
 }
 
 // refine compares the leg that is nearest on the sphere with those of the tree
 // that pass and lie within 1 % of its distance, by the length of the WGS84
-// geodesic.
-func (n *Network) refine(t *tree, p Place, f filter, first found) Hit {
-	d := 2 * math.Asin(math.Min(1, math.Sqrt(first.chordSq)/2))
-	var r rivals
-	n.collect(t, p.Vec, f, reachOfRad(d*(1+nearTie)+1e-12), &r)
-
-	best, foot := first, n.legs[first.leg].foot(p.Vec, first.where)
-	bestKm, bestAz := sphere.Inverse(p.LonLat, foot.LonLat())
-	for i := 0; i < r.n; i++ {
-		other := r.list[i]
-		if other.leg == first.leg {
-			continue
+// geodesic. Those that a bound on that length excludes are not measured.
+func (n *Network) refine(t *tree, p Place, f filter, first found, s *Sights) Hit {
+	r := &s.rivals
+	if within := reachOf(first.chordSq*(1+nearTie)*(1+nearTie) + 1e-24); t.cells != nil {
+		t.cells.rivals(n, t, p.Vec, f, within, r)
+	} else {
+		n.collect(t, p.Vec, f, within, r)
+	}
+	n.screen(p.Vec, r)
+	best, foot, bestAt, bestKm, bestAz := found{leg: -1}, sphere.Vec{}, sphere.LonLat{}, 0.0, 0.0
+	for i := range r.list[:r.n] {
+		other, q := r.list[i], r.feet[i]
+		at, km, az := bestAt, bestKm, bestAz
+		if i == 0 || q != foot {
+			at, km, az = s.to(p, q)
 		}
-		q := n.legs[other.leg].foot(p.Vec, other.where)
-		km, az := bestKm, bestAz
-		if q != foot { // two legs share most nearest points: a vertex
-			km, az = sphere.Inverse(p.LonLat, q.LonLat())
-		}
-		if km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, other, best) {
-			best, foot, bestKm, bestAz = other, q, km, az
+		if i == 0 || km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, other, best) {
+			best, foot, bestAt, bestKm, bestAz = other, q, at, km, az
 		}
 	}
-	return n.hit(p, best, bestKm, bestAz)
+	return n.hit(best, foot, bestAt, bestKm, bestAz)
 }
 
 // NearestOf returns the boundary of one type that is nearest to a place, within
@@ -99,38 +104,49 @@ func (n *Network) refine(t *tree, p Place, f filter, first found) Hit {
 //
 // Near ties are compared on WGS84 as in [Network.Locate].
 func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm float64) (Hit, bool) {
+	var s Sights
+	return n.NearestOfWith(p, t, plate, role, maxKm, &s)
+}
+
+// NearestOfWith is [Network.NearestOf] that uses and adds to the sights from the
+// place.
+func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm float64, s *Sights) (Hit, bool) {
 	f := filter{noPlate, role}
+	s.start(n, p)
+	if float64(n.all.cells.kinds[s.cell][t])-s.away > sphere.KmToRad(maxKm*1.006) { // a chord is less than its angle
+		return Hit{}, false
+	}
 	if role != AnyRole {
 		if f.plate = n.plateIndex(plate); f.plate == noPlate {
 			return Hit{}, false
 		}
 	}
-	return n.nearestIn(n.byType[t], p, f, maxKm)
+	return n.nearestIn(n.byType[t], p, f, maxKm, s)
 }
 
 // nearestIn returns the boundary of a tree that passes and is nearest to a place.
-func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64) (Hit, bool) {
+func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64, s *Sights) (Hit, bool) {
 	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
+	s.start(n, p)
 	got, ok := n.nearest(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
 	if !ok {
 		return Hit{}, false
 	}
-	h := n.refine(t, p, f, got)
+	h := n.refine(t, p, f, got, s)
 	if h.DistanceKm > maxKm {
 		return Hit{}, false
 	}
 	return h, true
 }
 
-func (n *Network) hit(p Place, f found, km, az float64) Hit {
+func (n *Network) hit(f found, q sphere.Vec, at sphere.LonLat, km, az float64) Hit {
 	l := &n.legs[f.leg]
-	q := l.foot(p.Vec, f.where)
 	along := l.arc.Tangent(q)
 	h := Hit{
 		Boundary:       n.boundaries[l.boundary],
 		DistanceKm:     km,
 		AzimuthDeg:     az,
-		Nearest:        q.LonLat(),
+		Nearest:        at,
 		NearestVec:     q,
 		Along:          along,
 		PathAzimuthDeg: q.Azimuth(along),

@@ -75,9 +75,11 @@ func (n *Network) index() {
 		of[n.legs[i].kind] = append(of[n.legs[i].kind], int32(i))
 	}
 	n.all = newTree(n.legs, every)
+	n.all.cells = n.newCells(n.all)
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
 	}
+	n.all.cells.addKinds(n)
 	for i := range n.legs {
 		for _, box := range boxes(&n.legs[i].arc) {
 			n.boxes.Insert(box.Min, box.Max, int32(i))

@@ -17,6 +17,26 @@ const (
 	Subducting      // the plate goes down
 )
 
+// plays reports whether the plate has the role at the boundary.
+func (b *Boundary) plays(plate string, role Role) bool {
+	_, bounds := b.Opposite(plate)
+	switch role {
+	case AnyRole:
+		return true
+	case Overriding:
+		return bounds && b.Subducting() != "" && b.Subducting() != plate
+	case Subducting:
+		return b.Subducting() == plate
+	}
+	return bounds
+}
+
+// Answers reports whether a hit of [Network.Locate] on the plate's own side is the
+// answer of [Network.NearestOf] as well, but for the distance allowed.
+func (h *Hit) Answers(t Type, plate string, role Role) bool {
+	return h.Boundary != nil && h.Boundary.Type() == t && h.Boundary.plays(plate, role)
+}
+
 // filter is what a leg must meet to be found.
 type filter struct {
 	plate uint8
@@ -39,6 +59,23 @@ func (f filter) passes(l *leg) bool {
 	return true
 }
 
+// skips reports whether no leg below a branch passes, as far as its plates tell.
+func (f filter) skips(b *branch) bool {
+	switch f.role {
+	case AnyRole:
+		return false
+	case Overriding:
+		return b.over&plateBit(f.plate) == 0
+	case Subducting:
+		return b.sink&plateBit(f.plate) == 0
+	}
+	return b.plates&plateBit(f.plate) == 0
+}
+
+// plateBit is the bit of a plate in the plates of a branch. Where a network has
+// more than 64 plates some share a bit.
+func plateBit(plate uint8) uint64 { return 1 << (plate & 63) }
+
 // found is a leg that was found, and where on it the nearest point lies.
 type found struct {
 	leg     int32
@@ -53,12 +90,21 @@ func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found,
 	if len(t.branches) == 0 {
 		return best, false
 	}
+	if t.cells != nil && f.role == AnyRole {
+		best = t.cells.nearest(n, t, p)
+		return best, best.chordSq <= within.chordSq
+	}
+	if !f.skips(&t.branches[0]) && !within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
+		n.descend(t, 0, p, f, &best, &within)
+	}
+	return best, best.leg >= 0
+}
+
+// descend searches the tree from a branch on that is not beyond the reach. It
+// replaces the best found and shortens the reach.
+func (n *Network) descend(t *tree, at int32, p sphere.Vec, f filter, best *found, within *reach) {
 	var stack [64]int32
 	depth := 0
-	at := int32(0)
-	if within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
-		return best, false
-	}
 	for {
 		b := &t.branches[at]
 		if b.right == 0 {
@@ -68,11 +114,11 @@ func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found,
 				if d > within.chordSq || !f.passes(l) {
 					continue
 				}
-				if best.leg >= 0 && d == best.chordSq && !n.squarer(p, found{i, w, d}, best) {
+				if best.leg >= 0 && d == best.chordSq && !n.squarer(p, found{i, w, d}, *best) {
 					continue
 				}
-				best = found{i, w, d}
-				within = reachOf(d)
+				*best = found{i, w, d}
+				*within = reachOf(d)
 			}
 		} else {
 			// the nearer child first, so that the reach shrinks soon
@@ -81,18 +127,18 @@ func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found,
 			if cr > cl {
 				left, right, cl, cr = right, left, cr, cl
 			}
-			if !within.beyond(&t.branches[right], cr) {
+			if !f.skips(&t.branches[right]) && !within.beyond(&t.branches[right], cr) {
 				stack[depth] = right
 				depth++
 			}
-			if !within.beyond(&t.branches[left], cl) {
+			if !f.skips(&t.branches[left]) && !within.beyond(&t.branches[left], cl) {
 				at = left
 				continue
 			}
 		}
 		for {
 			if depth == 0 {
-				return best, best.leg >= 0
+				return
 			}
 			depth--
 			at = stack[depth]
@@ -127,6 +173,8 @@ const maxRivals = 96
 // rivals is a list of legs that lie about as near as the nearest.
 type rivals struct {
 	list [maxRivals]found
+	feet [maxRivals]sphere.Vec // filled by screen
+	km   [maxRivals]float64
 	n    int
 }
 
@@ -134,16 +182,21 @@ type rivals struct {
 // p. Where there are more than maxRivals, the nearest of those met are kept.
 func (n *Network) collect(t *tree, p sphere.Vec, f filter, within reach, out *rivals) {
 	out.n = 0
-	var stack [64]int32
-	depth := 0
 	if len(t.branches) > 0 {
-		depth = 1
+		n.gather(t, 0, p, f, &within, out)
 	}
+}
+
+// gather is collect from a branch on, without clearing the list.
+func (n *Network) gather(t *tree, at int32, p sphere.Vec, f filter, within *reach, out *rivals) {
+	var stack [64]int32
+	stack[0] = at
+	depth := 1
 	for depth > 0 {
 		depth--
 		at := stack[depth]
 		b := &t.branches[at]
-		if within.beyond(b, p.Dot(b.centre)) {
+		if f.skips(b) || within.beyond(b, p.Dot(b.centre)) {
 			continue
 		}
 		if b.right != 0 {

@@ -6,6 +6,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"nearmargin/internal/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/sphere"
 )
@@ -63,4 +64,40 @@ func BenchmarkAt(b *testing.B) {
 			}
 		}
 	})
+}
+
+// BenchmarkAtInverses gives the time of a whole answer in Karney inverses, both
+// measured in turn.
+func BenchmarkAtInverses(b *testing.B) {
+	bundle, err := Load()
+	if err != nil {
+		b.Fatal(err)
+	}
+	for _, near := range []bool{false, true} {
+		for _, brief := range []bool{true, false} {
+			b.Run(fmt.Sprintf("near=%t/brief=%t", near, brief), func(b *testing.B) {
+				l, err := bundle.Model.Lookup(setting.Options{Brief: brief})
+				if err != nil {
+					b.Fatal(err)
+				}
+				in := sites(b, bundle.Model, near)
+				var a setting.Answer
+				for b.Loop() {
+					ns := rounds.Medians(101, rounds.Slice, func(i int) {
+						if err := l.At(in[i%len(in)], &a); err != nil || a.Label == setting.NoLabel {
+							b.Fatal(err, a.Label)
+						}
+					}, func(i int) {
+						p, q := in[i%len(in)], in[(i+1)%len(in)]
+						if km, _ := sphere.Inverse(sphere.LonLat{Lon: p.Lon, Lat: p.Lat}, sphere.LonLat{Lon: q.Lon, Lat: q.Lat}); km < 0 {
+							b.Fatal(km)
+						}
+					})
+					b.ReportMetric(ns[0], "ns/answer")
+					b.ReportMetric(ns[1], "ns/inverse")
+					b.ReportMetric(ns[0]/ns[1], "inverses/answer")
+				}
+			})
+		}
+	}
 }

@@ -34,6 +34,7 @@ type contourSurface struct {
 	centre    sphere.Vec
 	capRad    float64
 	cosCap    float64
+	cap       sphere.Cap
 }
 
 type contour struct {
@@ -161,6 +162,7 @@ func (s *contourSurface) bound() {
 		}
 	}
 	s.cosCap = math.Cos(s.capRad)
+	s.cap = sphere.NewCap(s.centre, s.capRad)
 }
 
 // Contours returns the contours of a surface that was built from them, nil of any
@@ -176,6 +178,8 @@ func Contours(s Surface) []Contour {
 	}
 	return out
 }
+
+func (s *contourSurface) Cap() (sphere.Vec, float64) { return s.centre, s.capRad }
 
 func (s *contourSurface) At(p sphere.Vec) (Reading, bool) {
 	if p.Dot(s.centre) < s.cosCap {
@@ -229,14 +233,14 @@ func (s *contourSurface) between(p sphere.Vec, i int) Reading {
 }
 
 func (s *contourSurface) Outside(p sphere.Vec, withinKm float64) (Outside, bool) {
-	if sphere.Angle(p, s.centre) > s.capRad+sphere.KmToRad(withinKm) {
+	if s.cap.Beyond(p, sphere.ReachOf(sphere.KmToRad(withinKm))) {
 		return Outside{}, false
 	}
 	last := len(s.contours) - 1
 	// the rim: first and last contour, and the arcs that join the contours' ends
-	best, bestRad, strip := sphere.Vec{}, math.Inf(1), 0
+	best, bestRad, strip := sphere.Vec{}, sphere.KmToRad(withinKm), -1
 	see := func(path *sphere.Path, stripOf func(leg int) int) {
-		if q, leg, _, rad := path.Nearest(p); rad < bestRad {
+		if q, leg, _, rad, ok := path.NearestWithin(p, bestRad); ok && (rad < bestRad || strip < 0) {
 			best, bestRad, strip = q, rad, stripOf(leg)
 		}
 	}
@@ -246,7 +250,7 @@ func (s *contourSurface) Outside(p sphere.Vec, withinKm float64) (Outside, bool)
 		see(e, func(leg int) int { return leg })
 	}
 	km := sphere.RadToKm(bestRad)
-	if km > withinKm {
+	if strip < 0 || km > withinKm {
 		return Outside{}, false
 	}
 	r := s.between(best, strip)

@@ -98,7 +98,7 @@ func checkDistance(t *rapid.T, surface Surface, p sphere.Vec) {
 		t.Skip("outside")
 	}
 	site := rapid.Float64Range(0, 400).Draw(t, "site depth")
-	s := &Slab{Spec{Surface: surface}}
+	s := &Slab{Spec: Spec{Surface: surface}}
 	got, want := s.Distance3D(p, site), searched(surface, p, site)
 	if !(got <= 1.02*want+0.01 && got >= 0.98*want-0.01) {
 		t.Fatalf("%v at %g km, slab at %g km dipping %g: distance %g, searched %g", p.LonLat(), site, r.DepthKm, r.DipDeg, got, want)
@@ -137,7 +137,7 @@ func TestDistance3DToAPlane(t *testing.T) {
 		surface := must[Surface](t)(NewContours([]Contour{parallel(20, 2, 0, 4, 0), parallel(deep, 9, 0, 4, -gap)}))
 		p := at(2, -gap/2)
 		r, _ := surface.At(p)
-		s := &Slab{Spec{Surface: surface}}
+		s := &Slab{Spec: Spec{Surface: surface}}
 		for _, clearance := range []float64{30, -30} {
 			steeper := math.Tan(dip*math.Pi/180) * sphere.MeanRadiusKm / (sphere.MeanRadiusKm - r.DepthKm)
 			want := 30 * math.Cos(math.Atan(steeper))
@@ -152,7 +152,7 @@ func TestDistance3DToAPlane(t *testing.T) {
 }
 
 func TestDistance3DOutside(t *testing.T) {
-	s := &Slab{Spec{Surface: southward(t, 0)}}
+	s := &Slab{Spec: Spec{Surface: southward(t, 0)}}
 	if got := s.Distance3D(at(2, 1), 10); !math.IsNaN(got) {
 		t.Errorf("outside of the footprint the distance is %g, want NaN", got)
 	}

@@ -167,6 +167,8 @@ func (l *Layer) bilinear(col, row int, fx, fy float64) float64 {
 	return sum
 }
 
+func (g *gridSurface) Cap() (sphere.Vec, float64) { return g.centre, g.capRad }
+
 func (g *gridSurface) At(p sphere.Vec) (Reading, bool) {
 	if p.Dot(g.centre) < g.cosCap-1e-9 {
 		return Reading{}, false

@@ -69,6 +69,8 @@ type Outside struct {
 
 // Surface is the top of a slab.
 type Surface interface {
+	// Cap returns a cap that holds the footprint.
+	Cap() (centre sphere.Vec, rad float64)
 	// At returns the reading below p, and whether p lies within the footprint.
 	At(p sphere.Vec) (Reading, bool)
 	// Outside says how a place that is not within the footprint lies to it, and
@@ -88,7 +90,17 @@ type Spec struct {
 }
 
 // Slab is one limb of a subducting or colliding slab.
-type Slab struct{ Spec }
+type Slab struct {
+	Spec
+	near sphere.Cap
+}
+
+// NearKm is the distance that [Slab.Near] is about.
+const NearKm = 150
+
+// Near reports whether a place may be less than NearKm away from the slab's
+// footprint: false only where it is not.
+func (s *Slab) Near(p sphere.Vec) bool { return s.near.Holds(p) }
 
 // New checks a specification and builds the slab from it.
 func New(s Spec) (*Slab, error) {
@@ -114,7 +126,8 @@ func New(s Spec) (*Slab, error) {
 		return fail("has neither contours nor a grid")
 	}
 	s.BoundaryIDs = append([]string(nil), s.BoundaryIDs...)
-	return &Slab{s}, nil
+	centre, rad := s.Surface.Cap()
+	return &Slab{s, sphere.NewCap(centre, rad+sphere.KmToRad(NearKm))}, nil
 }
 
 // outward classifies the direction from a point q of the rim to a place p

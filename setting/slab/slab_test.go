@@ -112,7 +112,7 @@ func BenchmarkAt(b *testing.B) {
 }
 
 func BenchmarkDistance3D(b *testing.B) {
-	s := &Slab{Spec{Surface: southward(b, 0)}}
+	s := &Slab{Spec: Spec{Surface: southward(b, 0)}}
 	p := at(2.3, -1.2)
 	for b.Loop() {
 		if d := s.Distance3D(p, 20); !(d > 30 && d < 54) {
