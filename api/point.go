@@ -35,7 +35,6 @@ func (s *Server) point(c echo.Context) error {
 	return sendBytes(c, echo.MIMEApplicationJSON, room.body)
 }
 
-
 // answerRoom is what one answer and its text take, kept for the next request.
 type answerRoom struct {
 	answer setting.Answer
