@@ -17,7 +17,9 @@ require (
 	github.com/tidwall/geodesic v1.52.4
 	github.com/tidwall/gjson v1.20.4
 	github.com/tidwall/rtree v1.10.0
+	go.yaml.in/yaml/v3 v3.0.6
 	golang.org/x/term v0.47.0
+	golang.org/x/time v0.16.0
 	pgregory.net/rapid v1.3.0
 )
 
@@ -93,7 +95,6 @@ require (
 	go.opentelemetry.io/otel/metric v1.47.0 // indirect
 	go.opentelemetry.io/otel/trace v1.47.0 // indirect
 	go.uber.org/multierr v1.11.0 // indirect
-	go.yaml.in/yaml/v3 v3.0.6 // indirect
 	golang.org/x/crypto v0.58.0 // indirect
 	golang.org/x/exp/typeparams v0.0.0-20231108232855-2478ac86f678 // indirect
 	golang.org/x/mod v0.42.0 // indirect

@@ -146,8 +146,12 @@ type readiness struct {
 }
 
 // ready says that requests are answered, and from which model; also where newer
-// models cannot be had.
+// models cannot be had. A service that shuts down is no longer ready, while it
+// still answers.
 func (s *Server) ready(c echo.Context) error {
+	if s.gate.draining.Load() {
+		return overload("draining", "The service is shutting down", "this instance takes no new work")
+	}
 	out := readiness{Status: "ready", Model: refOf(s.cfg.Models.Active())}
 	if s.cfg.Source != nil {
 		if since, reason := s.cfg.Source.Degraded(); !since.IsZero() {

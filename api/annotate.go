@@ -1,11 +1,12 @@
 package api
 
 import (
+	"context"
 	"errors"
 	"fmt"
-	"io"
 	"mime"
 	"net/http"
+	"os"
 	"strings"
 
 	"github.com/labstack/echo/v4"
@@ -35,48 +36,55 @@ func (s *Server) annotate(c echo.Context) error {
 	if err != nil {
 		return err
 	}
+	leave, busy := s.gate.enter()
+	if busy != nil {
+		s.metrics.refused.WithLabelValues(refusedBatch).Inc()
+		return busy
+	}
+	defer leave()
+	rc := http.NewResponseController(c.Response().Writer)
 	// answers leave while rows still come in; HTTP/2 can do that without being asked
-	if err := http.NewResponseController(c.Response().Writer).EnableFullDuplex(); err != nil && !errors.Is(err, http.ErrNotSupported) {
+	if err := rc.EnableFullDuplex(); err != nil && !errors.Is(err, http.ErrNotSupported) {
 		return err
 	}
-	ctx, body := c.Request().Context(), &batchReader{r: c.Request().Body}
-	st, err := annotate.Run(ctx, body, &batchWriter{c: c, contentType: contentType}, format, annotate.Options{
-		Lookup:    l,
+	limits := &s.cfg.Limits
+	ctx, cancel := context.WithTimeoutCause(c.Request().Context(), limits.BatchTime, errBatchTime)
+	defer cancel()
+	in := &batchReader{r: c.Request().Body, ctx: ctx, rc: rc, stall: limits.StallTime}
+	out := &batchWriter{c: c, ctx: ctx, rc: rc, stall: limits.StallTime, contentType: contentType}
+	st, err := annotate.Run(ctx, in, out, format, annotate.Options{
+		Lookup:   l,
+		RowBytes: limits.RowBytes, ArrayBytes: limits.BodyBytes,
 		LonColumn: q.text("lon_column"), LatColumn: q.text("lat_column"),
 		DepthColumn: q.text("depth_column"), UncertaintyColumn: q.text("uncertainty_column"),
 		DepthUnit: q.text("depth_unit"), DepthDatum: q.text("depth_datum"), ElevationColumn: q.text("elevation_column"),
 		Prefix: q.text("prefix"),
 	})
 	s.metrics.batch(string(format), st)
+	c.Set(keyRows, st)
 	switch {
 	case err == nil:
+		out.finish(st)
 		return nil
+	case !c.Response().Committed && errors.Is(in.err, os.ErrDeadlineExceeded) && !overTime(ctx):
+		// net/http takes the deadline for the client's leaving; the client is there
+		s.metrics.cut.WithLabelValues(cutSlowSender).Inc()
+		c.Response().Header().Set(echo.HeaderConnection, "close")
+		return bodyProblem(in.err, limits.BodyBytes)
 	case c.Response().Committed || ctx.Err() != nil:
 		// The status is out, or nobody is left to read it. A broken body is the one
 		// way left to tell the reader that the answer is not whole.
-		if ctx.Err() == nil {
-			s.cfg.Log.Warn("batch cut short", "rows", st.Rows, "error", err)
+		reason := cutReason(ctx, in, out, err)
+		s.metrics.cut.WithLabelValues(reason).Inc()
+		if reason != cutClientLeft {
+			s.cfg.Log.Warn("batch cut short", "request_id", c.Get(keyRequestID), "reason", reason, "rows", st.Rows, "error", err)
 		}
 		panic(http.ErrAbortHandler)
-	case body.err != nil:
-		return badRequest(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body breaks off: %v; send it whole", body.err)})
+	case in.err != nil:
+		c.Response().Header().Set(echo.HeaderConnection, "close")
+		return bodyProblem(in.err, limits.BodyBytes)
 	}
 	return err
-}
-
-// batchReader remembers the fault that ended a body, so that a client which
-// breaks off is not taken for a fault of the service.
-type batchReader struct {
-	r   io.Reader
-	err error
-}
-
-func (b *batchReader) Read(p []byte) (int, error) {
-	n, err := b.r.Read(p)
-	if err != nil && err != io.EOF {
-		b.err = err
-	}
-	return n, err
 }
 
 // batchFormat returns the format that a request's content type asks for, and the
@@ -100,19 +108,4 @@ func batchFormat(r *http.Request) (annotate.Format, string, error) {
 func unsupported(header, format string, args ...any) *Problem {
 	detail := fmt.Sprintf(format, args...)
 	return newProblem(http.StatusUnsupportedMediaType, "unsupported-media-type", "The body cannot be read", detail, FieldFault{Parameter: header, Detail: detail})
-}
-
-// batchWriter sends the header with the first bytes, so that a fault found
-// before them still gets a status of its own.
-type batchWriter struct {
-	c           echo.Context
-	contentType string
-}
-
-func (w *batchWriter) Write(p []byte) (int, error) {
-	if r := w.c.Response(); !r.Committed {
-		r.Header().Set(echo.HeaderContentType, w.contentType)
-		r.WriteHeader(http.StatusOK)
-	}
-	return w.c.Response().Write(p)
 }

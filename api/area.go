@@ -2,7 +2,6 @@ package api
 
 import (
 	"errors"
-	"fmt"
 	"io"
 	"mime"
 	"net/http"
@@ -14,9 +13,6 @@ import (
 	"nearmargin/api/wire"
 	"nearmargin/setting"
 )
-
-// maxAreaBytes bounds the body of an area.
-const maxAreaBytes = 4 << 20
 
 // areaOfBox answers for a box of meridians and parallels.
 func (s *Server) areaOfBox(c echo.Context) error {
@@ -48,12 +44,14 @@ func (s *Server) area(c echo.Context) error {
 	if err := checkAreaType(c.Request()); err != nil {
 		return err
 	}
-	body, err := io.ReadAll(io.LimitReader(c.Request().Body, maxAreaBytes+1))
-	if err != nil {
-		return badRequest(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body breaks off: %v; send it whole", err)})
+	most := s.cfg.Limits.BodyBytes
+	body, err := io.ReadAll(io.LimitReader(c.Request().Body, most+1))
+	if err == nil && int64(len(body)) > most {
+		err = errBodyTooLong
 	}
-	if len(body) > maxAreaBytes {
-		return tooLarge(FieldFault{Pointer: new(string), Detail: fmt.Sprintf("the body is longer than %d bytes, which is the limit; generalise the polygon", maxAreaBytes)})
+	if err != nil {
+		c.Response().Header().Set(echo.HeaderConnection, "close")
+		return bodyProblem(err, most)
 	}
 	area, err := geojson.DecodeArea(body)
 	if err != nil {

@@ -11,6 +11,7 @@ import (
 	"strings"
 	"testing"
 
+	"nearmargin/api/annotate"
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
 )
@@ -122,7 +123,7 @@ func TestBadAreas(t *testing.T) {
 		{name: "overlap", method: "POST", contentType: geo, body: `{"type":"MultiPolygon","coordinates":[[` + square + `],[` + square + `]]}`, status: 422, kind: cannot, place: one("#/coordinates/1"), detail: one("overlap")},
 		{name: "too large for a hemisphere", method: "POST", contentType: geo, body: `{"type":"Polygon","coordinates":[[[0,-5],[120,-5],[240,-5],[0,-5]]]}`, status: 200},
 		{name: "around the equator", method: "POST", contentType: geo, body: `{"type":"Polygon","coordinates":[[[0,0],[120,0],[240,0],[0,0]]]}`, status: 422, kind: cannot, place: one("#/coordinates/0"), detail: one("hemisphere")},
-		{name: "a body too long", method: "POST", contentType: geo, body: strings.Repeat(" ", maxAreaBytes) + "{}", status: 413, kind: "too-large", place: one("#"), detail: one("4194304")},
+		{name: "a body too long", method: "POST", contentType: geo, body: strings.Repeat(" ", annotate.MaxArrayBytes) + "{}", status: 413, kind: "too-large", place: one("#"), detail: one("4194304")},
 		{name: "positions without end", method: "POST", contentType: geo, body: `{"type":"Polygon","coordinates":[[` + strings.Repeat("[1,1],", setting.MaxAreaPositions) + `[1,1]]]}`, status: 413, kind: "too-large", place: one("#/coordinates/0/20000"), detail: one("20000")},
 		{name: "a table", method: "POST", contentType: "text/csv", body: "lon,lat\n", status: 415, kind: "unsupported-media-type", place: one("Content-Type"), detail: one("application/geo+json")},
 		{name: "no content type", method: "POST", body: "{}", status: 415, kind: "unsupported-media-type", place: one("Content-Type")},

@@ -17,9 +17,9 @@ import (
 	"github.com/prometheus/client_golang/prometheus"
 	"pgregory.net/rapid"
 
-	"nearmargin/internal/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
+	"nearmargin/testdata/bench/rounds"
 )
 
 // BenchmarkPointRatio compares GET /v1/point on the built-in model with a bare

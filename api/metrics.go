@@ -17,6 +17,9 @@ type metrics struct {
 	seconds  *prometheus.HistogramVec
 	rows     *prometheus.CounterVec
 	faults   *prometheus.CounterVec
+	cut      *prometheus.CounterVec
+	refused  *prometheus.CounterVec
+	panics   prometheus.Counter
 }
 
 // newMetrics registers the metrics.
@@ -36,11 +39,12 @@ func newMetrics(cfg Config) *metrics {
 			Name: "nearmargin_annotated_row_errors_total", Help: "Rows and features that got an error instead of an answer, by format.",
 		}, []string{"format"}),
 	}
+	m.operations()
 	info := prometheus.NewGaugeVec(prometheus.GaugeOpts{
 		Name: "nearmargin_build_info", Help: "Always 1; the labels say what runs and the model it started with.",
 	}, []string{"version", "commit", "model"})
 	info.WithLabelValues(cfg.Version, cfg.Commit, cfg.Models.Active().Ref()).Set(1)
-	cfg.Registry.MustRegister(m.requests, m.seconds, m.rows, m.faults, info, activeModel{cfg.Models})
+	cfg.Registry.MustRegister(m.requests, m.seconds, m.rows, m.faults, m.cut, m.refused, m.panics, info, activeModel{cfg.Models})
 	if cfg.Source != nil {
 		cfg.Registry.MustRegister(prometheus.NewGaugeFunc(prometheus.GaugeOpts{
 			Name: "nearmargin_degraded_since_timestamp_seconds", Help: "Since when newer models cannot be had, in seconds since 1970; 0 where they can.",

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"net/http"
+	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -18,6 +19,8 @@ type Problem struct {
 	Status int          `json:"status"`
 	Detail string       `json:"detail,omitempty"`
 	Errors []FieldFault `json:"errors,omitempty"`
+
+	retryAfter time.Duration // for the header Retry-After, none where 0
 }
 
 // FieldFault names one place of a request that is at fault.

@@ -5,7 +5,6 @@ import (
 	"io"
 	"log/slog"
 	"net/http"
-	"strconv"
 	"time"
 
 	"github.com/labstack/echo/v4"
@@ -32,7 +31,8 @@ type Source interface {
 	Degraded() (since time.Time, reason string)
 }
 
-// Config is what a server is built from; every field but Source is needed.
+// Config is what a server is built from. Source and what follows Commit may be
+// left out.
 type Config struct {
 	Models   Models
 	Source   Source // nil where models come from no place that can fail
@@ -40,12 +40,21 @@ type Config struct {
 	Registry *prometheus.Registry
 	Version  string // of the program
 	Commit   string
+	Limits   Limits
+	Access   Access
+	BasePath string // below which the paths stand, such as /tectonics; "" for none
+	// PrivateMetrics keeps the metrics off this server's paths; Server.Metrics
+	// serves them elsewhere.
+	PrivateMetrics bool
 }
 
-// Server answers HTTP requests. It holds no state of its own.
+// Server answers HTTP requests. Its only state is which batches run and whether
+// it drains.
 type Server struct {
 	cfg     Config
 	metrics *metrics
+	gate    *gate
+	slots   chan struct{} // for pieces of batches
 	echo    *echo.Echo
 	site    *page.Site
 }
@@ -56,12 +65,14 @@ func New(cfg Config) *Server {
 	if err != nil {
 		panic(err) // a file of the program's own
 	}
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), echo: echo.New(), site: site}
+	cfg.Limits.fill()
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site}
+	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
-	e.IPExtractor = echo.ExtractIPDirect()
+	e.IPExtractor = cfg.Access.ipExtractor()
 	e.HTTPErrorHandler = s.handleError
-	e.Use(s.observe)
+	e.Use(identify, s.observe, s.admit)
 	for path, h := range map[string]echo.HandlerFunc{
 		"/v1/point":       s.point,
 		"/v1/area":        s.areaOfBox,
@@ -82,6 +93,9 @@ func New(cfg Config) *Server {
 		"/reference":      s.page,
 		"/assets/*":       s.page,
 	} {
+		if path == "/metrics" && cfg.PrivateMetrics {
+			continue
+		}
 		e.GET(path, h)
 		e.HEAD(path, h)
 	}
@@ -91,45 +105,8 @@ func New(cfg Config) *Server {
 }
 
 // ServeHTTP answers one request.
-func (s *Server) ServeHTTP(w http.ResponseWriter, r *http.Request) { s.echo.ServeHTTP(w, r) }
-
-// handleError sends the problem document for an error, once.
-func (s *Server) handleError(err error, c echo.Context) {
-	p := problemOf(err)
-	if p.Status >= http.StatusInternalServerError {
-		s.cfg.Log.Error("request failed", "path", c.Path(), "error", err)
-	}
-	if c.Response().Committed {
-		return
-	}
-	if err := writeProblem(c, p); err != nil {
-		s.cfg.Log.Warn("problem document not sent", "error", err)
-	}
-}
-
-// observe counts and logs a request.
-func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
-	return func(c echo.Context) error {
-		start, whole := time.Now(), false
-		defer func() { // also where a handler breaks the answer off
-			took := time.Since(start)
-			route, status := c.Path(), strconv.Itoa(c.Response().Status)
-			if route == "" || c.Response().Status == http.StatusNotFound && route != "/v1/models/:id" {
-				route = "none"
-			}
-			if !whole {
-				status = "aborted"
-			}
-			s.metrics.request(route, c.Request().Method, status, took)
-			s.cfg.Log.Info("request", "method", c.Request().Method, "route", route, "status", status,
-				"bytes", c.Response().Size, "ms", float64(took.Microseconds())/1000)
-		}()
-		if err := next(c); err != nil {
-			c.Error(err)
-		}
-		whole = true
-		return nil
-	}
+func (s *Server) ServeHTTP(w http.ResponseWriter, r *http.Request) {
+	s.echo.ServeHTTP(w, stripBase(s.cfg.BasePath, r))
 }
 
 // encodeJSON writes a value without escaping <, > and &.

@@ -8,14 +8,14 @@ import (
 )
 
 // annotateArray answers for a short JSON array of objects, as apps send it.
-func annotateArray(_ context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
+func annotateArray(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	var st Stats
-	body, err := io.ReadAll(io.LimitReader(in, MaxArrayBytes+1))
+	body, err := io.ReadAll(io.LimitReader(in, o.ArrayBytes+1))
 	if err != nil {
 		return st, err
 	}
-	if len(body) > MaxArrayBytes {
-		return st, &InputError{Line: 1, TooLarge: true, Detail: fmt.Sprintf("the array is longer than %d bytes; send NDJSON or CSV", MaxArrayBytes)}
+	if int64(len(body)) > o.ArrayBytes {
+		return st, &InputError{Line: 1, TooLarge: true, Detail: fmt.Sprintf("the array is longer than %d bytes; send NDJSON or CSV", o.ArrayBytes)}
 	}
 	var items []json.RawMessage
 	if err := json.Unmarshal(body, &items); err != nil || items == nil {
@@ -30,6 +30,9 @@ func annotateArray(_ context.Context, in io.Reader, out io.Writer, o *Options) (
 	k := &asker{o: o}
 	b := []byte{'['}
 	for i, raw := range items {
+		if err := ctx.Err(); err != nil { // an element may be an area, which takes time
+			return st, err
+		}
 		if raw[0] != '{' {
 			return st, &InputError{Pointer: fmt.Sprintf("/%d", i), Detail: "an element must be an object with lon and lat"}
 		}

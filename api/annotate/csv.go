@@ -25,6 +25,7 @@ type csvJob struct {
 	decimal    bool   // decimal commas are read
 	newline    string // as in the input
 	width      int    // columns of the header
+	openHeader bool   // the last of them has a line break in its name
 	replaced   []int  // for each input column the added column that takes its place, or -1
 	appended   []int  // added columns that stand after the input's
 	lon, lat   int
@@ -43,7 +44,7 @@ var byteOrderMark = []byte("\xef\xbb\xbf")
 // annotateCSV copies a table and adds columns.
 func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	var st Stats
-	g := &guard{r: in, limit: MaxRowBytes}
+	g := &guard{r: in, limit: int64(o.RowBytes)}
 	br := bufio.NewReaderSize(g, 64<<10)
 	j := &csvJob{o: o, out: bufio.NewWriterSize(out, 64<<10)}
 	skipped, err := j.sniff(br)
@@ -57,6 +58,9 @@ func annotateCSV(ctx context.Context, in io.Reader, out io.Writer, o *Options) (
 	j.in.ReuseRecord = true
 	if err := j.header(); err != nil {
 		return st, err
+	}
+	if j.openHeader && g.ended && skipped+j.in.InputOffset() == g.read && g.last != '"' {
+		return st, badLine(1, "a quotation mark is not closed; it takes in the rest of the input")
 	}
 	j.guard, j.skipped = g, skipped
 	st, err = inOrder(ctx, o, j.read, j.worker, func(b []byte) error {
@@ -84,13 +88,17 @@ func (j *csvJob) read(c *chunk[csvRows]) (more bool, err error) {
 	r.fields, r.ends = r.fields[:0], r.ends[:0]
 	start := j.in.InputOffset()
 	for c.n < chunkRows && j.in.InputOffset()-start < chunkBytes {
-		j.guard.mark(j.skipped + j.in.InputOffset())
+		from := j.in.InputOffset()
+		j.guard.mark(j.skipped + from)
 		row, err := j.in.Read()
+		if err == nil && j.in.InputOffset()-from > int64(j.o.RowBytes) { // the guard alone is as coarse as the reads are
+			err = errRowTooLong
+		}
 		if err == io.EOF {
 			return false, nil
 		}
 		if err != nil {
-			return false, csvFault(err)
+			return false, csvFault(err, j.o.RowBytes)
 		}
 		if n := len(row); j.guard.ended && j.skipped+j.in.InputOffset() == j.guard.read && strings.IndexByte(row[n-1], '\n') >= 0 && j.guard.last != '"' {
 			line, _ := j.in.FieldPos(n - 1)
@@ -125,7 +133,7 @@ func (j *csvJob) worker() func(*chunk[csvRows]) {
 func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
 	head, err := br.Peek(64 << 10)
 	if err != nil && err != io.EOF && !errors.Is(err, bufio.ErrBufferFull) {
-		return 0, csvFault(err)
+		return 0, csvFault(err, j.o.RowBytes)
 	}
 	if bytes.HasPrefix(head, []byte("\xff\xfe")) || bytes.HasPrefix(head, []byte("\xfe\xff")) {
 		return 0, badLine(1, "the file is UTF-16; save it as UTF-8")
@@ -189,9 +197,12 @@ func (j *csvJob) header() error {
 		return badLine(1, "the input is empty; the first line must name the columns, such as id,lon,lat")
 	}
 	if err != nil {
-		return csvFault(err)
+		return csvFault(err, j.o.RowBytes)
 	}
 	names = slices.Clone(names)
+	if len(names) > MaxColumns {
+		return badLine(1, "the first line names %d columns and %d are the limit", len(names), MaxColumns)
+	}
 	for i := range names {
 		if !utf8.ValidString(names[i]) {
 			return badLine(1, "the name of column %d is not UTF-8; save the file as UTF-8", i+1)
@@ -217,6 +228,7 @@ func (j *csvJob) header() error {
 		return err
 	}
 	j.width = len(names)
+	j.openHeader = strings.IndexByte(names[len(names)-1], '\n') >= 0
 	added := map[string]int{}
 	for i, c := range wire.Columns {
 		added[o.Prefix+c] = i
@@ -346,11 +358,11 @@ func (j *csvJob) needsQuotes(v string) bool {
 	return v != "" && (v[0] == ' ' || v[0] == '\t')
 }
 
-func csvFault(err error) error {
+func csvFault(err error, rowBytes int) error {
 	var p *csv.ParseError
 	switch {
 	case errors.Is(err, errRowTooLong):
-		return &InputError{Detail: fmt.Sprintf("a row is longer than %d bytes; is a quotation mark not closed?", MaxRowBytes), Line: 1}
+		return &InputError{Detail: fmt.Sprintf("a row is longer than %d bytes; is a quotation mark not closed?", rowBytes), Line: 1}
 	case errors.As(err, &p):
 		return badLine(p.Line, "%v", p.Err)
 	}

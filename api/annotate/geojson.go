@@ -25,7 +25,7 @@ type features struct {
 // annotateGeoJSON copies a FeatureCollection, feature by feature, and adds the
 // answer to the properties of each. A single Feature is taken as well.
 func annotateGeoJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
-	g := &guard{r: in, limit: MaxRowBytes}
+	g := &guard{r: in, limit: int64(o.RowBytes)}
 	f := &features{asker: asker{o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
 	if err := f.run(ctx); err != nil {
 		return f.st, f.fault(err)
@@ -98,7 +98,7 @@ func (f *features) member(key string) error {
 		}
 	}
 	f.buf = append(f.buf, raw...)
-	if int64(len(f.buf)) > MaxRowBytes {
+	if len(f.buf) > f.o.RowBytes {
 		return errRowTooLong
 	}
 	return nil
@@ -126,6 +126,9 @@ func (f *features) stream(ctx context.Context) error {
 		var raw json.RawMessage
 		if err := f.d.Decode(&raw); err != nil {
 			return err
+		}
+		if len(raw) > f.o.RowBytes { // the guard alone is as coarse as the reads are
+			return errRowTooLong
 		}
 		f.buf = f.buf[:0]
 		if f.st.Rows > 0 {
@@ -193,7 +196,7 @@ func (f *features) fault(err error) error {
 	case errors.As(err, &input):
 		return err
 	case errors.Is(err, errRowTooLong):
-		return &InputError{Pointer: fmt.Sprintf("/features/%d", f.st.Rows), Detail: fmt.Sprintf("a feature or member is longer than %d bytes", MaxRowBytes)}
+		return &InputError{Pointer: fmt.Sprintf("/features/%d", f.st.Rows), Detail: fmt.Sprintf("a feature or member is longer than %d bytes", f.o.RowBytes)}
 	case errors.As(err, &syntax):
 		return &InputError{Line: 1, Detail: fmt.Sprintf("not JSON: %v, at byte %d", syntax, syntax.Offset)}
 	case err == io.EOF || errors.Is(err, io.ErrUnexpectedEOF):

@@ -17,7 +17,7 @@ import (
 func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	w := bufio.NewWriterSize(out, 64<<10)
 	sc := bufio.NewScanner(in)
-	sc.Buffer(make([]byte, 0, 64<<10), MaxRowBytes)
+	sc.Buffer(make([]byte, 0, min(64<<10, o.RowBytes)), o.RowBytes)
 	line := 0
 	read := func(c *chunk[lines]) (more bool, err error) {
 		r := &c.rows
@@ -25,7 +25,7 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 		for len(r.ends) < chunkRows && len(r.text) < chunkBytes {
 			if !sc.Scan() {
 				if err := sc.Err(); errors.Is(err, bufio.ErrTooLong) {
-					return false, badLine(line+1, "the line is longer than %d bytes", MaxRowBytes)
+					return false, badLine(line+1, "the line is longer than %d bytes", o.RowBytes)
 				} else if err != nil {
 					return false, err
 				}

@@ -23,6 +23,7 @@ const (
 	MaxRowBytes   = 1 << 20
 	MaxArray      = 1000
 	MaxArrayBytes = 4 << 20
+	MaxColumns    = 4096 // of a table: short rows are filled up to its width
 )
 
 // Options say where the coordinates are and what to add.
@@ -38,6 +39,11 @@ type Options struct {
 	// Ground, with which ElevationColumn names the ground's height above sea level.
 	DepthUnit, DepthDatum, ElevationColumn string
 	Progress                               func(Stats) // called now and then; may be nil
+	// Slots bounds how many chunks are worked on at once, of all runs that share it:
+	// a place in it is taken for each. No bound where nil.
+	Slots      chan struct{}
+	RowBytes   int   // most bytes of a row, line or feature; MaxRowBytes where 0
+	ArrayBytes int64 // most bytes of a JSON array; MaxArrayBytes where 0
 }
 
 // DefaultPrefix stands before the names of added CSV columns.
@@ -55,6 +61,12 @@ func (o *Options) fill() error {
 	}
 	if !prefixForm.MatchString(o.Prefix) {
 		return &InputError{Parameter: "prefix", Detail: fmt.Sprintf("%q must be a letter and at most 31 letters, digits, '_', '.' or '-'", o.Prefix)}
+	}
+	if o.RowBytes == 0 {
+		o.RowBytes = MaxRowBytes
+	}
+	if o.ArrayBytes == 0 {
+		o.ArrayBytes = MaxArrayBytes
 	}
 	return o.fillDepth()
 }

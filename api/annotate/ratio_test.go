@@ -13,9 +13,9 @@ import (
 	"testing"
 
 	"nearmargin/api/wire"
-	"nearmargin/internal/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/builtin"
+	"nearmargin/testdata/bench/rounds"
 )
 
 // BenchmarkRatio gives how the annotation of a table and of NDJSON compares with

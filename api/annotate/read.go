@@ -84,7 +84,7 @@ func readCSV(in io.Reader, o ReadOptions, each func(Row) error) error {
 	r.Comma, r.FieldsPerRecord, r.LazyQuotes, r.ReuseRecord = rune(j.comma), -1, true, true
 	names, err := r.Read()
 	if err != nil {
-		return csvFault(err)
+		return csvFault(err, MaxRowBytes)
 	}
 	names = slices.Clone(names)
 	if !slices.Contains(names, o.Prefix+"setting") {
@@ -109,7 +109,7 @@ func readCSV(in io.Reader, o ReadOptions, each func(Row) error) error {
 			return nil
 		}
 		if err != nil {
-			return csvFault(err)
+			return csvFault(err, MaxRowBytes)
 		}
 		cell := func(i int) string {
 			if i < 0 || i >= len(rec) {

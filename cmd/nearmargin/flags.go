@@ -28,6 +28,7 @@ type flags struct {
 	databaseWait, databasePoll    time.Duration
 	editions                      int
 	depthKm, uncertaintyKm, ageMa optional
+	serving                       serveConfig
 	build                         buildOptions
 }
 
@@ -116,7 +117,7 @@ func (f *flags) parse(args []string) error {
 		// one flag at a time: what follows it may be a negative number again
 		n := 1
 		if name := strings.TrimLeft(args[0], "-"); !strings.Contains(name, "=") {
-			if fl := f.set.Lookup(name); fl != nil && !isBool(fl) && len(args) > 1 {
+			if fl := f.set.Lookup(name); fl != nil && len(args) > 1 && !isBool(fl) {
 				n = 2
 			}
 		}
@@ -131,7 +132,7 @@ func (f *flags) parse(args []string) error {
 	return nil
 }
 
-// isBool reports whether a flag stands alone.
+// isBool reports whether a flag stands for itself, without a value after it.
 func isBool(fl *flag.Flag) bool {
 	b, ok := fl.Value.(interface{ IsBoolFlag() bool })
 	return ok && b.IsBoolFlag()

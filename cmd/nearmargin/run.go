@@ -50,6 +50,7 @@ var commands = []command{
 	{"model diff", "A B", "tell what changed from one model to another, and by how much", modelDiff, diffFlags},
 	{"migrate", "", "bring a database's schema to the newest version", migrate, migrateFlags},
 	{"model rules", "", "print the rule table", modelRules, nil},
+	{"health", "URL", "ask a service whether it is well; for health checks", health, nil},
 	{"version", "", "print version, commit and model edition", version, nil},
 }
 

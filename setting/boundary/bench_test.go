@@ -8,8 +8,8 @@ import (
 
 	"github.com/golang/geo/s2"
 
-	"nearmargin/internal/rounds"
 	"nearmargin/setting/sphere"
+	"nearmargin/testdata/bench/rounds"
 )
 
 // BenchmarkNearest measures the search on a network of about 5,800 legs: whole

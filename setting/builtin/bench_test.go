@@ -6,9 +6,9 @@ import (
 	"math/rand/v2"
 	"testing"
 
-	"nearmargin/internal/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/sphere"
+	"nearmargin/testdata/bench/rounds"
 )
 
 // sites returns seeded places: anywhere on the sphere, or within 300 km of a

@@ -19,11 +19,11 @@ import (
 	"sync"
 
 	"nearmargin/api/annotate"
-	"nearmargin/internal/rounds"
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/builtin"
 	"nearmargin/setting/sphere"
+	"nearmargin/testdata/bench/rounds"
 )
 
 // series is one line of the plot.

@@ -1,0 +1,70 @@
+package api
+
+import (
+	"errors"
+	"fmt"
+	"time"
+
+	"nearmargin/api/annotate"
+)
+
+// Limits bound what one request and all batches together may take. A zero field
+// stands for the value in DefaultLimits.
+type Limits struct {
+	BodyBytes int64         // of a body that is not streamed: an area, a JSON array
+	RowBytes  int           // of one row, line or feature of a batch
+	Batches   int           // at once
+	BatchTime time.Duration // of one batch, from its header to its end
+	// StallTime is how long a batch may wait for its client in either direction
+	// before it gets on: by progressBytes of its body, or by one write of the answer.
+	StallTime time.Duration
+}
+
+// DefaultLimits are the limits used where none are given.
+var DefaultLimits = Limits{
+	BodyBytes: annotate.MaxArrayBytes,
+	RowBytes:  annotate.MaxRowBytes,
+	Batches:   16,
+	BatchTime: 6 * time.Hour,
+	StallTime: 30 * time.Second,
+}
+
+// progressBytes of a body within StallTime count as progress. A client that
+// sends more slowly is cut off.
+const progressBytes = 1 << 10
+
+// Validate reports every limit that is out of range.
+func (l Limits) Validate() error {
+	var errs []error
+	within := func(name string, x, low, high int64, unit string) {
+		if x < low || x > high {
+			errs = append(errs, fmt.Errorf("%s is %d%s; want %d to %d", name, x, unit, low, high))
+		}
+	}
+	within("max-body-bytes", l.BodyBytes, 1<<10, 256<<20, " bytes")
+	within("max-row-bytes", int64(l.RowBytes), 1<<10, 64<<20, " bytes")
+	within("max-batches", int64(l.Batches), 1, 1000, "")
+	within("batch-timeout", int64(l.BatchTime/time.Second), 1, 7*24*3600, " s")
+	within("stall-timeout", int64(l.StallTime/time.Second), 1, 3600, " s")
+	return errors.Join(errs...)
+}
+
+// fill puts the defaults in place of zeros.
+func (l *Limits) fill() {
+	d := DefaultLimits
+	if l.BodyBytes == 0 {
+		l.BodyBytes = d.BodyBytes
+	}
+	if l.RowBytes == 0 {
+		l.RowBytes = d.RowBytes
+	}
+	if l.Batches == 0 {
+		l.Batches = d.Batches
+	}
+	if l.BatchTime == 0 {
+		l.BatchTime = d.BatchTime
+	}
+	if l.StallTime == 0 {
+		l.StallTime = d.StallTime
+	}
+}

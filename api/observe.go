@@ -1,0 +1,93 @@
+package api
+
+import (
+	"errors"
+	"fmt"
+	"net/http"
+	"runtime/debug"
+	"strconv"
+	"time"
+
+	"github.com/labstack/echo/v4"
+
+	"nearmargin/api/annotate"
+)
+
+// keyRows is the key under which a batch leaves what it counted.
+const keyRows = "rows"
+
+// handleError sends the problem document for an error, once.
+func (s *Server) handleError(err error, c echo.Context) {
+	p := problemOf(err)
+	var meant *Problem
+	if p.Status >= http.StatusInternalServerError && !errors.As(err, &meant) {
+		s.cfg.Log.Error("request failed", "request_id", c.Get(keyRequestID), "path", c.Path(), "error", err)
+	}
+	if c.Response().Committed {
+		return
+	}
+	if p.retryAfter > 0 {
+		c.Response().Header().Set(echo.HeaderRetryAfter, formatSeconds(p.retryAfter))
+	}
+	if err := writeProblem(c, p); err != nil {
+		s.cfg.Log.Warn("problem document not sent", "request_id", c.Get(keyRequestID), "error", err)
+	}
+}
+
+// observe counts and logs a request, and turns a handler's panic into an answer.
+func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
+	return func(c echo.Context) error {
+		start, whole := time.Now(), false
+		defer func() { // also where a handler breaks the answer off
+			s.record(c, whole, time.Since(start))
+		}()
+		if err := s.guarded(next, c); err != nil {
+			c.Error(err)
+		}
+		whole = true
+		return nil
+	}
+}
+
+// guarded calls a handler. A panic becomes an error while nothing has been sent,
+// and breaks the answer off later.
+func (s *Server) guarded(next echo.HandlerFunc, c echo.Context) (err error) {
+	defer func() {
+		p := recover()
+		if p == nil {
+			return
+		}
+		if p == http.ErrAbortHandler {
+			panic(p)
+		}
+		s.metrics.panics.Inc()
+		s.cfg.Log.Error("panic", "request_id", c.Get(keyRequestID), "path", c.Path(), "panic", fmt.Sprint(p), "stack", string(debug.Stack()))
+		if c.Response().Committed {
+			panic(http.ErrAbortHandler)
+		}
+		err = statusProblem(http.StatusInternalServerError)
+	}()
+	return next(c)
+}
+
+// record writes one request to the metrics and the log. It names neither the
+// query nor any header's value but the request's id.
+func (s *Server) record(c echo.Context, whole bool, took time.Duration) {
+	route, status := c.Path(), strconv.Itoa(c.Response().Status)
+	if route == "" || c.Response().Status == http.StatusNotFound && route != "/v1/models/:id" {
+		route = "none"
+	}
+	if !whole {
+		status = "aborted"
+	}
+	s.metrics.request(route, c.Request().Method, status, took)
+	attrs := []any{"request_id", c.Get(keyRequestID), "method", c.Request().Method, "route", route, "status", status,
+		"client", c.RealIP(), "bytes", c.Response().Size, "ms", float64(took.Microseconds()) / 1000}
+	if holder, ok := c.Get(keyHolder).(string); ok {
+		attrs = append(attrs, "token", holder)
+	}
+	if st, ok := c.Get(keyRows).(annotate.Stats); ok {
+		attrs = append(attrs, "rows", st.Rows, "row_errors", st.Errors)
+	}
+	s.cfg.Log.Info("request", attrs...)
+}
