@@ -53,6 +53,7 @@ func (s *Server) BatchesRunning() int { return s.gate.running() }
 // scopes are the routes that need a token, where there are tokens, and its scope.
 var scopes = map[string]access.Scope{
 	"/v1/point": access.Query, "/v1/area": access.Query, "/v1/boundaries": access.Query,
+	"/v1/slabs": access.Query, "/v1/zones": access.Query, "/v1/hotspots": access.Query,
 	"/v1/section": access.Query, "/v1/section.svg": access.Query, "/v1/plates": access.Query,
 	"/v1/models": access.Query, "/v1/models/:id": access.Query, "/v1/annotate": access.Batch,
 }

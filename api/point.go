@@ -1,8 +1,6 @@
 package api
 
 import (
-	"net/http"
-	"strconv"
 	"sync"
 
 	"github.com/labstack/echo/v4"
@@ -44,13 +42,3 @@ type answerRoom struct {
 }
 
 var answerRooms = sync.Pool{New: func() any { return new(answerRoom) }}
-
-// sendBytes sends a small body with its length.
-func sendBytes(c echo.Context, contentType string, body []byte) error {
-	h := c.Response().Header()
-	h.Set(echo.HeaderContentType, contentType)
-	h.Set(echo.HeaderContentLength, strconv.Itoa(len(body)))
-	c.Response().WriteHeader(http.StatusOK)
-	_, err := c.Response().Write(body)
-	return err
-}

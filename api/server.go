@@ -10,6 +10,7 @@ import (
 	"github.com/labstack/echo/v4"
 	"github.com/prometheus/client_golang/prometheus"
 
+	"nearmargin/api/page"
 	"nearmargin/setting"
 )
 
@@ -55,12 +56,17 @@ type Server struct {
 	gate    *gate
 	slots   chan struct{} // for pieces of batches
 	echo    *echo.Echo
+	site    *page.Site
 }
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
+	site, err := page.New(OpenAPI())
+	if err != nil {
+		panic(err) // a file of the program's own
+	}
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New()}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
@@ -71,6 +77,9 @@ func New(cfg Config) *Server {
 		"/v1/point":       s.point,
 		"/v1/area":        s.areaOfBox,
 		"/v1/boundaries":  s.boundaries,
+		"/v1/slabs":       s.slabs,
+		"/v1/zones":       s.zones,
+		"/v1/hotspots":    s.hotspots,
 		"/v1/section":     s.section,
 		"/v1/section.svg": s.sectionSVG,
 		"/v1/plates":      s.plates,
@@ -80,6 +89,9 @@ func New(cfg Config) *Server {
 		"/readyz":         s.ready,
 		"/metrics":        s.metrics.handler(cfg.Registry),
 		"/openapi.json":   s.openapi,
+		"/":               s.page,
+		"/reference":      s.page,
+		"/assets/*":       s.page,
 	} {
 		if path == "/metrics" && cfg.PrivateMetrics {
 			continue

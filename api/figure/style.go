@@ -51,16 +51,22 @@ const classPrefix = "nm-"
 
 // like returns the attributes of a class, with more after them.
 func like(class string, more ...string) attrs {
-	return append(append(attrs{"class", classPrefix + class}, looks[class].attrs...), more...)
+	l, ok := looks[class]
+	if !ok {
+		l = mapLooks[class]
+	}
+	return append(append(attrs{"class", classPrefix + class}, l.attrs...), more...)
 }
 
 // styleSheet turns the figure dark where a screen asks for that. On paper it stays
 // light.
-func styleSheet() string {
+func styleSheet() string { return darkSheet(looks) }
+
+func darkSheet(of map[string]look) string {
 	var b strings.Builder
 	b.WriteString("@media screen and (prefers-color-scheme:dark){")
-	for _, c := range slices.Sorted(maps.Keys(looks)) {
-		b.WriteString("." + classPrefix + c + "{" + looks[c].dark + "}")
+	for _, c := range slices.Sorted(maps.Keys(of)) {
+		b.WriteString("." + classPrefix + c + "{" + of[c].dark + "}")
 	}
 	b.WriteString("}")
 	return b.String()

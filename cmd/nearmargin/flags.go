@@ -20,7 +20,8 @@ type flags struct {
 	listen, out, format, dir      string
 	lonColumn, latColumn          string
 	depthColumn, uncertaintyCol   string
-	prefix                        string
+	prefix, title                 string
+	asJSON                        bool
 	depthUnit, depthDatum         string
 	elevationColumn               string
 	database                      string

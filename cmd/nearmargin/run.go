@@ -39,6 +39,8 @@ var commands = []command{
 	{"point", "LON LAT", "answer for one place, as JSON", point, pointFlags},
 	{"annotate", "[FILE|-]", "add the answer to every row of a CSV, NDJSON or GeoJSON file", annotateFile, annotateFlags},
 	{"section", "LON LAT", "draw the slab along a line through a place, as SVG or JSON", section, sectionFlags},
+	{"map", "FILE|-", "draw an annotated file as a location map, as SVG", drawMap, mapFlags},
+	{"summary", "FILE|-", "count an annotated file by setting, boundary type and distance", summary, summaryFlags},
 	{"model check", "DIR|builtin", "check a model and name the place of every fault", modelCheck, nil},
 	{"model export", "NAME", "write a model as a directory", modelExport, exportFlags},
 	{"model build", "", "build a model directory from published data sets", modelBuild, buildFlags},

@@ -1,0 +1,166 @@
+package figure
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"nearmargin/setting/sphere"
+)
+
+// eastEnd is the end of the equator on a world map.
+var eastEnd = sphere.LonLat{Lon: 180}
+
+func marksOf(line []point, teeth bool) string {
+	var d strings.Builder
+	markAlong(&d, line, 1, teeth)
+	return d.String()
+}
+
+// drawSites draws the markers, those of low confidence open, and the names of not too
+// many, where they find room.
+func (m *locationMap) drawSites() {
+	shapes := map[string]string{}
+	for _, l := range siteLooks {
+		shapes[l.label] = l.shape
+	}
+	var taken [][4]float64
+	place := make([]point, len(m.s.Sites))
+	for i := range m.s.Sites {
+		s := &m.s.Sites[i]
+		p, ok := m.to(s.At)
+		if !ok {
+			continue
+		}
+		place[i] = p
+		taken = append(taken, [4]float64{p.x - 7, p.y - 7, p.x + 7, p.y + 7})
+		m.drawMarker(shapes[s.Label], s.Family, s.Confidence == "low", p)
+	}
+	if len(m.s.Sites) > mostNamed {
+		return
+	}
+	for i := range m.s.Sites {
+		s := &m.s.Sites[i]
+		if s.Name == "" || !m.within(place[i], 0) {
+			continue
+		}
+		w := textWidth(s.Name, smallSize)
+		for _, side := range []struct {
+			x, y   float64
+			anchor string
+			left   float64
+		}{{10, 4, "start", 0}, {-10, 4, "end", -w}, {0, -10, "middle", -w / 2}, {0, 18, "middle", -w / 2}} {
+			p := point{place[i].x + side.x, place[i].y + side.y}
+			box := [4]float64{p.x + side.left, p.y - 10, p.x + side.left + w, p.y + 3}
+			if box[0] < m.x+2 || box[2] > m.x+m.w-2 || overlaps(taken, box) {
+				continue
+			}
+			taken = append(taken, box)
+			m.textAt(s.Name, p.x, p.y, smallSize, side.anchor)
+			break
+		}
+	}
+}
+
+func overlaps(list [][4]float64, b [4]float64) bool {
+	for _, a := range list {
+		if a[0] < b[2] && b[0] < a[2] && a[1] < b[3] && b[1] < a[3] {
+			return true
+		}
+	}
+	return false
+}
+
+// drawMarker draws one marker; an open one stands for low confidence.
+func (m *locationMap) drawMarker(shape, family string, open bool, p point) {
+	at := "translate(" + px(p.x) + " " + px(p.y) + ")"
+	m.leaf("path", like("s-"+family, "d", shape, "transform", at))
+	if open {
+		m.leaf("path", like("bg", "d", shape, "transform", at+" scale(0.5)"))
+	}
+}
+
+// drawBar draws the scale: true at the middle of a regional map, and along the equator
+// of a world map.
+func (m *locationMap) drawBar() {
+	perKm := m.k / sphere.MeanRadiusKm
+	words := ""
+	if _, world := m.proj.(equalEarth); world {
+		right, _, _ := m.proj.at(eastEnd)
+		perKm = right * m.k / (math.Pi * 6378.137)
+		words = " at the equator"
+	}
+	km := 5000.0
+	for _, s := range tickSteps {
+		if s*perKm >= 70 {
+			km = s
+			break
+		}
+	}
+	x1, y := m.x+m.w-14, m.y+m.h-14
+	x0 := x1 - km*perKm
+	bar := []point{{x0, y - 5}, {x0, y}, {x1, y}, {x1, y - 5}}
+	m.leaf("path", like("halo", "d", pathOf(bar, false)))
+	m.leaf("path", like("ground", "d", pathOf(bar, false)))
+	m.textAt(fmt.Sprintf("%g km%s", km, words), x1, y-9, smallSize, "end")
+}
+
+// drawBelow draws the legend and the caption below the frame, and returns the
+// figure's height.
+func (m *locationMap) drawBelow(y float64) float64 {
+	const columns = 3
+	width := float64(figureW-2*marginX) / columns
+	counts, family, low := map[string]int{}, map[string]string{}, 0
+	for i := range m.s.Sites {
+		s := &m.s.Sites[i]
+		counts[s.Label]++
+		family[s.Label] = s.Family
+		if s.Confidence == "low" {
+			low++
+		}
+	}
+	var entries []func(p point)
+	for _, l := range siteLooks {
+		if counts[l.label] == 0 {
+			continue
+		}
+		entries = append(entries, func(p point) {
+			m.drawMarker(l.shape, family[l.label], false, point{p.x + 18, p.y - 4})
+			m.content("text", fmt.Sprintf("%s (%d)", l.words, counts[l.label]), like("ink", "x", px(p.x+44), "y", px(p.y), "font-size", px(textSize)))
+		})
+	}
+	if low > 0 {
+		entries = append(entries, func(p point) {
+			m.drawMarker(shapeCircle, "interior", true, point{p.x + 18, p.y - 4})
+			m.content("text", fmt.Sprintf("Open: low confidence (%d)", low), like("ink", "x", px(p.x+44), "y", px(p.y), "font-size", px(textSize)))
+		})
+	}
+	for _, look := range lineLooks {
+		entries = append(entries, func(p point) {
+			line := []point{{p.x, p.y - 4}, {p.x + 36, p.y - 4}}
+			marks := ""
+			if look.teeth || look.ticks {
+				marks = marksOf(line, look.teeth)
+			}
+			m.drawLine(look, pathOf(line, false), marks)
+			m.content("text", look.words, like("ink", "x", px(p.x+44), "y", px(p.y), "font-size", px(textSize)))
+		})
+	}
+	rows := (len(entries) + columns - 1) / columns
+	for i, draw := range entries {
+		draw(point{marginX + float64(i/rows)*width, y + 24 + float64(i%rows)*19})
+	}
+	y += 24 + float64(rows)*19
+	if m.s.Others > 0 {
+		m.content("text", fmt.Sprintf("Rows without an answer, which are not drawn: %d.", m.s.Others), like("soft", "x", px(marginX), "y", px(y+8), "font-size", px(smallSize)))
+		y += 18
+	}
+	for _, par := range m.s.Caption {
+		for _, l := range wrap(par, smallSize, figureW-2*marginX) {
+			y += smallSize * lineH
+			m.content("text", l, like("soft", "x", px(marginX), "y", px(y), "font-size", px(smallSize)))
+		}
+		y += 4
+	}
+	return math.Ceil(y + marginX/2)
+}

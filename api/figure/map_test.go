@@ -1,0 +1,131 @@
+package figure
+
+import (
+	"bytes"
+	"encoding/xml"
+	"fmt"
+	"io"
+	"math"
+	"os"
+	"os/exec"
+	"strings"
+	"testing"
+
+	"nearmargin/api/page"
+	"nearmargin/setting/sphere"
+)
+
+// TestProjectionsAgainstProj compares both projections with PROJ.
+func TestProjectionsAgainstProj(t *testing.T) {
+	if _, err := exec.LookPath("cct"); err != nil {
+		if os.Getenv("NEARMARGIN_REQUIRE_TOOLS") == "1" {
+			t.Fatal("cct is not installed; on Debian: apt-get install proj-bin")
+		}
+		t.Skip("cct is not installed; on Debian: apt-get install proj-bin")
+	}
+	for name, c := range map[string]struct {
+		p    projection
+		args []string
+	}{
+		"Equal Earth": {equalEarth{}, []string{"+proj=eqearth", "+R=1"}},
+		"azimuthal":   {newAzimuthal(sphere.FromLonLat(sphere.LonLat{Lon: 140, Lat: -35})), []string{"+proj=laea", "+lat_0=-35", "+lon_0=140", "+R=1"}},
+	} {
+		for _, at := range []sphere.LonLat{{Lon: 0, Lat: 0}, {Lon: 139, Lat: -34}, {Lon: 170, Lat: 45}, {Lon: 60.5, Lat: -80.25}, {Lon: 179, Lat: 10}} {
+			cmd := exec.Command("cct", append([]string{"-d", "12"}, c.args...)...)
+			cmd.Stdin = strings.NewReader(fmt.Sprintf("%g %g 0 0\n", at.Lon, at.Lat))
+			out, err := cmd.Output()
+			if err != nil {
+				t.Fatal(err)
+			}
+			var x, y float64
+			if _, err := fmt.Sscan(string(out), &x, &y); err != nil {
+				t.Fatalf("cct gave %q", out)
+			}
+			gx, gy, ok := c.p.at(at)
+			if !ok || math.Abs(gx-x) > 1e-9 || math.Abs(gy-y) > 1e-9 {
+				t.Errorf("%s of %v: %.9f %.9f %v, PROJ gives %.9f %.9f", name, at, gx, gy, ok, x, y)
+			}
+		}
+	}
+}
+
+// TestProjectionsByHand: a place a quarter turn away lies at the square root of 2
+// (Snyder 1987), and the Equal Earth map reaches 2.7066 at the equator (Savric et al.
+// 2019 give a ratio of width to height of 2.05458).
+func TestProjectionsByHand(t *testing.T) {
+	x, y, ok := newAzimuthal(sphere.FromLonLat(sphere.LonLat{Lon: 10})).at(sphere.LonLat{Lon: 100})
+	if !ok || math.Abs(x-math.Sqrt2) > 1e-12 || math.Abs(y) > 1e-12 {
+		t.Errorf("%g %g %v", x, y, ok)
+	}
+	if _, _, ok := newAzimuthal(sphere.FromLonLat(sphere.LonLat{Lon: 10})).at(sphere.LonLat{Lon: -170}); ok {
+		t.Error("the antipode has a place")
+	}
+	w, _, _ := equalEarth{}.at(sphere.LonLat{Lon: 180})
+	_, h, _ := equalEarth{}.at(sphere.LonLat{Lat: 90})
+	if math.Abs(w/h-2.05458) > 1e-5 {
+		t.Errorf("the map is %g wide and %g high", w, h)
+	}
+}
+
+// TestLandAt asks for places whose nature is plain on any map.
+func TestLandAt(t *testing.T) {
+	for _, fine := range []bool{false, true} {
+		land, err := page.Land(fine)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, c := range []struct {
+			name     string
+			lon, lat float64
+			want     bool
+		}{
+			{"Sichuan", 104, 31, true}, {"Sahara", 10, 23, true}, {"near the South Pole", 0, -89, true}, {"East Antarctica", 90, -80, true},
+			{"Chukotka beyond the antimeridian", -175, 67, true}, {"Brazil", -55, -10, true}, {"Alice Springs", 134, -24, true},
+			{"North Pole", 0, 90, false}, {"mid-Pacific", -150, 0, false}, {"Caspian Sea", 51, 42, false}, {"Tasman Sea", 160, -38, false}, {"north of Chukotka", 180, 74, false},
+		} {
+			got := false
+			for _, rings := range land {
+				got = got || landAt(sphere.FromLonLat(sphere.LonLat{Lon: c.lon, Lat: c.lat}), rings)
+			}
+			if got != c.want {
+				t.Errorf("%s (fine %v): land %v", c.name, fine, got)
+			}
+		}
+	}
+}
+
+// TestMapsAreWellFormed draws sites at places that are hard for maps.
+func TestMapsAreWellFormed(t *testing.T) {
+	land, err := page.Land(false)
+	if err != nil {
+		t.Fatal(err)
+	}
+	site := func(lon, lat float64) MapSite {
+		return MapSite{Name: "A & <B>", At: sphere.LonLat{Lon: lon, Lat: lat}, Label: "forearc", Family: "subduction", Confidence: "low"}
+	}
+	for name, sites := range map[string][]MapSite{
+		"one": {site(10, 50)}, "pole": {site(0, 90)}, "antimeridian": {site(179.9, -20), site(-179.9, -19)},
+		"antipodes": {site(0, 0), site(180, 0)}, "world": {site(-70, -30), site(140, 35), site(20, 60)}, "none": nil,
+	} {
+		out := Map(&MapSpec{Title: "T & <t>", Sites: sites, Land: land, Caption: []string{"c"}})
+		d := xml.NewDecoder(bytes.NewReader(out))
+		for {
+			_, err := d.Token()
+			if err == io.EOF {
+				break
+			}
+			if err != nil {
+				t.Fatalf("%s: %v", name, err)
+			}
+		}
+		if bytes.Contains(out, []byte("NaN")) || bytes.Contains(out, []byte("Inf")) {
+			t.Errorf("%s: a number is none", name)
+		}
+		if n := bytes.Count(out, []byte(`class="nm-s-subduction"`)); len(sites) > 0 && n != len(sites)+1 {
+			t.Errorf("%s: %d markers for %d sites and the legend", name, n, len(sites))
+		}
+		if !bytes.Contains(out, []byte("km")) || !bytes.Contains(out, []byte("Spreading ridge")) {
+			t.Errorf("%s lacks scale or legend", name)
+		}
+	}
+}

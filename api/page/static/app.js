@@ -1,0 +1,390 @@
+// The map page: what happens when.
+import { parse, words } from "./coords.js";
+import { byId, el, say } from "./dom.js";
+import { askJSON, AwayError, ProblemError, whenBack } from "./service.js";
+import { Globe } from "./globe.js";
+import { attach } from "./input.js";
+import { platePolygons } from "./plates.js";
+import { palette, strokeLines, types } from "./symbols.js";
+import { labelName, setPlateNames, showAnswer } from "./answer.js";
+import { showArea } from "./area.js";
+import { readFile, showSites } from "./files.js";
+import { read, write } from "./state.js";
+
+const globe = new Globe(byId("globe"));
+const panel = byId("panel");
+let state = read(location.hash);
+let drawing = false;
+let running = null; // the request for the answer that is wanted last
+let lastFile = null;
+
+// settle writes the state into the address.
+let settleTimer = 0;
+function settle(push) {
+  clearTimeout(settleTimer);
+  const hash = write(state);
+  if (hash === location.hash) return;
+  history[push ? "pushState" : "replaceState"](null, "", hash);
+}
+
+globe.onmove = () => {
+  state.view = globe.view;
+  clearTimeout(settleTimer);
+  settleTimer = setTimeout(() => settle(false), 250);
+};
+
+// attempt runs a request for an answer; while the service is away it waits.
+async function attempt(name, f) {
+  running?.abort();
+  const mine = (running = new AbortController());
+  panel.setAttribute("aria-busy", "true");
+  try {
+    await f(mine.signal);
+  } catch (e) {
+    if (e.name === "AbortError" || running !== mine) return;
+    if (e instanceof AwayError) whenBack("answer", () => attempt(name, f));
+    else fault(name, e);
+  } finally {
+    if (running === mine) panel.removeAttribute("aria-busy");
+  }
+}
+
+function fault(name, e) {
+  const p = e instanceof ProblemError ? e.problem : { title: "That did not work" };
+  panel.replaceChildren(el("h2", {}, p.title), el("p", {}, `${name}: ${e.message}`));
+  if (lastFile && name === lastFile.name && /column/.test(e.message)) panel.append(columnForm());
+  say(`${p.title}: ${e.message}`);
+}
+
+function pointQuery() {
+  const q = [`lon=${state.site.lon}`, `lat=${state.site.lat}`];
+  if (state.depth !== "") q.push(`depth_km=${encodeURIComponent(state.depth)}`);
+  if (state.motion) q.push(`motion=${encodeURIComponent(state.motion)}`);
+  return q.join("&");
+}
+
+function askPoint() {
+  const query = pointQuery();
+  return attempt(words(state.site.lon, state.site.lat), async (signal) => {
+    const a = await askJSON(`/v1/point?${query}`, { signal });
+    globe.shown.answer = a;
+    globe.shown.area = null;
+    showAnswer(panel, a, query, query);
+    document.title = `${labelName(a.setting.label)}, ${words(a.site.lon, a.site.lat, 2)} · nearmargin`;
+    say(`${labelName(a.setting.label)} on the ${a.plate.name} plate, confidence ${a.setting.confidence}`);
+    globe.redraw();
+    follow(a);
+  });
+}
+
+// goTo answers for a place; the map comes along where it does not show it.
+function goTo(lon, lat, travel) {
+  state.site = { lon: +lon.toFixed(5), lat: +lat.toFixed(5) };
+  state.area = null;
+  if (travel) globe.look({ lon, lat, zoom: Math.max(globe.view.zoom, 6) });
+  settle(true);
+  return askPoint();
+}
+
+function askArea(polygon) {
+  return attempt("Area", async (signal) => {
+    const a = await askJSON("/v1/area", { method: "POST", headers: { "Content-Type": "application/geo+json" }, body: JSON.stringify(polygon), signal });
+    showArea(panel, a, polygon);
+    globe.shown.answer = null;
+    globe.shown.area = smallSide(polygon);
+    document.title = "Area · nearmargin";
+    say(`Area answered: ${Math.round(a.area_km2)} square kilometres`);
+    globe.redraw();
+  });
+}
+
+// smallSide turns rings so that d3 fills the smaller side of each.
+function smallSide(g) {
+  const turn = (rings) => rings.map((r, i) => ((d3.geoArea({ type: "Polygon", coordinates: [r] }) > 2 * Math.PI) === (i === 0) ? r.slice().reverse() : r));
+  return g.type === "Polygon" ? { type: g.type, coordinates: turn(g.coordinates) } : { type: g.type, coordinates: g.coordinates.map(turn) };
+}
+
+function areaOf(ring) {
+  const polygon = { type: "Polygon", coordinates: [[...ring, ring[0]]] };
+  state.site = null;
+  state.area = ring;
+  settle(true);
+  return askArea(polygon);
+}
+
+// drawing an area
+function setDrawing(on) {
+  drawing = on;
+  globe.shown.draft = [];
+  byId("draw").setAttribute("aria-pressed", String(on));
+  byId("finish").hidden = true;
+  say(on ? "Drawing: choose the corners of the area on the map, then finish" : "");
+  byId("read").textContent = on ? "Choose the corners on the map; Finish area, or F, closes it. Backspace takes the last corner back." : "";
+  globe.redraw();
+}
+
+function corner(at) {
+  globe.shown.draft.push(at.map((v) => +v.toFixed(4)));
+  byId("finish").hidden = globe.shown.draft.length < 3;
+  say(`Corner ${globe.shown.draft.length} at ${words(at[0], at[1], 2)}`);
+  globe.redraw();
+}
+
+function finish() {
+  if (!drawing || globe.shown.draft.length < 3) return;
+  const ring = globe.shown.draft.filter((p, i, all) => !i || p.join() !== all[i - 1].join());
+  setDrawing(false);
+  if (ring.length >= 3) areaOf(ring);
+}
+
+attach(globe, {
+  pick(x, y) {
+    const at = globe.invert(x, y);
+    if (!at) return say("That is beyond the edge of the map");
+    if (drawing) return corner(at);
+    const hit = globe.shown.sites.findLast((s) => s.xy && Math.hypot(s.xy[0] - x, s.xy[1] - y) < 9 * globe.k);
+    byId("read").textContent = "";
+    if (hit) goTo(hit.lon, hit.lat);
+    else goTo(at[0], at[1]);
+  },
+  finish,
+  undo() { if (drawing) { globe.shown.draft.pop(); byId("finish").hidden = globe.shown.draft.length < 3; } },
+  cancel() { if (drawing) setDrawing(false); },
+});
+
+// the form
+function lookUp(from) {
+  const note = byId("read");
+  if (from.error) { note.textContent = `Not understood: ${from.error}.`; byId("where").setAttribute("aria-invalid", "true"); return; }
+  byId("where").removeAttribute("aria-invalid");
+  note.textContent = `Read as ${words(from.lon, from.lat)}${from.sure ? "." : " (latitude first)."}`;
+  if (from.swapped) {
+    note.append(el("button", { type: "button", onclick: () => { lookUp({ ...from.swapped, sure: true }); } }, `Longitude first: ${words(from.swapped.lon, from.swapped.lat, 2)}`));
+  }
+  goTo(from.lon, from.lat, true);
+}
+
+byId("search").addEventListener("submit", (e) => {
+  e.preventDefault();
+  const depth = byId("depth").value.trim().replace(",", ".").replace(/\s*km$/, "");
+  if (depth !== "" && !Number.isFinite(Number(depth))) {
+    byId("read").textContent = `Depth: "${depth}" is not a number of kilometres, such as 25.`;
+    return;
+  }
+  state.depth = depth;
+  state.motion = byId("motion").value;
+  if (byId("where").value.trim() === "" && state.site) { settle(true); askPoint(); return; }
+  lookUp(parse(byId("where").value));
+});
+
+// files
+async function take(file, columns) {
+  const text = file.text ?? (await file.blob.text());
+  lastFile = { name: file.name, text };
+  return attempt(file.name, async () => {
+    say(`Reading ${file.name}`);
+    const got = await readFile(file.name, text, columns);
+    if (got.polygon) {
+      const ring = got.polygon.type === "Polygon" && got.polygon.coordinates.length === 1 ? got.polygon.coordinates[0] : null;
+      fit(got.polygon.coordinates.flat(got.polygon.type === "Polygon" ? 1 : 2).map(([lon, lat]) => ({ lon, lat })));
+      if (ring && ring.length <= 60) return areaOf(ring.slice(0, -1).map((p) => p.slice(0, 2)));
+      return askArea(got.polygon);
+    }
+    globe.shown.answer = globe.shown.area = null;
+    globe.shown.sites = showSites(panel, file.name, got, globe.p.dark, (s) => goTo(s.lon, s.lat, true));
+    state.site = state.area = null;
+    fit(globe.shown.sites);
+    settle(true);
+    say(`${got.sites.length} sites answered`);
+  });
+}
+
+// fit turns the map to where the sites are.
+function fit(sites) {
+  if (!sites.length) return;
+  const many = { type: "MultiPoint", coordinates: sites.map((s) => [s.lon, s.lat]) };
+  const c = d3.geoCentroid(many);
+  if (!c.every(Number.isFinite)) return;
+  const reach = Math.max(...sites.map((s) => d3.geoDistance(c, [s.lon, s.lat])));
+  if (reach > 1.3 && !globe.flat) setFlat(true);
+  globe.look({ lon: c[0], lat: c[1], zoom: globe.flat ? 1 : Math.min(12, 0.9 / Math.max(Math.sin(Math.min(reach, 1.5)), 0.05)) });
+}
+
+function columnForm() {
+  const lon = el("input", { type: "text", id: "lon-column" }), lat = el("input", { type: "text", id: "lat-column" });
+  return el("form", { onsubmit: (e) => { e.preventDefault(); take(lastFile, { lon: lon.value, lat: lat.value }); } },
+    el("p", {}, el("label", { for: "lon-column" }, "Column of longitudes "), lon), el("p", {}, el("label", { for: "lat-column" }, "Column of latitudes "), lat),
+    el("button", { type: "submit" }, "Try again"));
+}
+
+byId("open").addEventListener("click", () => byId("file").click());
+byId("file").addEventListener("change", (e) => {
+  const f = e.target.files[0];
+  if (f) take({ name: f.name, blob: f });
+  e.target.value = "";
+});
+let within = 0;
+const holdsFile = (e) => [...(e.dataTransfer?.types || [])].includes("Files");
+addEventListener("dragenter", (e) => { if (holdsFile(e)) { within++; byId("drop").hidden = false; } });
+addEventListener("dragleave", (e) => { if (holdsFile(e) && --within <= 0) { within = 0; byId("drop").hidden = true; } });
+addEventListener("dragover", (e) => { if (holdsFile(e)) e.preventDefault(); });
+addEventListener("drop", (e) => {
+  within = 0;
+  byId("drop").hidden = true;
+  const f = e.dataTransfer?.files[0];
+  if (!f) return;
+  e.preventDefault();
+  take({ name: f.name, blob: f });
+});
+
+// tools
+function setFlat(on) {
+  state.flat = globe.flat = on;
+  byId("flat").setAttribute("aria-pressed", String(on));
+  globe.redraw();
+}
+byId("zoom-in").addEventListener("click", () => globe.zoomBy(1.6));
+byId("zoom-out").addEventListener("click", () => globe.zoomBy(1 / 1.6));
+byId("flat").addEventListener("click", () => { setFlat(!globe.flat); settle(false); });
+byId("draw").addEventListener("click", () => setDrawing(!drawing));
+byId("finish").addEventListener("click", finish);
+byId("share").addEventListener("click", async () => {
+  settle(false);
+  try {
+    await navigator.clipboard.writeText(location.href);
+    byId("read").textContent = "The link is copied; it shows what you see.";
+  } catch {
+    byId("read").textContent = "Copy the link from the address bar; it shows what you see.";
+  }
+});
+
+// layers
+const layerPaths = { slabs: "/v1/slabs", zones: "/v1/zones", hotspots: "/v1/hotspots" };
+async function needLayer(name) {
+  if (!layerPaths[name] || globe.data[name]) return;
+  try {
+    const got = (await askJSON(layerPaths[name])).features;
+    globe.data[name] = name === "zones" ? got.map((f) => ({ ...f, geometry: smallSide(f.geometry) })) : got;
+    globe.redraw();
+  } catch (e) {
+    if (e instanceof AwayError) whenBack(name, () => needLayer(name));
+    else throw e;
+  }
+}
+function setLayers(layers) {
+  state.layers = globe.layers = layers;
+  for (const box of document.querySelectorAll("#legend input")) box.checked = layers.has(box.name);
+  for (const name of layers) needLayer(name);
+  globe.redraw();
+}
+byId("legend").addEventListener("change", () => {
+  setLayers(new Set([...document.querySelectorAll("#legend input:checked")].map((b) => b.name)));
+  settle(false);
+});
+
+// key draws the legend's samples.
+function key() {
+  const p = palette();
+  byId("key").replaceChildren(...Object.values(types).map((look) => {
+    const c = el("canvas", { width: 104, height: 36, "aria-hidden": "true" }), ctx = c.getContext("2d");
+    ctx.scale(2, 2);
+    strokeLines(ctx, [[[2, 11], [50, 11]]], look, p, 1, 1);
+    return el("li", {}, c, look.name);
+  }), ...otherKeys(p));
+}
+
+// otherKeys draws the samples of what is not a boundary.
+function otherKeys(p) {
+  const line = (ctx, colour, width, dash = []) => {
+    ctx.strokeStyle = colour;
+    ctx.lineWidth = width;
+    ctx.setLineDash(dash);
+    ctx.beginPath();
+    ctx.moveTo(2, 9);
+    ctx.lineTo(50, 9);
+    ctx.stroke();
+  };
+  return [
+    ["Slab contour, km", (ctx) => line(ctx, p.slab, 1)],
+    ["Diffuse zone (hatched)", (ctx) => line(ctx, p.zone, 1, [2, 2])],
+    ["Hotspot", (ctx) => { ctx.fillStyle = p.hot; ctx.beginPath(); ctx.arc(26, 9, 3.2, 0, 7); ctx.fill(); }],
+    ["To the nearest boundary", (ctx) => line(ctx, p.mark, 1.8)],
+    ["To the controlling one", (ctx) => line(ctx, p.mark, 1.8, [7, 4])],
+    ["Motion of the plate across, 1σ at its tip", (ctx) => { line(ctx, p.ink, 2); ctx.fillStyle = p.ink; ctx.beginPath(); ctx.moveTo(51, 9); ctx.lineTo(43, 5); ctx.lineTo(43, 13); ctx.fill(); }],
+  ].map(([name, draw]) => {
+    const c = el("canvas", { width: 104, height: 36, "aria-hidden": "true" }), ctx = c.getContext("2d");
+    ctx.scale(2, 2);
+    draw(ctx);
+    return el("li", {}, c, name);
+  });
+}
+matchMedia("(prefers-color-scheme: dark)").addEventListener("change", key);
+
+// loading: each part by itself, so that one which is slow or lost holds up no other
+async function load(name, f) {
+  try {
+    await f();
+    globe.redraw();
+  } catch (e) {
+    if (e instanceof AwayError) whenBack(name, () => load(name, f));
+    else throw e;
+  }
+}
+const landOf = async (file) => {
+  const t = await askJSON(`/assets/vendor/${file}`);
+  return topojson.feature(t, t.objects.land);
+};
+
+// loadModel fetches what the map shows of the active model.
+let shownModel = "";
+async function loadModel() {
+  const [lines, plates, models] = await Promise.all([askJSON("/v1/boundaries"), askJSON("/v1/plates"), askJSON("/v1/models")]);
+  const names = new Map(plates.plates.map((p) => [p.code, p.name]));
+  setPlateNames(names);
+  shownModel = plates.model.sha256;
+  globe.data.boundaries = lines.features;
+  globe.data.plates = platePolygons(lines, names);
+  const active = models.models.find((m) => m.active);
+  byId("motion").replaceChildren(el("option", { value: "" }, active.default_motion), ...active.motion_models.filter((m) => m.name !== active.default_motion).map((m) => el("option", { value: m.name }, m.name)));
+  byId("motion").value = state.motion;
+  if (globe.shown.answer && state.site) showAnswer(panel, globe.shown.answer, pointQuery(), pointQuery()); // with the plates' names
+}
+
+// follow fetches the model again where an answer comes from another edition than the
+// map shows.
+function follow(a) {
+  if (!shownModel || a.model.sha256 === shownModel) return;
+  shownModel = "";
+  for (const name of Object.keys(layerPaths)) globe.data[name] = null;
+  load("model", loadModel);
+  for (const name of state.layers) needLayer(name);
+}
+
+// show brings the page to a state, as at the start and when going back.
+function show(s) {
+  state = s;
+  Object.assign(globe, { view: s.view, flat: s.flat });
+  byId("flat").setAttribute("aria-pressed", String(s.flat));
+  byId("depth").value = s.depth;
+  byId("motion").value = s.motion;
+  setLayers(s.layers);
+  if (s.site) askPoint();
+  else if (s.area) askArea({ type: "Polygon", coordinates: [[...s.area, s.area[0]]] });
+  else { globe.shown.answer = globe.shown.area = null; globe.redraw(); }
+}
+
+async function start() {
+  key();
+  byId("legend").open = matchMedia("(min-width: 1700px)").matches;
+  show(state);
+  addEventListener("popstate", () => show(read(location.hash)));
+  addEventListener("hashchange", () => { if (location.hash !== write(state)) show(read(location.hash)); });
+  await Promise.all([
+    load("land", async () => { globe.data.land = await landOf("land-110m.json"); }),
+    load("model", loadModel),
+  ]);
+  document.documentElement.dataset.ready = "yes";
+  load("fine land", async () => { globe.data.fine = await landOf("land-50m.json"); });
+}
+
+start();

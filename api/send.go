@@ -1,0 +1,74 @@
+package api
+
+import (
+	"bytes"
+	"compress/gzip"
+	"crypto/sha256"
+	"encoding/hex"
+	"net/http"
+	"strconv"
+	"strings"
+
+	"github.com/labstack/echo/v4"
+
+	"nearmargin/api/page"
+)
+
+// leastGzip is the length from which a body is worth compressing.
+const leastGzip = 4 << 10
+
+// How long an answer may be kept: one for a named edition does not change, any
+// other changes with the active edition and is asked about before each use.
+const (
+	cacheEdition = "public, max-age=86400"
+	cacheActive  = "no-cache"
+)
+
+// sendBytes sends a small body with its length. What GET asked for gets an entity
+// tag, which a client that holds the same body already is told; a long body is
+// compressed for a client that takes gzip.
+func sendBytes(c echo.Context, contentType string, body []byte) error {
+	r, h := c.Request(), c.Response().Header()
+	h.Set(echo.HeaderContentType, contentType)
+	if r.Method == http.MethodGet || r.Method == http.MethodHead {
+		sum := sha256.Sum256(body)
+		etag := `W/"` + hex.EncodeToString(sum[:12]) + `"`
+		h.Set("ETag", etag)
+		h.Set(echo.HeaderCacheControl, cacheActive)
+		if strings.Contains(r.URL.RawQuery, "model=") && strings.Contains(r.URL.Query().Get("model"), "@") {
+			h.Set(echo.HeaderCacheControl, cacheEdition)
+		}
+		if page.Matches(r.Header.Get("If-None-Match"), etag) {
+			h.Del(echo.HeaderContentType)
+			c.Response().WriteHeader(http.StatusNotModified)
+			return nil
+		}
+	}
+	if len(body) >= leastGzip {
+		h.Add(echo.HeaderVary, echo.HeaderAcceptEncoding)
+		if page.TakesGzip(r.Header.Get(echo.HeaderAcceptEncoding)) {
+			packed, err := pack(body)
+			if err != nil {
+				return err
+			}
+			body = packed
+			h.Set(echo.HeaderContentEncoding, "gzip")
+		}
+	}
+	h.Set(echo.HeaderContentLength, strconv.Itoa(len(body)))
+	c.Response().WriteHeader(http.StatusOK)
+	_, err := c.Response().Write(body)
+	return err
+}
+
+func pack(body []byte) ([]byte, error) {
+	var b bytes.Buffer
+	z := gzip.NewWriter(&b)
+	if _, err := z.Write(body); err != nil {
+		return nil, err
+	}
+	if err := z.Close(); err != nil {
+		return nil, err
+	}
+	return b.Bytes(), nil
+}
