@@ -10,7 +10,7 @@ import (
 	"testing"
 )
 
-// TestRecipes runs every script of docs/integrating.md in a folder with a table of
+// TestRecipes runs every script of api/INTEGRATING.md in a folder with a table of
 // 1,000 rows. What follows "# →" must stand in what it prints, in that order.
 func TestRecipes(t *testing.T) {
 	for _, tool := range []string{"sh", "curl", "split", "xargs", "awk"} {
@@ -18,7 +18,7 @@ func TestRecipes(t *testing.T) {
 			t.Skipf("%s is not installed", tool)
 		}
 	}
-	raw, err := os.ReadFile(filepath.Join(root, "docs", "integrating.md"))
+	raw, err := os.ReadFile(filepath.Join(root, "api", "INTEGRATING.md"))
 	if err != nil {
 		t.Fatal(err)
 	}
