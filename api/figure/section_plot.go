@@ -250,6 +250,9 @@ func (f *sectionFigure) drawArcBar(marks ...float64) {
 			break
 		}
 	}
+	if at.left < marginX+axisW { // the labels of depths stand there; the legend names the band as well
+		return
+	}
 	f.label(at, f.y.at-3)
 }
 

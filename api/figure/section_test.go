@@ -185,7 +185,7 @@ func TestFiguresOfAnySite(t *testing.T) {
 		drawn++
 		checkFigure(t, Section(s))
 	})
-	if drawn < 50 {
+	if drawn < 50 && !testing.Short() { // rapid draws fewer in short mode
 		t.Errorf("only %d figures", drawn)
 	}
 }

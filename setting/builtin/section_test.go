@@ -61,7 +61,7 @@ func TestSectionsAgreeWithAt(t *testing.T) {
 		cut[s.Slab.ID] = true
 		checkSection(t, l, s)
 	})
-	if len(cut) < 20 {
+	if len(cut) < 20 && !testing.Short() { // rapid draws fewer in short mode
 		t.Errorf("only %d slabs were cut: too few to prove anything", len(cut))
 	}
 }
