@@ -28,6 +28,7 @@ type flags struct {
 	editions                      int
 	depthKm, uncertaintyKm, ageMa optional
 	build                         buildOptions
+	enrich                        enrichOptions
 }
 
 // optional is a number that may be absent.
@@ -115,7 +116,7 @@ func (f *flags) parse(args []string) error {
 		// one flag at a time: what follows it may be a negative number again
 		n := 1
 		if name := strings.TrimLeft(args[0], "-"); !strings.Contains(name, "=") {
-			if fl := f.set.Lookup(name); fl != nil && len(args) > 1 {
+			if fl := f.set.Lookup(name); fl != nil && len(args) > 1 && !isSwitch(fl) {
 				n = 2
 			}
 		}
@@ -129,6 +130,22 @@ func (f *flags) parse(args []string) error {
 	}
 	return nil
 }
+
+// isSwitch reports whether a flag stands alone, without a value.
+func isSwitch(fl *flag.Flag) bool {
+	b, ok := fl.Value.(interface{ IsBoolFlag() bool })
+	return ok && b.IsBoolFlag()
+}
+
+// typed reports whether a flag stands among the arguments.
+func (f *flags) typed(name string) bool {
+	found := false
+	f.set.Visit(func(fl *flag.Flag) { found = found || fl.Name == name })
+	return found
+}
+
+// given reports whether a flag stands among the arguments or in the environment.
+func (f *flags) given(name string) bool { return f.typed(name) || f.env(envName(name)) != "" }
 
 // usage prints the command's flags.
 func (f *flags) usage() {
