@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"io"
 	"strings"
+	"time"
 
 	"github.com/jackc/pgx/v5"
 )
@@ -75,13 +76,8 @@ func (n *enrichNames) list(prefix string) string {
 // on with the last one.
 func (e *enrichment) prepare(ctx context.Context) error {
 	n := e.names
-	var alone bool
-	const lock = `SELECT pg_try_advisory_lock(hashtextextended('nearmargin into ' || $1, 0))`
-	if err := e.writer.QueryRow(ctx, lock, n.target).Scan(&alone); err != nil {
+	if err := e.lock(ctx); err != nil {
 		return err
-	}
-	if !alone {
-		return &Error{Op: "annotate into", Ref: e.spec.Target, Kind: ErrEnrichRunning}
 	}
 	return pgx.BeginFunc(ctx, e.writer, func(tx pgx.Tx) error {
 		columns := ""
@@ -110,6 +106,27 @@ func (e *enrichment) prepare(ctx context.Context) error {
 		_, err := tx.Exec(ctx, stage)
 		return err
 	})
+}
+
+// lockPatience is how long to wait for the lock: the server may take a moment to see
+// that the run before was killed.
+const lockPatience = 3 * time.Second
+
+// lock takes the target's lock, which the session holds to its end.
+func (e *enrichment) lock(ctx context.Context) error {
+	const try = `SELECT pg_try_advisory_lock(hashtextextended('nearmargin into ' || $1, 0))`
+	for end := time.Now().Add(lockPatience); ; {
+		var alone bool
+		if err := e.writer.QueryRow(ctx, try, e.names.target).Scan(&alone); alone || err != nil {
+			return err
+		}
+		if time.Now().After(end) {
+			return &Error{Op: "annotate into", Ref: e.spec.Target, Kind: ErrEnrichRunning}
+		}
+		if err := sleep(ctx, lockPatience/20); err != nil {
+			return err
+		}
+	}
 }
 
 // checkTarget refuses a table that is not one of answers by this key.
