@@ -391,6 +391,19 @@ func TestEnrichRefuses(t *testing.T) {
 	}
 }
 
+// TestEnrichReadsAView has no index to tell that the key is unique.
+func TestEnrichReadsAView(t *testing.T) {
+	url, conn := plain(t, thousand, `CREATE VIEW deep AS SELECT id * 2 AS nr, geom FROM wells`)
+	s := spec()
+	s.Source, s.Key = "deep", "nr"
+	if r, err := Enrich(context.Background(), url, s); err != nil || r.Rows != 1000 {
+		t.Fatalf("%+v, %v", r, err)
+	}
+	if got := lines(t, conn, `SELECT max(nr)::text FROM out`); got[0] != "2000" {
+		t.Errorf("the last key is %s", got[0])
+	}
+}
+
 func TestEnrichNames(t *testing.T) {
 	url, conn := plain(t, `CREATE SCHEMA "Odd.Schema"`, `CREATE TABLE "Odd.Schema"."We""lls" ("The Key" int PRIMARY KEY, "sh""ape" geometry, "depth'" text)`,
 		`INSERT INTO "Odd.Schema"."We""lls" VALUES (1, 'SRID=4326;POINT(1 2)', '7')`)

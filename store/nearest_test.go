@@ -184,3 +184,21 @@ func TestNearestOfNothing(t *testing.T) {
 		t.Error("a line is taken for a point")
 	}
 }
+
+// TestNearestNeedsSelectOnly calls the function with the rights of the service.
+func TestNearestNeedsSelectOnly(t *testing.T) {
+	url, _ := active(t, "1")
+	storetest.Exec(t, url, `CREATE ROLE asks_only LOGIN PASSWORD 'x'`)
+	t.Cleanup(func() { storetest.Exec(t, url, `DROP OWNED BY asks_only`); storetest.Exec(t, url, `DROP ROLE asks_only`) })
+	conn := storetest.Conn(t, storetest.As(t, url, "asks_only", "x"))
+	const ask = `SELECT count(*) FROM nearmargin.nearest('POINT(1 2)'::geography)`
+	var n int
+	if err := conn.QueryRow(context.Background(), ask).Scan(&n); err == nil {
+		t.Error("a role without rights is answered")
+	}
+	storetest.Exec(t, url, `GRANT USAGE ON SCHEMA nearmargin TO asks_only`)
+	storetest.Exec(t, url, `GRANT SELECT ON ALL TABLES IN SCHEMA nearmargin TO asks_only`)
+	if err := conn.QueryRow(context.Background(), ask).Scan(&n); err != nil || n != 1 {
+		t.Errorf("%d rows, %v", n, err)
+	}
+}
