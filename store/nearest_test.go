@@ -189,7 +189,10 @@ func TestNearestOfNothing(t *testing.T) {
 func TestNearestNeedsSelectOnly(t *testing.T) {
 	url, _ := active(t, "1")
 	storetest.Exec(t, url, `CREATE ROLE asks_only LOGIN PASSWORD 'x'`)
-	t.Cleanup(func() { storetest.Exec(t, url, `DROP OWNED BY asks_only`); storetest.Exec(t, url, `DROP ROLE asks_only`) })
+	t.Cleanup(func() {
+		storetest.Exec(t, url, `DROP OWNED BY asks_only`)
+		storetest.Exec(t, url, `DROP ROLE asks_only`)
+	})
 	conn := storetest.Conn(t, storetest.As(t, url, "asks_only", "x"))
 	const ask = `SELECT count(*) FROM nearmargin.nearest('POINT(1 2)'::geography)`
 	var n int
