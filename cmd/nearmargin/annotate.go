@@ -18,6 +18,7 @@ import (
 func annotateFlags(f *flags) {
 	f.modelFlag()
 	f.motionFlags()
+	enrichFlags(f)
 	f.set.StringVar(&f.out, "out", "", "output `file`; standard output where empty")
 	f.set.StringVar(&f.format, "format", "", "`csv`, ndjson or geojson; after the file's ending where empty")
 	f.set.StringVar(&f.lonColumn, "lon-column", "", "`column` of longitudes; found by name where empty")
@@ -56,8 +57,11 @@ func (f *flags) annotateFormat(file string) (annotate.Format, error) {
 	return g, nil
 }
 
-// annotateFile annotates a file.
+// annotateFile annotates a file, or a table where one is named.
 func annotateFile(p *program, ctx context.Context, f *flags) error {
+	if f.wantsTable() {
+		return annotateTable(p, ctx, f)
+	}
 	if err := f.wantArgs(0, 1); err != nil {
 		return err
 	}

@@ -30,6 +30,7 @@ type flags struct {
 	depthKm, uncertaintyKm, ageMa optional
 	serving                       serveConfig
 	build                         buildOptions
+	enrich                        enrichOptions
 }
 
 // optional is a number that may be absent.
@@ -137,6 +138,16 @@ func isBool(fl *flag.Flag) bool {
 	b, ok := fl.Value.(interface{ IsBoolFlag() bool })
 	return ok && b.IsBoolFlag()
 }
+
+// typed reports whether a flag stands among the arguments.
+func (f *flags) typed(name string) bool {
+	found := false
+	f.set.Visit(func(fl *flag.Flag) { found = found || fl.Name == name })
+	return found
+}
+
+// given reports whether a flag stands among the arguments or in the environment.
+func (f *flags) given(name string) bool { return f.typed(name) || f.env(envName(name)) != "" }
 
 // usage prints the command's flags.
 func (f *flags) usage() {

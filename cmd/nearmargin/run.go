@@ -37,7 +37,7 @@ type command struct {
 var commands = []command{
 	{"serve", "", "answer over HTTP", serve, serveFlags},
 	{"point", "LON LAT", "answer for one place, as JSON", point, pointFlags},
-	{"annotate", "[FILE|-]", "add the answer to every row of a CSV, NDJSON or GeoJSON file", annotateFile, annotateFlags},
+	{"annotate", "[FILE|-]", "add the answer to every row of a CSV, NDJSON or GeoJSON file, or of a table in PostGIS", annotateFile, annotateFlags},
 	{"section", "LON LAT", "draw the slab along a line through a place, as SVG or JSON", section, sectionFlags},
 	{"map", "FILE|-", "draw an annotated file as a location map, as SVG", drawMap, mapFlags},
 	{"summary", "FILE|-", "count an annotated file by setting, boundary type and distance", summary, summaryFlags},
