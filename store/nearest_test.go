@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"github.com/jackc/pgx/v5"
@@ -14,15 +15,18 @@ import (
 	"nearmargin/store/storetest"
 )
 
-// active makes a database with editions of the built-in model, the first active.
+// active makes a database with editions of the built-in model, activated from the last
+// to the first.
 func active(t testing.TB, editions ...string) (url string, s *Store) {
 	t.Helper()
 	url = migrated(t)
 	for _, e := range editions {
 		s = imported(t, url, model(t, e))
 	}
-	if err := s.Activate(context.Background(), "builtin@"+editions[0]); err != nil {
-		t.Fatal(err)
+	for _, e := range slices.Backward(editions) {
+		if err := s.Activate(context.Background(), "builtin@"+e); err != nil {
+			t.Fatal(err)
+		}
 	}
 	return url, s
 }
@@ -102,7 +106,7 @@ func TestNearestEqualsTheService(t *testing.T) {
 	if testing.Short() {
 		points = 1000
 	}
-	url, s := active(t, "1", "2") // a second edition, never active, must not be met
+	url, s := active(t, "1", "2") // the second was active and is no more
 	b, err := s.Load(context.Background(), "builtin@1")
 	if err != nil {
 		t.Fatal(err)
