@@ -52,24 +52,7 @@ func AppendAnswer(b []byte, a *setting.Answer) []byte {
 	} else {
 		o.b = append(o.b, "null"...)
 	}
-	o.key("model")
-	m := open(o.b)
-	m.str("id", a.Model.ID())
-	m.str("edition", a.Model.Edition())
-	m.str("sha256", a.Model.SHA256())
-	o.b = m.close()
-	o.key("notes")
-	o.b = append(o.b, '[')
-	for i, n := range a.Notes.All() {
-		if i > 0 {
-			o.b = append(o.b, ',')
-		}
-		note := open(o.b)
-		note.str("code", string(n.Code))
-		note.str("detail", n.Text())
-		o.b = note.close()
-	}
-	o.b = append(o.b, ']')
+	o.foot(a.Model, a.Notes.All())
 	return o.close()
 }
 

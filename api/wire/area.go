@@ -43,17 +43,7 @@ func AppendArea(b []byte, a *setting.AreaAnswer) []byte {
 	})
 	o.key("sampling")
 	o.b = appendSampling(o.b, &a.Sampling)
-	o.key("model")
-	m := open(o.b)
-	m.str("id", a.Model.ID())
-	m.str("edition", a.Model.Edition())
-	m.str("sha256", a.Model.SHA256())
-	o.b = m.close()
-	o.key("notes")
-	o.b = appendList(o.b, a.Notes.All(), func(p *object, n *setting.Note) {
-		p.str("code", string(n.Code))
-		p.str("detail", n.Text())
-	})
+	o.foot(a.Model, a.Notes.All())
 	return o.close()
 }
 

@@ -48,24 +48,7 @@ func AppendSection(b []byte, s *setting.Section) []byte {
 		o.b = p.close()
 	}
 	o.b = append(o.b, ']')
-	o.key("model")
-	m := open(o.b)
-	m.str("id", s.Model.ID())
-	m.str("edition", s.Model.Edition())
-	m.str("sha256", s.Model.SHA256())
-	o.b = m.close()
-	o.key("notes")
-	o.b = append(o.b, '[')
-	for i, n := range s.Notes.All() {
-		if i > 0 {
-			o.b = append(o.b, ',')
-		}
-		note := open(o.b)
-		note.str("code", string(n.Code))
-		note.str("detail", n.Text())
-		o.b = note.close()
-	}
-	o.b = append(o.b, ']')
+	o.foot(s.Model, s.Notes.All())
 	return o.close()
 }
 
