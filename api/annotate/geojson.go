@@ -27,6 +27,7 @@ type features struct {
 func annotateGeoJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	g := &guard{r: in, limit: int64(o.RowBytes)}
 	f := &features{asker: asker{o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
+	f.d.UseNumber() // a number beyond float64 is still a number
 	if err := f.run(ctx); err != nil {
 		return f.st, f.fault(err)
 	}
