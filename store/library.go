@@ -14,7 +14,7 @@ import (
 	"nearmargin/setting"
 )
 
-// The defaults of a [LibraryConfig].
+// The defaults of a [Config].
 const (
 	DefaultKeep       = 3
 	DefaultPoll       = 30 * time.Second
@@ -26,8 +26,8 @@ const (
 // leads nowhere any more is noticed.
 const askTimeout = 15 * time.Second
 
-// LibraryConfig says where a library loads from and how it follows.
-type LibraryConfig struct {
+// Config says where a library loads from and how it follows.
+type Config struct {
 	URL string
 	// Keep is how many of the editions that were activated last stay loaded, the active
 	// one among them; each model's active edition stays besides. Default: DefaultKeep.
@@ -43,9 +43,9 @@ type LibraryConfig struct {
 	Log                    *slog.Logger // needed
 }
 
-func (c LibraryConfig) withDefaults() (LibraryConfig, error) {
+func (c Config) withDefaults() (Config, error) {
 	if c.Log == nil {
-		return c, errors.New("store: LibraryConfig.Log is missing")
+		return c, errors.New("store: Config.Log is missing")
 	}
 	if c.Keep < 0 || c.Poll < 0 || c.Wait < 0 {
 		return c, fmt.Errorf("store: Keep %d, Poll %v and Wait %v must not be negative", c.Keep, c.Poll, c.Wait)
@@ -68,7 +68,7 @@ func (c LibraryConfig) withDefaults() (LibraryConfig, error) {
 // Library holds editions in memory and follows which are active. Its methods may be
 // called at once from anywhere; none but Open and Run touches the database.
 type Library struct {
-	cfg       LibraryConfig
+	cfg       Config
 	shelf     atomic.Pointer[shelf]
 	condition atomic.Pointer[condition]
 	again     chan struct{}
@@ -88,7 +88,7 @@ type shelf struct {
 // Open loads the active edition and those to keep. The error is an ErrUnavailable
 // where the database does not answer within the time to wait, an ErrNoSchema, an
 // ErrNothingActive, an ErrNoRights, or an ErrCorrupt.
-func Open(ctx context.Context, cfg LibraryConfig) (*Library, error) {
+func Open(ctx context.Context, cfg Config) (*Library, error) {
 	cfg, err := cfg.withDefaults()
 	if err != nil {
 		return nil, err

@@ -26,7 +26,7 @@ var (
 var quiet = slog.New(slog.NewTextHandler(io.Discard, nil))
 
 // library opens a library and follows until the test ends.
-func library(t testing.TB, url string, cfg LibraryConfig) *Library {
+func library(t testing.TB, url string, cfg Config) *Library {
 	t.Helper()
 	cfg.URL, cfg.Log = url, quiet
 	cfg.BackoffMin, cfg.BackoffMax = 20*time.Millisecond, 200*time.Millisecond
@@ -88,7 +88,7 @@ func TestLibraryFollowsNotifications(t *testing.T) {
 	url := migrated(t)
 	imported(t, url, model(t, "1"), model(t, "2"), model(t, "3"))
 	activate(t, url, "builtin@1")
-	l := library(t, url, LibraryConfig{Poll: time.Hour, Keep: 2})
+	l := library(t, url, Config{Poll: time.Hour, Keep: 2})
 	for _, step := range []struct{ activate, loaded string }{
 		{"builtin@2", "builtin@2 builtin@1"},
 		{"builtin@3", "builtin@3 builtin@2"},
@@ -116,7 +116,7 @@ func TestLibraryPollsToo(t *testing.T) {
 	url := migrated(t)
 	imported(t, url, model(t, "1"), model(t, "2"))
 	activate(t, url, "builtin@1")
-	l := library(t, url, LibraryConfig{Poll: 50 * time.Millisecond})
+	l := library(t, url, Config{Poll: 50 * time.Millisecond})
 	storetest.Exec(t, url, `ALTER TABLE nearmargin.activations DISABLE TRIGGER tell`)
 	activate(t, url, "builtin@2")
 	waitFor(t, "the poll", func() bool { return l.Active().Ref() == "builtin@2" })
@@ -129,7 +129,7 @@ func TestLibraryRefreshesWhenTold(t *testing.T) {
 	url := migrated(t)
 	imported(t, url, model(t, "1"), model(t, "2"))
 	activate(t, url, "builtin@1")
-	l := library(t, url, LibraryConfig{Poll: time.Hour})
+	l := library(t, url, Config{Poll: time.Hour})
 	storetest.Exec(t, url, `ALTER TABLE nearmargin.activations DISABLE TRIGGER tell`)
 	activate(t, url, "builtin@2")
 	waitFor(t, "what it was told to look for", func() bool {
@@ -144,7 +144,7 @@ func TestLibraryKeepsAnsweringThroughAnOutage(t *testing.T) {
 	server, url := storetest.Get(t), migrated(t)
 	imported(t, url, model(t, "1"), model(t, "2"))
 	activate(t, url, "builtin@1")
-	l := library(t, url, LibraryConfig{Poll: time.Second})
+	l := library(t, url, Config{Poll: time.Second})
 	waitFor(t, "it to be well", func() bool { since, _ := l.Degraded(); return since.IsZero() })
 	want := answer(t, l.Active())
 
@@ -195,7 +195,7 @@ func TestLibraryKeepsTheOldWhereTheNewIsCorrupt(t *testing.T) {
 	url := migrated(t)
 	imported(t, url, model(t, "1"), model(t, "2"))
 	activate(t, url, "builtin@1")
-	l := library(t, url, LibraryConfig{Poll: time.Hour})
+	l := library(t, url, Config{Poll: time.Hour})
 	storetest.Exec(t, url, `UPDATE nearmargin.boundaries SET sigma_km = 99 FROM nearmargin.editions e WHERE e.edition_id = boundaries.edition_id AND edition = '2'`)
 	storetest.Exec(t, url, `INSERT INTO nearmargin.activations (edition_id) SELECT edition_id FROM nearmargin.editions WHERE edition = '2'`)
 	waitFor(t, "it to be noticed", func() bool { since, _ := l.Degraded(); return !since.IsZero() })
@@ -204,7 +204,7 @@ func TestLibraryKeepsTheOldWhereTheNewIsCorrupt(t *testing.T) {
 	}
 	activate(t, url, "builtin@1")
 	waitFor(t, "recovery", func() bool { since, _ := l.Degraded(); return since.IsZero() })
-	if _, err := Open(context.Background(), LibraryConfig{URL: url, Log: quiet, Keep: 2}); err != nil {
+	if _, err := Open(context.Background(), Config{URL: url, Log: quiet, Keep: 2}); err != nil {
 		t.Errorf("a corrupt edition that is kept besides the active one stops the start: %v", err)
 	}
 }
@@ -220,11 +220,11 @@ func TestOpenSaysWhyItCannot(t *testing.T) {
 		"no schema":      {server.Empty(t), ErrNoSchema},
 		"nothing active": {unused, ErrNothingActive},
 	} {
-		if _, err := Open(ctx, LibraryConfig{URL: c.url, Log: quiet}); !errors.Is(err, c.want) {
+		if _, err := Open(ctx, Config{URL: c.url, Log: quiet}); !errors.Is(err, c.want) {
 			t.Errorf("%s: %v, want %v", name, err, c.want)
 		}
 	}
-	for name, cfg := range map[string]LibraryConfig{
+	for name, cfg := range map[string]Config{
 		"no log": {URL: unused}, "negative": {URL: unused, Log: quiet, Keep: -1},
 	} {
 		if _, err := Open(ctx, cfg); err == nil {
@@ -245,7 +245,7 @@ func TestOpenWaitsForTheDatabase(t *testing.T) {
 	}
 	opened := make(chan outcome, 1)
 	go func() {
-		l, err := Open(context.Background(), LibraryConfig{URL: url, Wait: 2 * time.Minute, BackoffMin: 20 * time.Millisecond, Log: quiet})
+		l, err := Open(context.Background(), Config{URL: url, Wait: 2 * time.Minute, BackoffMin: 20 * time.Millisecond, Log: quiet})
 		opened <- outcome{l, err}
 	}()
 	select {

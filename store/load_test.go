@@ -146,7 +146,7 @@ func TestReadingNeedsSelectOnly(t *testing.T) {
 	storetest.Exec(t, url, `GRANT USAGE ON SCHEMA nearmargin TO reader_only`)
 	storetest.Exec(t, url, `GRANT SELECT ON ALL TABLES IN SCHEMA nearmargin TO reader_only`)
 	as := storetest.As(t, url, "reader_only", "x")
-	if m := library(t, as, LibraryConfig{}).Active(); m.Ref() != "builtin@1" {
+	if m := library(t, as, Config{}).Active(); m.Ref() != "builtin@1" {
 		t.Errorf("serves %s", m.Ref())
 	}
 	if err := opened(t, as).Import(ctx, model(t, "2")); !errors.Is(err, ErrNoRights) {

@@ -2,7 +2,6 @@ package main
 
 import (
 	"context"
-	"strconv"
 
 	"nearmargin/api/wire"
 	"nearmargin/setting"
@@ -18,24 +17,9 @@ func pointFlags(f *flags) {
 
 // point prints the answer for one place.
 func point(p *program, _ context.Context, f *flags) error {
-	if err := f.wantArgs(2, 2); err != nil {
+	site, err := f.site()
+	if err != nil {
 		return err
-	}
-	var xy [2]float64
-	for i, name := range [...]string{"LON", "LAT"} {
-		var err error
-		if xy[i], err = strconv.ParseFloat(f.args[i], 64); err != nil {
-			return usageError("%s: %q is not a number in decimal degrees", name, f.args[i])
-		}
-	}
-	site := setting.SiteAt(xy[0], xy[1])
-	for _, o := range [...]struct {
-		from *optional
-		to   *float64
-	}{{&f.depthKm, &site.DepthKm}, {&f.uncertaintyKm, &site.UncertaintyKm}, {&f.ageMa, &site.AgeMa}} {
-		if o.from.given {
-			*o.to = o.from.value
-		}
 	}
 	b, err := load(f.model)
 	if err != nil {

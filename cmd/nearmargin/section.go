@@ -6,7 +6,6 @@ import (
 	"fmt"
 	"io"
 	"path/filepath"
-	"strconv"
 	"strings"
 
 	"nearmargin/api/figure"
@@ -47,19 +46,9 @@ func (f *flags) sectionFormat() (string, error) {
 
 // section draws the slab along a line through a place.
 func section(p *program, _ context.Context, f *flags) error {
-	if err := f.wantArgs(2, 2); err != nil {
+	site, err := f.site()
+	if err != nil {
 		return err
-	}
-	var xy [2]float64
-	for i, name := range [...]string{"LON", "LAT"} {
-		var err error
-		if xy[i], err = strconv.ParseFloat(f.args[i], 64); err != nil {
-			return usageError("%s: %q is not a number in decimal degrees", name, f.args[i])
-		}
-	}
-	site := setting.SiteAt(xy[0], xy[1])
-	if f.depthKm.given {
-		site.DepthKm = f.depthKm.value
 	}
 	format, err := f.sectionFormat()
 	if err != nil {
@@ -77,7 +66,7 @@ func section(p *program, _ context.Context, f *flags) error {
 	var none *setting.NoSlabError
 	switch {
 	case errors.As(err, &none):
-		return fmt.Errorf("%g, %g: %w", xy[0], xy[1], err)
+		return fmt.Errorf("%g, %g: %w", site.Lon, site.Lat, err)
 	case err != nil:
 		return usageError("%v", err)
 	}

@@ -56,7 +56,7 @@ func (s *single) reload(name string, log *slog.Logger) {
 }
 
 func openDatabase(ctx context.Context, f *flags, log *slog.Logger, hup <-chan os.Signal) (api.Models, api.Source, func(context.Context), error) {
-	l, err := store.Open(ctx, store.LibraryConfig{URL: f.database, Keep: f.editions, Poll: f.databasePoll, Wait: f.databaseWait, Log: log})
+	l, err := store.Open(ctx, store.Config{URL: f.database, Keep: f.editions, Poll: f.databasePoll, Wait: f.databaseWait, Log: log})
 	if err != nil {
 		return nil, nil, nil, err
 	}
