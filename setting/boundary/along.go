@@ -16,23 +16,25 @@ func (n *Network) AlongTo(p Place, azimuthDeg float64, t Type, plate string, max
 		return 0, false
 	}
 	rad := sphere.KmToRad(maxKm)
-	var r rivals
-	n.collect(n.byType[t], p.Vec, f, reachOfRad(rad), &r)
 	east, north := p.Vec.EastNorth()
 	sin, cos := math.Sincos(azimuthDeg * math.Pi / 180)
 	forward := east.Scale(sin).Add(north.Scale(cos)).Scale(math.Sin(rad))
 	ahead := p.Vec.Scale(math.Cos(rad))
+	front, ok := sphere.NewArc(p.Vec, ahead.Add(forward))
+	if !ok {
+		return 0, false
+	}
+	back, _ := sphere.NewArc(p.Vec, ahead.Sub(forward))
+	within, q, plane := reachOfRad(rad), round32(p.Vec), round32(front.N)
 	best := math.Inf(1)
-	for _, end := range [...]sphere.Vec{ahead.Add(forward), ahead.Sub(forward)} {
-		line, ok := sphere.NewArc(p.Vec, end)
-		if !ok {
-			continue
-		}
-		for i := range r.n {
-			if q, crosses := line.Cross(&n.legs[r.list[i].leg].arc); crosses {
-				best = min(best, sphere.Angle(p.Vec, q))
+	n.each(n.byType[t], f, func(c *capsule) bool {
+		return c.besides(&plane) || c.beyond(c.axisSq(&q), within.chord)
+	}, func(i int32) {
+		for _, line := range [...]*sphere.Arc{&front, &back} {
+			if at, crosses := line.Cross(&n.legs[i].arc); crosses {
+				best = min(best, sphere.Angle(p.Vec, at))
 			}
 		}
-	}
+	})
 	return sphere.RadToKm(best), !math.IsInf(best, 1)
 }

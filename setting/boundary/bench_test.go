@@ -175,12 +175,12 @@ func BenchmarkIndexRatio(b *testing.B) {
 			for i := range every {
 				every[i] = int32(i)
 			}
-			size := int(unsafe.Sizeof(leg{})) * len(n.legs)
+			size := int(unsafe.Sizeof(leg{})+unsafe.Sizeof(capsule{})) * len(n.legs)
 			for _, t := range append(n.byType[:], n.all) {
-				size += int(unsafe.Sizeof(branch{}))*len(t.branches) + 4*len(t.order)
+				size += int(unsafe.Sizeof(branch{})) * cap(t.branches)
 			}
 			c := n.all.cells
-			size += (12+4*NumTypes)*len(c.centres) + 4*len(c.starts) + int(unsafe.Sizeof(cellEntry{}))*len(c.entries)
+			size += int(unsafe.Sizeof(point32{}))*len(c.centres) + 4*len(c.starts) + int(unsafe.Sizeof(cellEntry{}))*len(c.entries)
 			for b.Loop() {
 				ns := rounds.Medians(11, rounds.Slice, func(int) {
 					t := newTree(n.legs, every)

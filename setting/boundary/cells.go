@@ -21,9 +21,8 @@ import (
 // space, so the triangle inequality holds for them.
 type cells struct {
 	side    int
-	centres [][3]float32
-	kinds   [][NumTypes]float32 // least chord from the middle to a leg of each type, rounded down
-	starts  []int32             // of a cell's entries, and one more
+	centres []point32
+	starts  []int32 // of a cell's entries, and one more
 	entries []cellEntry
 }
 
@@ -33,31 +32,27 @@ type cellEntry struct {
 }
 
 // cellsPerLeg trades the time of a search against that of building the index.
-const cellsPerLeg = 0.5
-
-// chordSlack covers what 32 bits lose in a chord and in a cell's middle.
-const chordSlack = 1e-6
+const cellsPerLeg = 0.06
 
 // newCells builds the lists over a tree that is not empty.
 func (n *Network) newCells(t *tree) *cells {
-	c := &cells{side: max(1, int(math.Sqrt(cellsPerLeg*float64(len(t.order))/6)))}
+	c := &cells{side: max(1, int(math.Sqrt(cellsPerLeg*float64(len(n.legs))/6)))}
 	c.starts = append(c.starts, 0)
 	var list []cellEntry
-	last := found{leg: -1, chordSq: maxChordSq}
+	last := found{leg: -1}
 	for face := range 6 {
 		for j := range c.side {
 			for i := range c.side {
 				centre, chord := c.cap(face, i, j)
-				c.centres = append(c.centres, [3]float32{float32(centre.X), float32(centre.Y), float32(centre.Z)})
+				c.centres = append(c.centres, round32(centre))
 				within := reachOf(maxChordSq)
 				if last.leg >= 0 { // the leg found for the cell before is near this one as well
-					d, _ := n.legs[last.leg].chordSq(centre)
-					within = reachOf(d)
+					last.chordSq, last.where = n.legs[last.leg].chordSq(centre)
+					within = reachOf(last.chordSq)
 				}
-				n.descend(t, 0, centre, filter{}, &last, &within)
-				d := chordAngle(within.chordSq) + 2*math.Asin(chord/2)
-				rad := 2 * math.Asin(chord/2)
-				list = n.branchesWithin(t, centre, d*(1+nearTie)+rad+1e-9, rad*branchPerCell, list[:0])
+				n.searchFrom(t, 0, centre, filter{}, &within, &last, nil)
+				far := math.Sqrt(last.chordSq) + chord // of the leg nearest to any place in the cell
+				list = t.branchesWithin(centre, far*(1+nearTie)+chord, chord*branchPerCell, list[:0])
 				slices.SortFunc(list, func(a, b cellEntry) int {
 					return cmp.Or(cmp.Compare(a.chord, b.chord), cmp.Compare(a.branch, b.branch))
 				})
@@ -70,33 +65,30 @@ func (n *Network) newCells(t *tree) *cells {
 	return c
 }
 
-// chordAngle returns the angle of a squared chord.
-func chordAngle(chordSq float64) float64 { return 2 * math.Asin(math.Min(1, math.Sqrt(chordSq)/2)) }
-
 // branchPerCell is the largest radius of a listed branch as a part of the cell's.
-const branchPerCell = 0.5
+const branchPerCell = 1
 
-// branchesWithin appends the branches that hold every leg within an angle of p,
-// none of a larger radius than size unless it is a leaf.
-func (n *Network) branchesWithin(t *tree, p sphere.Vec, rad, size float64, out []cellEntry) []cellEntry {
-	within, cosSize := reachOfRad(rad), math.Cos(size)
+// branchesWithin appends the branches that hold every leg within a chord of p, none
+// larger than a radius unless it is a leaf.
+func (t *tree) branchesWithin(p sphere.Vec, chord, size float64, out []cellEntry) []cellEntry {
+	q, within := round32(p), float32(chord)
+	lengthSq := float32(4 * size * size)
 	var stack [64]int32
 	depth := 1
 	for depth > 0 {
 		depth--
 		at := stack[depth]
 		b := &t.branches[at]
-		if within.beyond(b, p.Dot(b.centre)) {
+		axisSq := b.axisSq(&q)
+		if b.beyond(axisSq, within) {
 			continue
 		}
-		if b.right != 0 && b.cosR < cosSize {
-			stack[depth], stack[depth+1] = b.right, at+1
+		if b.legs == 0 && b.d[0]*b.d[0]+b.d[1]*b.d[1]+b.d[2]*b.d[2] > lengthSq {
+			stack[depth], stack[depth+1] = b.at+1, b.at
 			depth += 2
 			continue
 		}
-		// by the triangle inequality from the cap's middle
-		chord := p.Sub(b.centre).Norm() - 2*math.Sin(math.Acos(b.cosR)/2)
-		out = append(out, cellEntry{at, float32(math.Max(0, chord-1e-7))})
+		out = append(out, cellEntry{at, max(0, float32(math.Sqrt(float64(axisSq)))-b.w)})
 	}
 	return out
 }
@@ -120,7 +112,7 @@ func (c *cells) cap(face, i, j int) (centre sphere.Vec, chord float64) {
 	for _, v := range [...]sphere.Vec{at(x, y), at(x+1, y), at(x, y+1), at(x+1, y+1)} {
 		chord = max(chord, v.Sub(centre).Norm())
 	}
-	return centre, chord + chordSlack
+	return centre, chord + capsuleSlack
 }
 
 // evenness is that of toEven, which is within 1 % of 4/π·atan.
@@ -153,64 +145,9 @@ func (c *cells) of(p sphere.Vec) int {
 	return (face*c.side+j)*c.side + i
 }
 
-// nearest is the unfiltered search on the tree's cells.
-func (c *cells) nearest(n *Network, t *tree, p sphere.Vec) found {
-	cell := c.of(p)
-	away := c.away(cell, p)
-	best, within := found{leg: -1}, reachOf(maxChordSq)
-	limit := math.Inf(1) // on an entry's chord
-	for _, e := range c.entries[c.starts[cell]:c.starts[cell+1]] {
-		if float64(e.chord) > limit {
-			break
-		}
-		if b := &t.branches[e.branch]; !within.beyond(b, p.Dot(b.centre)) {
-			n.descend(t, e.branch, p, filter{}, &best, &within)
-			limit = math.Sqrt(within.chordSq) + away
-		}
-	}
-	return best
-}
-
-// addKinds works out how far each type is from each cell.
-func (c *cells) addKinds(n *Network) {
-	c.kinds = make([][NumTypes]float32, len(c.centres))
-	var last [NumTypes]found
-	for i, m := range c.centres {
-		p := sphere.Vec{X: float64(m[0]), Y: float64(m[1]), Z: float64(m[2])}.Unit()
-		for k, t := range n.byType {
-			if len(t.branches) == 0 {
-				c.kinds[i][k] = 4 // farther than any chord
-				continue
-			}
-			within := reachOf(maxChordSq)
-			if i == 0 {
-				last[k].leg = -1
-			} else {
-				d, _ := n.legs[last[k].leg].chordSq(p)
-				within = reachOf(d)
-			}
-			n.descend(t, 0, p, filter{}, &last[k], &within)
-			c.kinds[i][k] = float32(math.Max(0, math.Sqrt(within.chordSq)-chordSlack))
-		}
-	}
-}
-
 // away returns the chord from a cell's middle to a place in it, rounded up.
-func (c *cells) away(cell int, p sphere.Vec) float64 {
+func (c *cells) away(cell int, q *point32) float32 {
 	m := &c.centres[cell]
-	return sphere.Vec{X: float64(m[0]) - p.X, Y: float64(m[1]) - p.Y, Z: float64(m[2]) - p.Z}.Norm() + chordSlack
-}
-
-// rivals gathers every leg that passes and lies within the reach of p, which must
-// be no more than nearTie beyond the nearest of all.
-func (c *cells) rivals(n *Network, t *tree, p sphere.Vec, f filter, within reach, out *rivals) {
-	out.n = 0
-	cell := c.of(p)
-	limit := math.Sqrt(within.chordSq) + c.away(cell, p)
-	for _, e := range c.entries[c.starts[cell]:c.starts[cell+1]] {
-		if float64(e.chord) > limit {
-			return
-		}
-		n.gather(t, e.branch, p, f, &within, out)
-	}
+	x, y, z := m[0]-q[0], m[1]-q[1], m[2]-q[2]
+	return float32(math.Sqrt(float64(x*x+y*y+z*z))) + capsuleSlack
 }

@@ -41,26 +41,13 @@ func (n *Network) Inside(s sphere.Shape, visit func(Piece)) {
 
 // legsWithin returns the legs that may reach into a cap, in their order.
 func (n *Network) legsWithin(centre sphere.Vec, rad float64) []int32 {
-	within := reachOfRad(rad)
+	within, q := reachOfRad(rad), round32(centre)
 	in := make([]bool, len(n.legs))
-	var walk func(at int32)
-	walk = func(at int32) {
-		b := &n.all.branches[at]
-		if within.beyond(b, centre.Dot(b.centre)) {
-			return
+	n.each(n.all, filter{}, func(c *capsule) bool { return c.beyond(c.axisSq(&q), within.chord) }, func(i int32) {
+		if d, _ := n.legs[i].chordSq(centre); d <= within.chordSq {
+			in[i] = true
 		}
-		if b.right != 0 {
-			walk(at + 1)
-			walk(b.right)
-			return
-		}
-		for _, i := range n.all.order[b.from:b.to] {
-			if d, _ := n.legs[i].chordSq(centre); d <= within.chordSq {
-				in[i] = true
-			}
-		}
-	}
-	walk(0)
+	})
 	var out []int32
 	for i := range in {
 		if in[i] {

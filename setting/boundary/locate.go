@@ -68,21 +68,18 @@ func (n *Network) Locate(p Place) (plate string, nearest Hit) {
 // LocateWith is [Network.Locate] that uses and adds to the sights from the place.
 func (n *Network) LocateWith(p Place, s *Sights) (plate string, nearest Hit) {
 	s.start(n, p)
-	first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
+	first := found{leg: -1}
+	n.search(n.all, p.Vec, filter{}, reachOf(maxChordSq), &first, &s.rivals)
 	side := n.side(p.Vec, first)
-	return n.plates[side], n.refine(n.all, p, filter{side, Bounding}, first, s)
+	s.rivals.keepPassing(n, filter{side, Bounding})
+	return n.plates[side], n.refine(p, s)
 }
 
-// refine compares the leg that is nearest on the sphere with those of the tree
-// that pass and lie within 1 % of its distance, by the length of the WGS84
-// geodesic. Those that a bound on that length excludes are not measured.
-func (n *Network) refine(t *tree, p Place, f filter, first found, s *Sights) Hit {
+// refine compares the rivals in the list, the leg that is nearest on the sphere and
+// those within 1 % of its distance, by the length of the WGS84 geodesic. Those that
+// a bound on that length excludes are not measured.
+func (n *Network) refine(p Place, s *Sights) Hit {
 	r := &s.rivals
-	if within := reachOf(first.chordSq*(1+nearTie)*(1+nearTie) + 1e-24); t.cells != nil {
-		t.cells.rivals(n, t, p.Vec, f, within, r)
-	} else {
-		n.collect(t, p.Vec, f, within, r)
-	}
 	n.screen(p.Vec, r)
 	best, foot, bestAt, bestKm, bestAz := found{leg: -1}, sphere.Vec{}, sphere.LonLat{}, 0.0, 0.0
 	for i := range r.list[:r.n] {
@@ -112,10 +109,6 @@ func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm floa
 // place.
 func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm float64, s *Sights) (Hit, bool) {
 	f := filter{noPlate, role}
-	s.start(n, p)
-	if float64(n.all.cells.kinds[s.cell][t])-s.away > sphere.KmToRad(maxKm*1.006) { // a chord is less than its angle
-		return Hit{}, false
-	}
 	if role != AnyRole {
 		if f.plate = n.plateIndex(plate); f.plate == noPlate {
 			return Hit{}, false
@@ -128,11 +121,12 @@ func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm 
 func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64, s *Sights) (Hit, bool) {
 	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
 	s.start(n, p)
-	got, ok := n.nearest(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)))
-	if !ok {
+	first := found{leg: -1}
+	n.search(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)), &first, &s.rivals)
+	if first.leg < 0 {
 		return Hit{}, false
 	}
-	h := n.refine(t, p, f, got, s)
+	h := n.refine(p, s)
 	if h.DistanceKm > maxKm {
 		return Hit{}, false
 	}

@@ -14,8 +14,9 @@ import (
 type Network struct {
 	boundaries []*Boundary
 	byID       map[string]int32
-	plates     []string // sorted codes; legs hold indices into it
-	legs       []leg    // in the order of the boundaries and their paths
+	plates     []string  // sorted codes; legs hold indices into it
+	legs       []leg     // in the order of the boundaries and their paths
+	strips     []capsule // around each leg
 	nodes      []node
 	all        *tree
 	byType     [NumTypes]*tree
@@ -63,6 +64,8 @@ func (n *Network) addLegs() {
 				l.sinks = n.plateIndex(b.Subducting())
 			}
 			n.legs = append(n.legs, l)
+			r := rodOfArc(&arc)
+			n.strips = append(n.strips, newCapsule(r.a, r.b, r.w))
 		}
 	}
 }
@@ -79,7 +82,6 @@ func (n *Network) index() {
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
 	}
-	n.all.cells.addKinds(n)
 	for i := range n.legs {
 		for _, box := range boxes(&n.legs[i].arc) {
 			n.boxes.Insert(box.Min, box.Max, int32(i))

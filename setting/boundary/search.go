@@ -83,56 +83,111 @@ type found struct {
 	chordSq float64
 }
 
-// nearest returns the leg nearest to p among those that pass, within the reach.
-// Ties go by squareness of the line of sight, then by the boundary's id.
+// nearest returns the leg of a tree nearest to p among those that pass, within the
+// reach, and whether there is one. Ties go by squareness of the line of sight, then
+// by the boundary's id.
 func (n *Network) nearest(t *tree, p sphere.Vec, f filter, within reach) (found, bool) {
 	best := found{leg: -1}
-	if len(t.branches) == 0 {
-		return best, false
-	}
-	if t.cells != nil && f.role == AnyRole {
-		best = t.cells.nearest(n, t, p)
-		return best, best.chordSq <= within.chordSq
-	}
-	if !f.skips(&t.branches[0]) && !within.beyond(&t.branches[0], p.Dot(t.branches[0].centre)) {
-		n.descend(t, 0, p, f, &best, &within)
-	}
+	n.search(t, p, f, within, &best, nil)
 	return best, best.leg >= 0
 }
 
-// descend searches the tree from a branch on that is not beyond the reach. It
-// replaces the best found and shortens the reach.
-func (n *Network) descend(t *tree, at int32, p sphere.Vec, f filter, best *found, within *reach) {
-	var stack [64]int32
+// rivalChordSq returns the squared chord within which a leg counts as a rival of
+// the nearest: nearTie of its distance, and a thousandth of a nanometre where that
+// is none.
+func rivalChordSq(nearestSq float64) float64 {
+	return nearestSq*(1+nearTie)*(1+nearTie) + 1e-24
+}
+
+// search finds the leg that passes, lies within the reach and is nearest to p.
+// Where a list is given it gathers there all that pass and are rivals of the
+// nearest.
+func (n *Network) search(t *tree, p sphere.Vec, f filter, within reach, best *found, r *rivals) {
+	if r != nil {
+		r.n = 0
+	}
+	switch {
+	case len(t.branches) == 0:
+	case t.cells != nil && f.role == AnyRole:
+		q, c := round32(p), t.cells
+		cell := c.of(p)
+		away := c.away(cell, &q)
+		for _, e := range c.entries[c.starts[cell]:c.starts[cell+1]] {
+			if e.chord > within.chord+away {
+				break
+			}
+			if b := &t.branches[e.branch]; !b.beyond(b.axisSq(&q), within.chord) {
+				n.searchFrom(t, e.branch, p, f, &within, best, r)
+			}
+		}
+	default:
+		q, b := round32(p), &t.branches[0]
+		if !f.skips(b) && !b.beyond(b.axisSq(&q), within.chord) {
+			n.searchFrom(t, 0, p, f, &within, best, r)
+		}
+	}
+	if r != nil {
+		r.keepWithin(within.chordSq)
+	}
+}
+
+// searchFrom is search from a branch on that is not left out. It replaces the best
+// found, shortens the reach and adds to the list.
+func (n *Network) searchFrom(t *tree, at int32, p sphere.Vec, f filter, within *reach, best *found, r *rivals) {
+	type pending struct {
+		at     int32
+		axisSq float32
+	}
+	var stack [64]pending
+	q := round32(p)
 	depth := 0
+	b := &t.branches[at]
 	for {
-		b := &t.branches[at]
-		if b.right == 0 {
-			for _, i := range t.order[b.from:b.to] {
+		if b.legs > 0 {
+			for i := b.at; i < b.at+b.legs; i++ {
+				if c := &n.strips[i]; c.beyond(c.axisSq(&q), within.chord) {
+					continue
+				}
 				l := &n.legs[i]
 				d, w := l.chordSq(p)
 				if d > within.chordSq || !f.passes(l) {
 					continue
 				}
-				if best.leg >= 0 && d == best.chordSq && !n.squarer(p, found{i, w, d}, *best) {
-					continue
+				this := found{i, w, d}
+				if best.leg < 0 || d < best.chordSq || d == best.chordSq && n.squarer(p, this, *best) {
+					*best = this
+					if r == nil {
+						*within = reachOf(d)
+					} else if rival := rivalChordSq(d); rival < within.chordSq {
+						*within = reachOf(rival)
+					}
 				}
-				*best = found{i, w, d}
-				*within = reachOf(d)
+				if r != nil {
+					r.add(this, within.chordSq)
+				}
 			}
 		} else {
 			// the nearer child first, so that the reach shrinks soon
-			left, right := at+1, b.right
-			cl, cr := p.Dot(t.branches[left].centre), p.Dot(t.branches[right].centre)
-			if cr > cl {
-				left, right, cl, cr = right, left, cr, cl
-			}
-			if !f.skips(&t.branches[right]) && !within.beyond(&t.branches[right], cr) {
-				stack[depth] = right
+			left, right := &t.branches[b.at], &t.branches[b.at+1]
+			dl, dr := left.axisSq(&q), right.axisSq(&q)
+			inLeft := !left.beyond(dl, within.chord) && !f.skips(left)
+			inRight := !right.beyond(dr, within.chord) && !f.skips(right)
+			switch {
+			case inLeft && inRight:
+				if dl <= dr {
+					stack[depth] = pending{b.at + 1, dr}
+					b = left
+				} else {
+					stack[depth] = pending{b.at, dl}
+					b = right
+				}
 				depth++
-			}
-			if !f.skips(&t.branches[left]) && !within.beyond(&t.branches[left], cl) {
-				at = left
+				continue
+			case inLeft:
+				b = left
+				continue
+			case inRight:
+				b = right
 				continue
 			}
 		}
@@ -141,9 +196,35 @@ func (n *Network) descend(t *tree, at int32, p sphere.Vec, f filter, best *found
 				return
 			}
 			depth--
-			at = stack[depth]
-			if b := &t.branches[at]; !within.beyond(b, p.Dot(b.centre)) {
+			if b = &t.branches[stack[depth].at]; !b.beyond(stack[depth].axisSq, within.chord) {
 				break
+			}
+		}
+	}
+}
+
+// each calls visit with every leg of the tree that passes and lies in a branch or
+// strip that is not left out.
+func (n *Network) each(t *tree, f filter, leaveOut func(*capsule) bool, visit func(leg int32)) {
+	var stack [64]int32
+	depth := 1
+	if len(t.branches) == 0 {
+		return
+	}
+	for depth > 0 {
+		depth--
+		b := &t.branches[stack[depth]]
+		if f.skips(b) || leaveOut(&b.capsule) {
+			continue
+		}
+		if b.legs == 0 {
+			stack[depth], stack[depth+1] = b.at+1, b.at
+			depth += 2
+			continue
+		}
+		for i := b.at; i < b.at+b.legs; i++ {
+			if !leaveOut(&n.strips[i]) && f.passes(&n.legs[i]) {
+				visit(i)
 			}
 		}
 	}
@@ -178,41 +259,12 @@ type rivals struct {
 	n    int
 }
 
-// collect gathers every leg of the tree that passes and lies within the reach of
-// p. Where there are more than maxRivals, the nearest of those met are kept.
-func (n *Network) collect(t *tree, p sphere.Vec, f filter, within reach, out *rivals) {
-	out.n = 0
-	if len(t.branches) > 0 {
-		n.gather(t, 0, p, f, &within, out)
+// add notes a leg. Where there is no room for more than maxRivals, those beyond the
+// squared chord make room, else the farthest.
+func (r *rivals) add(f found, withinSq float64) {
+	if r.n == maxRivals {
+		r.keepWithin(withinSq)
 	}
-}
-
-// gather is collect from a branch on, without clearing the list.
-func (n *Network) gather(t *tree, at int32, p sphere.Vec, f filter, within *reach, out *rivals) {
-	var stack [64]int32
-	stack[0] = at
-	depth := 1
-	for depth > 0 {
-		depth--
-		at := stack[depth]
-		b := &t.branches[at]
-		if f.skips(b) || within.beyond(b, p.Dot(b.centre)) {
-			continue
-		}
-		if b.right != 0 {
-			stack[depth], stack[depth+1] = b.right, at+1
-			depth += 2
-			continue
-		}
-		for _, i := range t.order[b.from:b.to] {
-			if d, w := n.legs[i].chordSq(p); d <= within.chordSq && f.passes(&n.legs[i]) {
-				out.add(found{i, w, d})
-			}
-		}
-	}
-}
-
-func (r *rivals) add(f found) {
 	if r.n < maxRivals {
 		r.list[r.n] = f
 		r.n++
@@ -227,4 +279,28 @@ func (r *rivals) add(f found) {
 	if f.chordSq < r.list[worst].chordSq {
 		r.list[worst] = f
 	}
+}
+
+// keepWithin drops what lies beyond the squared chord.
+func (r *rivals) keepWithin(chordSq float64) {
+	kept := 0
+	for i := range r.list[:r.n] {
+		if r.list[i].chordSq <= chordSq {
+			r.list[kept] = r.list[i]
+			kept++
+		}
+	}
+	r.n = kept
+}
+
+// keepPassing drops what does not pass.
+func (r *rivals) keepPassing(n *Network, f filter) {
+	kept := 0
+	for i := range r.list[:r.n] {
+		if f.passes(&n.legs[r.list[i].leg]) {
+			r.list[kept] = r.list[i]
+			kept++
+		}
+	}
+	r.n = kept
 }

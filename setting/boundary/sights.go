@@ -12,8 +12,6 @@ import (
 type Sights struct {
 	of     *Network
 	from   sphere.LonLat
-	cell   int     // of the place, in the cells over all legs
-	away   float64 // chord from the cell's middle
 	feet   [maxSights]sphere.Vec
 	at     [maxSights]sphere.LonLat // the same feet
 	km     [maxSights]float64
@@ -29,9 +27,7 @@ func (s *Sights) start(n *Network, p Place) {
 	if s.of == n && s.from == p.LonLat {
 		return
 	}
-	c := n.all.cells
-	s.of, s.from, s.n, s.cell = n, p.LonLat, 0, c.of(p.Vec)
-	s.away = c.away(s.cell, p.Vec)
+	s.of, s.from, s.n = n, p.LonLat, 0
 }
 
 // to returns the foot's position, and the length and the azimuth of the geodesic

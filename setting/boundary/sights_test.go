@@ -7,13 +7,17 @@ import (
 	"nearmargin/setting/sphere"
 )
 
-// plainRefine is refine without bounds, without cells and without what has been
-// measured before: it computes the geodesic to every rival.
-func plainRefine(n *Network, t *tree, p Place, f filter, first found) (*Boundary, float64) {
-	var r rivals
-	n.collect(t, p.Vec, f, reachOfRad(chordAngle(first.chordSq)*(1+nearTie)+1e-12), &r)
+// plainRefine is refine without bounds, without the tree and without what has been
+// measured before: it computes the geodesic to every rival among all legs.
+func plainRefine(n *Network, p Place, passes func(*leg) bool, first found) (*Boundary, float64) {
+	within := reachOfRad(chordAngle(first.chordSq)*(1+nearTie) + 1e-12)
 	best, bestKm := first, math.Inf(1)
-	for _, other := range r.list[:r.n] {
+	for i := range n.legs {
+		d, w := n.legs[i].chordSq(p.Vec)
+		if d > within.chordSq || !passes(&n.legs[i]) {
+			continue
+		}
+		other := found{int32(i), w, d}
 		km, _ := sphere.Inverse(p.LonLat, n.legs[other.leg].foot(p.Vec, other.where).LonLat())
 		if km < bestKm-coincideKm || km <= bestKm+coincideKm && n.squarer(p.Vec, other, best) {
 			best, bestKm = other, km
@@ -23,7 +27,7 @@ func plainRefine(n *Network, t *tree, p Place, f filter, first found) (*Boundary
 }
 
 // TestScreenChangesNothing compares boundaries found with and without screening,
-// by the search from the root and from the cells, with one set of sights for all
+// by the tree and by a look at every leg, with one set of sights for all
 // questions about a place.
 func TestScreenChangesNothing(t *testing.T) {
 	r := seeded(t)
@@ -34,25 +38,23 @@ func TestScreenChangesNothing(t *testing.T) {
 		p := anyPlace(r, n)
 		code, h := n.LocateWith(p, &s)
 		side := n.plateIndex(code)
-		root := *n.all
-		root.cells = nil
-		first, _ := n.nearest(&root, p.Vec, filter{}, reachOf(maxChordSq))
-		b, km := plainRefine(n, &root, p, filter{side, Bounding}, first)
+		first, _ := n.nearest(n.all, p.Vec, filter{}, reachOf(maxChordSq))
+		bounding := filter{side, Bounding}
+		b, km := plainRefine(n, p, bounding.passes, first)
 		if h.Boundary != b || math.Abs(h.DistanceKm-km) > 2*coincideKm {
 			t.Fatalf("at %v: %s at %.9f km, plainly %s at %.9f", p.LonLat, h.Boundary.ID(), h.DistanceKm, b.ID(), km)
 		}
 		for _, kind := range AllTypes {
 			const maxKm = 1000
-			f := filter{side, Bounding}
 			got, ok := n.NearestOfWith(p, kind, code, Bounding, maxKm, &s)
-			first, found := n.nearest(n.byType[kind], p.Vec, f, reachOf(maxChordSq))
+			first, found := n.nearest(n.byType[kind], p.Vec, bounding, reachOf(maxChordSq))
 			if !found {
 				if ok {
 					t.Fatalf("at %v: %s %s, plainly none", p.LonLat, kind, got.Boundary.ID())
 				}
 				continue
 			}
-			b, km := plainRefine(n, n.byType[kind], p, f, first)
+			b, km := plainRefine(n, p, func(l *leg) bool { return l.kind == kind && bounding.passes(l) }, first)
 			if ok != (km <= maxKm) || ok && (got.Boundary != b || math.Abs(got.DistanceKm-km) > 2*coincideKm) {
 				t.Fatalf("at %v: %t, %s at %.9f km, plainly %s at %.9f", p.LonLat, ok, kind, got.DistanceKm, b.ID(), km)
 			}

@@ -8,74 +8,122 @@ import (
 	"nearmargin/setting/sphere"
 )
 
-// tree is a flat bounding-volume tree over legs: every branch holds a spherical
-// cap around what lies below it. Its children follow it in the array, the left
-// one at once, the right one at skip.
+// tree finds legs by their place. Its leaves are short runs of legs of one
+// boundary, and every branch holds a capsule around what lies below it.
 //
-// The bounds are caps rather than boxes in longitude and latitude because a cap
-// has no seam at ±180° and no singular poles, and its lower bound on distance is
-// one dot product.
+// Method: a strip tree (Ballard 1981, Strip trees: a hierarchical representation
+// for curves, CACM 24, 310, doi:10.1145/358645.358661), in space instead of the
+// plane, so that it has no seam at ±180° and no singular poles, and with ends that
+// are round. Above the runs it is a bounding-volume tree, divided at the median.
 type tree struct {
-	branches []branch
-	order    []int32 // leg numbers in the order of the leaves
-	cells    *cells  // nil on a tree that has none
+	branches []branch // the root first; none in an empty tree
+	cells    *cells   // nil on a tree that has none
 }
 
+// branch is a leaf or has two children. It fills 64 bytes, a line of the
+// processor's cache.
 type branch struct {
-	centre     sphere.Vec
-	cosR, sinR float64 // of the cap's angular radius
-	plates     uint64  // that bound the legs below, see plateBit
-	over, sink uint64  // of them, those at trenches whose other plate goes down, and that go down
-	right      int32   // index of the right child; 0 in a leaf
-	from, to   int32   // of a leaf: its part of order
+	capsule
+	plates     uint64 // that bound the legs below, see plateBit
+	over, sink uint64 // of them, those at trenches whose other plate goes down, and that go down
+	at         int32  // the first of its legs, or the first of its two children
+	legs       int32  // in a leaf how many, else 0
 }
 
-// leafLegs is the number of legs below which a branch is not split further; 4
-// was the fastest of 2, 4, 8 and 16 in BenchmarkNearest.
-const leafLegs = 4
+// runLegs is the largest number of legs in a leaf: 12 was the fastest of 6, 8, 12
+// and 16 in BenchmarkNearestRatio.
+const runLegs = 12
 
-// newTree builds the tree over the legs whose numbers are given.
+// newTree builds the tree over the legs whose numbers are given, in rising order.
 func newTree(legs []leg, which []int32) *tree {
-	t := &tree{order: slices.Clone(which)}
-	if len(which) > 0 {
-		middles := make([]sphere.Vec, len(legs))
-		for _, i := range which {
-			middles[i] = legs[i].arc.Midpoint()
+	b := builder{legs: legs}
+	for from := 0; from < len(which); {
+		to := from + 1
+		for to < len(which) && which[to] == which[to-1]+1 && legs[which[to]].boundary == legs[which[from]].boundary {
+			to++
 		}
-		t.branches = make([]branch, 0, 2*len(which)/(leafLegs/2))
-		t.build(legs, middles, 0, len(which))
-		t.branches = slices.Clip(t.branches)
+		runs := (to - from + runLegs - 1) / runLegs
+		for i := range runs {
+			b.addRun(which[from+i*(to-from)/runs : from+(i+1)*(to-from)/runs])
+		}
+		from = to
+	}
+	t := &tree{}
+	if len(b.rods) > 0 {
+		b.order = make([]int32, len(b.rods))
+		for i := range b.order {
+			b.order[i] = int32(i)
+		}
+		b.part = make([]rod, len(b.rods))
+		b.branches = make([]branch, 1, 2*len(b.rods))
+		b.build(0, 0, len(b.rods))
+		t.branches = b.branches
 	}
 	return t
 }
 
-func (t *tree) build(legs []leg, middles []sphere.Vec, from, to int) {
-	part := t.order[from:to]
-	at := len(t.branches)
-	t.branches = append(t.branches, capOver(legs, part))
-	for _, i := range part {
-		b, l := &t.branches[at], &legs[i]
-		b.plates |= plateBit(l.left) | plateBit(l.right)
-		switch l.sinks {
-		case noPlate:
-		case l.left:
-			b.sink, b.over = b.sink|plateBit(l.left), b.over|plateBit(l.right)
-		default:
-			b.sink, b.over = b.sink|plateBit(l.right), b.over|plateBit(l.left)
-		}
-	}
-	if len(part) <= leafLegs {
-		t.branches[at].from, t.branches[at].to = int32(from), int32(to)
-		return
-	}
-	divide(part, middles, widestAxis(middles, part))
-	mid := from + len(part)/2
-	t.build(legs, middles, from, mid)
-	t.branches[at].right = int32(len(t.branches))
-	t.build(legs, middles, mid, to)
+// builder is a tree under construction.
+type builder struct {
+	legs     []leg
+	rods     []rod        // around each run
+	middles  []sphere.Vec // of each run
+	runs     [][2]int32   // its first leg, and how many
+	order    []int32      // of the runs
+	part     []rod        // room for the rods of a branch
+	branches []branch
 }
 
-// divide orders the part so that no leg of its first half has its middle farther
+func (b *builder) addRun(which []int32) {
+	var rods [runLegs]rod
+	for i, k := range which {
+		rods[i] = rodOfArc(&b.legs[k].arc)
+	}
+	r := rodAround(rods[:len(which)])
+	b.rods = append(b.rods, r)
+	b.middles = append(b.middles, r.a.Add(r.b))
+	b.runs = append(b.runs, [2]int32{which[0], int32(len(which))})
+}
+
+func (b *builder) build(at int, from, to int) {
+	part := b.order[from:to]
+	rods := b.part[:len(part)]
+	for i, k := range part {
+		rods[i] = b.rods[k]
+	}
+	r := rodAround(rods)
+	out := branch{capsule: newCapsule(r.a, r.b, r.w)}
+	if len(part) == 1 {
+		out.at, out.legs = b.runs[part[0]][0], b.runs[part[0]][1]
+		out.addPlates(&b.legs[out.at])
+		b.branches[at] = out
+		return
+	}
+	divide(part, b.middles, widestAxis(b.middles, part))
+	child := len(b.branches)
+	out.at = int32(child)
+	b.branches = append(b.branches, branch{}, branch{})
+	mid := from + len(part)/2
+	b.build(child, from, mid)
+	b.build(child+1, mid, to)
+	for _, c := range b.branches[child : child+2] {
+		out.plates, out.over, out.sink = out.plates|c.plates, out.over|c.over, out.sink|c.sink
+	}
+	b.branches[at] = out
+}
+
+// addPlates notes the plates of a run, which are those of any of its legs.
+func (b *branch) addPlates(l *leg) {
+	b.plates = plateBit(l.left) | plateBit(l.right)
+	switch l.sinks {
+	case noPlate:
+	case l.left:
+		b.sink, b.over = plateBit(l.left), plateBit(l.right)
+	default:
+		b.sink, b.over = plateBit(l.right), plateBit(l.left)
+	}
+}
+
+// divide orders the part so that none of its first half has its middle farther
 // along the axis than one of the second (Hoare 1961, Algorithm 65: find, CACM 4,
 // 321). Ties go by number, so that the result does not depend on the order given.
 func divide(part []int32, middles []sphere.Vec, axis func(sphere.Vec) float64) {
@@ -113,28 +161,6 @@ func divide(part []int32, middles []sphere.Vec, axis func(sphere.Vec) float64) {
 	})
 }
 
-// capOver returns a cap that holds the legs: around the mean of their middles,
-// out to the farthest end. An arc shorter than a half turn lies within a cap of
-// less than a quarter turn whenever both its ends do; larger caps take the whole
-// sphere, which is right if not tight.
-func capOver(legs []leg, part []int32) branch {
-	var sum sphere.Vec
-	for _, i := range part {
-		sum = sum.Add(legs[i].arc.A).Add(legs[i].arc.B)
-	}
-	c := sum.Unit()
-	chordSq := 0.0
-	for _, i := range part {
-		a, b := legs[i].arc.A.Sub(c), legs[i].arc.B.Sub(c)
-		chordSq = max(chordSq, a.Dot(a), b.Dot(b))
-	}
-	r := chordAngle(chordSq) + 1e-9 // the largest chord is good to 1e-8 rad near the antipode only, where r is not used
-	if c == (sphere.Vec{}) || r >= math.Pi/2 {
-		return branch{centre: sphere.Vec{X: 1}, cosR: -1, sinR: 0}
-	}
-	return branch{centre: c, cosR: math.Cos(r), sinR: math.Sin(r)}
-}
-
 func widestAxis(middles []sphere.Vec, part []int32) func(sphere.Vec) float64 {
 	axes := []func(sphere.Vec) float64{
 		func(v sphere.Vec) float64 { return v.X },
@@ -153,43 +179,4 @@ func widestAxis(middles []sphere.Vec, part []int32) func(sphere.Vec) float64 {
 		}
 	}
 	return best
-}
-
-// reach is a distance in the forms in which branches are compared with it.
-type reach struct {
-	chordSq    float64
-	cosD, sinD float64
-}
-
-// slack keeps rounding from cutting off a branch that touches the reach.
-const slack = 4e-15
-
-// maxChordSq is the square of the longest chord, the diameter.
-const maxChordSq = 4
-
-func reachOf(chordSq float64) reach {
-	if chordSq >= maxChordSq {
-		return reach{maxChordSq, -1, 0}
-	}
-	return reach{chordSq, 1 - chordSq/2, math.Sqrt(chordSq * (1 - chordSq/4))}
-}
-
-// reachOfRad returns the reach of an angle in radians.
-func reachOfRad(rad float64) reach {
-	if rad >= math.Pi {
-		return reachOf(maxChordSq)
-	}
-	c := 2 * math.Sin(rad/2)
-	return reachOf(c * c)
-}
-
-// beyond reports whether the whole cap, whose centre is at the angle with the
-// given cosine, lies farther away than the reach.
-func (r *reach) beyond(b *branch, cosAngle float64) bool {
-	// The cap is beyond where angle > d + radius. That cannot be where d + radius
-	// is a half turn or more: then sin(d+radius) is not positive.
-	if r.sinD*b.cosR+r.cosD*b.sinR <= 0 {
-		return false
-	}
-	return cosAngle < r.cosD*b.cosR-r.sinD*b.sinR-slack
 }
