@@ -101,14 +101,15 @@ func (l *Lookup) classify(p boundary.Place, a *Answer) {
 // be, as for a slab that has lost its trench, it is the nearest trench at which
 // the site's plate is the upper one.
 func (l *Lookup) control(a *Answer, e *evidence, v verdict) {
-	if v.slab >= 0 && e.slabs[v.slab].slab.Kind == slab.Subduction && e.slabs[v.slab].trenchKm > e.limit[limitSlabTrench] && !math.IsInf(e.km[sourceOverriding], 1) {
+	if v.slab >= 0 && e.slabs[v.slab].slab.Kind == slab.Subduction && e.slabTrench(v.slab) > e.limit[limitSlabTrench] &&
+		!math.IsInf(e.upTo(sourceOverriding, sources[sourceOverriding].reachKm), 1) {
 		v.by = sourceOverriding
 	}
 	switch {
 	case v.by != noSource:
 		a.IsControlled = true
 		a.Controlling = l.controlling(a, &e.hit[v.by])
-	case v.slab >= 0 && !math.IsInf(e.slabs[v.slab].trenchKm, 1):
+	case v.slab >= 0 && !math.IsInf(e.slabTrench(v.slab), 1):
 		a.IsControlled = true
 		a.Controlling = l.controlling(a, &e.slabs[v.slab].trench)
 	}

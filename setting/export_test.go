@@ -26,7 +26,22 @@ func VaryBoth(l *Lookup, s Site) (watched, plain []Alternative, marks int, err e
 	e.vary(&a)
 	watched = append(watched, a.Alternatives.All()...)
 	start()
-	e.watch.all()
+	e.markAll()
 	e.vary(&a)
 	return watched, a.Alternatives.All(), marks, nil
+}
+
+// markAll looks up all that there is to compare and marks it.
+func (e *evidence) markAll() {
+	for i := range sources {
+		e.upTo(source(i), sources[i].reachKm)
+		e.watch.km[i] = true
+	}
+	for i := range e.slabs[:e.nSlabs] {
+		e.slabTrench(i)
+		e.watch.z[i], e.watch.trench[i] = true, true
+	}
+	for i := range e.watch.limit {
+		e.watch.limit[i] = true
+	}
 }

@@ -47,10 +47,13 @@ type Model struct {
 	motions   map[string]*motion.Model
 	junctions []Junction
 	hotspots  []sphere.Vec
-	// slabGroups holds, for each slab, the boundaries it goes down from; slabOf says
-	// of which boundaries there is a slab.
-	slabGroups []*boundary.Group
-	slabOf     map[string]bool
+	// slabGroups holds, for each slab, the boundaries it goes down from, slabCollides
+	// whether one of them is continental convergence; slabOf says of which boundaries
+	// there is a slab.
+	slabGroups   []*boundary.Group
+	slabCollides []bool
+	slabOf       map[string]bool
+	maxSigmaKm   [boundary.NumTypes]float64 // the largest σ of a boundary of each type
 }
 
 // NewModel checks that the parts fit together and builds a model from them.
@@ -109,6 +112,9 @@ func NewModel(c Contents) (*Model, error) {
 // tieSlabs ties each slab to its boundaries and plates.
 func (m *Model) tieSlabs() error {
 	m.slabOf = map[string]bool{}
+	for _, b := range m.network.Boundaries() {
+		m.maxSigmaKm[b.Type()] = max(m.maxSigmaKm[b.Type()], b.SigmaKm())
+	}
 	ids := map[string]bool{}
 	for _, s := range m.c.Slabs {
 		if ids[s.ID] {
@@ -125,6 +131,10 @@ func (m *Model) tieSlabs() error {
 			return fmt.Errorf("slab %q: boundary_ids: %w", s.ID, err)
 		}
 		m.slabGroups = append(m.slabGroups, g)
+		m.slabCollides = append(m.slabCollides, slices.ContainsFunc(s.BoundaryIDs, func(id string) bool {
+			b, _ := m.network.Boundary(id)
+			return b.Type() == boundary.ContinentalConvergent
+		}))
 		for _, id := range s.BoundaryIDs {
 			m.slabOf[id] = true
 		}

@@ -93,6 +93,10 @@ func (e *evidence) decide() (verdict, RuleID) {
 
 func decideTrench(e *evidence) (verdict, bool) {
 	s := sourceOverriding
+	for _, either := range [...]source{sourceOverriding, sourceSubducting} {
+		// as far as the limit may be, or 1σ of the line, each with a margin of its own
+		e.upTo(either, max(e.about(either, limitTrench), 2*e.look.m.maxSigmaKm[boundary.Subduction]+e.watch.siteKm+1))
+	}
 	if e.km[sourceSubducting] < e.km[s] {
 		s = sourceSubducting
 	}
@@ -139,11 +143,10 @@ func decideOnBoundary(e *evidence) (verdict, bool) {
 	best, bestRatio := -1, math.Inf(1)
 	for i := range onBoundary {
 		c := &onBoundary[i]
-		ratio := e.km[c.by] / e.limit[c.limit]
-		e.within(c.by, c.limit) // for the watch
-		if ratio > 1 {
+		if !e.within(c.by, c.limit) {
 			continue
 		}
+		ratio := e.km[c.by] / e.limit[c.limit]
 		if over >= 0 && !e.overSlab(c.by, over) {
 			continue
 		}
@@ -177,7 +180,8 @@ func (e *evidence) watchRatios() {
 	n := 0
 	for i := range onBoundary {
 		c := &onBoundary[i]
-		if in[i] = e.km[c.by]-e.moveKm(c.by) <= e.limit[c.limit]+Limits[c.limit].Sigma+1e-6; in[i] {
+		km := e.upTo(c.by, e.about(c.by, c.limit))
+		if in[i] = km-e.moveKm(c.by) <= e.limit[c.limit]+Limits[c.limit].Sigma+1e-6; in[i] {
 			n++
 		}
 	}
@@ -223,13 +227,13 @@ func decideSlab(e *evidence) (verdict, bool) {
 // nearOwnTrench reports whether the site lies between a trench and the start of
 // its slab: a slab of another trench far below does not make that a back-arc.
 func (e *evidence) nearOwnTrench() bool {
-	return e.beforeSlab() && e.trenchSquare >= minTrenchSquare && e.closer(sourceOverriding, limitForearc)
+	return e.beforeSlab() && e.viewTrench().square >= minTrenchSquare && e.closer(sourceOverriding, limitForearc)
 }
 
 // collides reports whether a slab goes down from continental convergence near the
 // site: it is as well a collision zone.
 func (e *evidence) collides(i int) bool {
-	return e.trenchWithin(i, limitCollisionUpper) && e.slabs[i].trench.Boundary.Type() == boundary.ContinentalConvergent
+	return e.look.m.slabCollides[e.slabs[i].index] && e.trenchWithin(i, limitCollisionUpper) && e.slabs[i].trench.Boundary.Type() == boundary.ContinentalConvergent
 }
 
 // minTrenchSquare is the sine of the smallest angle between a trench and the line
@@ -238,7 +242,8 @@ func (e *evidence) collides(i int) bool {
 const minTrenchSquare = 0.75
 
 func decideTrenchDistance(e *evidence) (verdict, bool) {
-	if e.trenchSquare < minTrenchSquare {
+	trench := e.viewTrench()
+	if trench.square < minTrenchSquare {
 		return undecided, false
 	}
 	for _, band := range [...]struct {
@@ -247,10 +252,10 @@ func decideTrenchDistance(e *evidence) (verdict, bool) {
 	}{{limitForearc, Forearc}, {limitArc, VolcanicArc}, {limitBackArc, BackArc}} {
 		if e.closer(sourceOverriding, band.limit) {
 			v, _ := decided(band.label, sourceOverriding, band.limit)
-			v.neverHi = e.trenchHasSlab && !e.beforeSlab() // off the end of the slab that is known
+			v.neverHi = trench.hasSlab && !e.beforeSlab() // off the end of the slab that is known
 			return v, true
 		}
-		if e.trenchHasSlab { // farther away the slab itself would say
+		if trench.hasSlab { // farther away the slab itself would say
 			break
 		}
 	}
@@ -277,7 +282,7 @@ func decideOuterRise(e *evidence) (verdict, bool) {
 
 func decideRidgeFlank(e *evidence) (verdict, bool) {
 	if e.within(sourceRidge, limitFlank) && e.youngFlank() {
-		return verdict{label: RidgeFlank, by: sourceRidge, slab: -1, limit: limitFlankAge, neverHi: e.onLand}, true
+		return verdict{label: RidgeFlank, by: sourceRidge, slab: -1, limit: limitFlankAge, neverHi: e.spread().onLand}, true
 	}
 	return undecided, false
 }
@@ -287,7 +292,7 @@ func decideRidgeFlank(e *evidence) (verdict, bool) {
 func (e *evidence) youngFlank() bool {
 	age := e.flankAge()
 	if e.watch.on {
-		if sees(age, e.limit[limitFlankAge], e.moveKm(sourceRidge)*e.flankCos/e.flankKmPerMyr) {
+		if sees(age, e.limit[limitFlankAge], e.moveKm(sourceRidge)*e.flank.cos/e.flank.kmPerMyr) {
 			e.watch.km[sourceRidge] = true
 		}
 		e.watchLimit(age, limitFlankAge, 1)
@@ -304,7 +309,7 @@ func decideConvergent(e *evidence) (verdict, bool) {
 
 func decideCollision(e *evidence) (verdict, bool) {
 	limit := limitCollisionEither
-	switch e.collisionSide {
+	switch e.collisionSide() {
 	case sideUpper:
 		limit = limitCollisionUpper
 	case sideLower:

@@ -18,8 +18,9 @@ type slabEvidence struct {
 	z, sigma float64 // of the slab's top; at the nearest point of the footprint where the site is outside
 	beyond   slab.Beyond
 	outKm    float64
+	looked   bool         // for the trench
 	trench   boundary.Hit // the nearest boundary that the slab goes down from
-	trenchKm float64      // +Inf where there is none within reach
+	trenchKm float64      // +Inf where there is none within reach, or it was not looked for
 }
 
 // unknownDepthSigmaKm is taken where a surface gives no σ.
@@ -31,14 +32,16 @@ const slabTrenchReachKm = 3000
 
 // gatherSlabs collects every slab below the place, and those whose rim or end is
 // within reach.
-func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place, sights *boundary.Sights) {
+func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place) {
 	e.nSlabs = 0
 	const margin = 1 + 3*fifteen // of the limit, less than slab.NearKm in all
 	for i, s := range l.m.c.Slabs {
 		if !s.Near(p.Vec) {
 			continue
 		}
-		x := slabEvidence{slab: s, index: i, trenchKm: math.Inf(1)}
+		x := &e.slabs[e.nSlabs]
+		x.slab, x.index, x.beyond, x.outKm = s, i, slab.NotBeyond, 0
+		x.looked, x.trenchKm = false, math.Inf(1)
 		var in bool
 		if x.reading, in = s.Surface.At(p.Vec); !in {
 			out, near := s.Surface.Outside(p.Vec, e.limit[limitPastRim]*margin)
@@ -51,14 +54,23 @@ func (e *evidence) gatherSlabs(l *Lookup, p boundary.Place, sights *boundary.Sig
 		if math.IsNaN(x.sigma) {
 			x.sigma = unknownDepthSigmaKm
 		}
-		if h, ok := l.m.slabGroups[i].NearestWith(p, slabTrenchReachKm, sights); ok {
-			x.trench, x.trenchKm = h, h.DistanceKm
-		}
-		e.slabs[e.nSlabs] = x
 		if e.nSlabs++; e.nSlabs == maxSlabs {
 			return
 		}
 	}
+}
+
+// slabTrench returns the distance to the nearest boundary that slab i goes down
+// from.
+func (e *evidence) slabTrench(i int) float64 {
+	s := &e.slabs[i]
+	if !s.looked {
+		s.looked = true
+		if h, ok := e.look.m.slabGroups[s.index].NearestWith(e.place, slabTrenchReachKm, e.sights); ok {
+			s.trench, s.trenchKm = h, h.DistanceKm
+		}
+	}
+	return s.trenchKm
 }
 
 // decidingSlab returns which slab of subduction decides: of those below the site

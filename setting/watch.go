@@ -18,19 +18,6 @@ type watch struct {
 	trench [maxSlabs]bool // distance to a slab's boundary
 }
 
-// all marks everything.
-func (w *watch) all() {
-	for i := range w.km {
-		w.km[i] = true
-	}
-	for i := range w.limit {
-		w.limit[i] = true
-	}
-	for i := range w.z {
-		w.z[i], w.trench[i] = true, true
-	}
-}
-
 // sees reports whether a comparison of two numbers may turn out differently when
 // one of them moves by σ.
 func sees(a, b, sigma float64) bool { return math.Abs(a-b) <= sigma*(1+1e-9)+1e-9 } // false for +Inf
@@ -40,13 +27,14 @@ func (e *evidence) moveKm(s source) float64 { return max(e.sigma[s], e.watch.sit
 
 // within reports whether a source is no farther than a limit.
 func (e *evidence) within(s source, l LimitID) bool {
+	km := e.upTo(s, e.about(s, l))
 	if e.watch.on {
-		if sees(e.km[s], e.limit[l], e.moveKm(s)) {
+		if sees(km, e.limit[l], e.moveKm(s)) {
 			e.watch.km[s] = true
 		}
-		e.watchLimit(e.km[s], l, 1)
+		e.watchLimit(km, l, 1)
 	}
-	return e.km[s] <= e.limit[l]
+	return km <= e.limit[l]
 }
 
 // closer reports whether a source is nearer than a limit.
@@ -77,7 +65,7 @@ func (e *evidence) watchDepth(i int, l LimitID, factor float64) {
 // trenchWithin reports whether the boundary of slab i is no farther than a limit.
 func (e *evidence) trenchWithin(i int, l LimitID) bool {
 	s := &e.slabs[i]
-	if math.IsInf(s.trenchKm, 1) {
+	if math.IsInf(e.slabTrench(i), 1) {
 		return false
 	}
 	if e.watch.on {
