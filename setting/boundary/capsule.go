@@ -14,9 +14,10 @@ import (
 // Its numbers have 32 bits, so that a search reads half the memory; w holds
 // [capsuleSlack] for what that loses.
 type capsule struct {
-	a, d [3]float32
-	inv  float32 // 1/d·d, 0 where a and the end coincide
-	w    float32
+	ax, ay, az float32
+	dx, dy, dz float32
+	inv        float32 // 1/d·d, 0 where a and the end coincide
+	w          float32
 }
 
 // capsuleSlack is more than the rounding of a place, of a capsule's line and of
@@ -24,14 +25,15 @@ type capsule struct {
 const capsuleSlack = 2e-6
 
 // point32 is a place on the unit sphere in 32 bits.
-type point32 [3]float32
+type point32 struct{ x, y, z float32 }
 
 func round32(v sphere.Vec) point32 { return point32{float32(v.X), float32(v.Y), float32(v.Z)} }
 
 // newCapsule returns the capsule of that radius around the line from a to b.
 func newCapsule(a, b sphere.Vec, w float64) capsule {
 	d := b.Sub(a)
-	c := capsule{a: round32(a), d: round32(d), w: float32(w + capsuleSlack)}
+	from, by := round32(a), round32(d)
+	c := capsule{from.x, from.y, from.z, by.x, by.y, by.z, 0, float32(w + capsuleSlack)}
 	if l2 := d.Dot(d); l2 > 1e-20 {
 		c.inv = float32(1 / l2)
 	}
@@ -41,14 +43,11 @@ func newCapsule(a, b sphere.Vec, w float64) capsule {
 // axisSq returns the square of the distance in space from p to the line in the
 // capsule's middle.
 func (c *capsule) axisSq(p *point32) float32 {
-	x, y, z := p[0]-c.a[0], p[1]-c.a[1], p[2]-c.a[2]
-	t := (x*c.d[0] + y*c.d[1] + z*c.d[2]) * c.inv
-	if t > 0 {
-		if t > 1 {
-			t = 1
-		}
-		x, y, z = x-t*c.d[0], y-t*c.d[1], z-t*c.d[2]
-	}
+	x, y, z := p.x-c.ax, p.y-c.ay, p.z-c.az
+	t := min(1, max(0, (x*c.dx+y*c.dy+z*c.dz)*c.inv))
+	x -= t * c.dx
+	y -= t * c.dy
+	z -= t * c.dz
 	return x*x + y*y + z*z
 }
 
@@ -62,8 +61,8 @@ func (c *capsule) beyond(axisSq, chord float32) bool {
 // besides reports whether the whole capsule lies on one side of the plane through
 // the sphere's middle that has the unit normal n.
 func (c *capsule) besides(n *point32) bool {
-	start := n[0]*c.a[0] + n[1]*c.a[1] + n[2]*c.a[2]
-	end := start + n[0]*c.d[0] + n[1]*c.d[1] + n[2]*c.d[2]
+	start := n.x*c.ax + n.y*c.ay + n.z*c.az
+	end := start + n.x*c.dx + n.y*c.dy + n.z*c.dz
 	return start > c.w && end > c.w || start < -c.w && end < -c.w
 }
 

@@ -83,7 +83,7 @@ func (t *tree) branchesWithin(p sphere.Vec, chord, size float64, out []cellEntry
 		if b.beyond(axisSq, within) {
 			continue
 		}
-		if b.legs == 0 && b.d[0]*b.d[0]+b.d[1]*b.d[1]+b.d[2]*b.d[2] > lengthSq {
+		if b.legs == 0 && b.dx*b.dx+b.dy*b.dy+b.dz*b.dz > lengthSq {
 			stack[depth], stack[depth+1] = b.at+1, b.at
 			depth += 2
 			continue
@@ -148,6 +148,6 @@ func (c *cells) of(p sphere.Vec) int {
 // away returns the chord from a cell's middle to a place in it, rounded up.
 func (c *cells) away(cell int, q *point32) float32 {
 	m := &c.centres[cell]
-	x, y, z := m[0]-q[0], m[1]-q[1], m[2]-q[2]
+	x, y, z := m.x-q.x, m.y-q.y, m.z-q.z
 	return float32(math.Sqrt(float64(x*x+y*y+z*z))) + capsuleSlack
 }
