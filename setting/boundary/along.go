@@ -27,7 +27,7 @@ func (n *Network) AlongTo(p Place, azimuthDeg float64, t Type, plate string, max
 	back, _ := sphere.NewArc(p.Vec, ahead.Sub(forward))
 	within, q, plane := reachOfRad(rad), round32(p.Vec), round32(front.N)
 	best := math.Inf(1)
-	n.each(n.byType[t], f, func(c *capsule) bool {
+	n.each(n.byPlate[f.plate][t], f, func(c *capsule) bool {
 		return c.besides(&plane) || c.beyond(c.axisSq(&q), within.chord)
 	}, func(i int32) {
 		for _, line := range [...]*sphere.Arc{&front, &back} {

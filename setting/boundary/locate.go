@@ -48,6 +48,10 @@ func (h *Hit) BoundaryAzimuthDeg() float64 {
 // the most.
 const nearTie = 0.01
 
+// moreOnSphere makes a distance on the ellipsoid one on the sphere that misses
+// nothing.
+const moreOnSphere = 1.006
+
 // coincideKm is the difference in distance that counts as none: 1 µm.
 const coincideKm = 1e-9
 
@@ -109,20 +113,21 @@ func (n *Network) NearestOf(p Place, t Type, plate string, role Role, maxKm floa
 // place.
 func (n *Network) NearestOfWith(p Place, t Type, plate string, role Role, maxKm float64, s *Sights) (Hit, bool) {
 	f := filter{noPlate, role}
-	if role != AnyRole {
-		if f.plate = n.plateIndex(plate); f.plate == noPlate {
-			return Hit{}, false
-		}
+	s.start(n, p)
+	if role == AnyRole {
+		return n.nearestIn(n.byType[t], p, f, maxKm, s)
 	}
-	return n.nearestIn(n.byType[t], p, f, maxKm, s)
+	if f.plate = s.index(plate); f.plate == noPlate {
+		return Hit{}, false
+	}
+	return n.nearestIn(n.byPlate[f.plate][t], p, f, maxKm, s)
 }
 
 // nearestIn returns the boundary of a tree that passes and is nearest to a place.
 func (n *Network) nearestIn(t *tree, p Place, f filter, maxKm float64, s *Sights) (Hit, bool) {
-	// 0.6 % more on the sphere, so that none is missed that is within on the ellipsoid
 	s.start(n, p)
 	first := found{leg: -1}
-	n.search(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*1.006)), &first, &s.rivals)
+	n.search(t, p.Vec, f, reachOfRad(sphere.KmToRad(maxKm*moreOnSphere)), &first, &s.rivals)
 	if first.leg < 0 {
 		return Hit{}, false
 	}

@@ -20,6 +20,7 @@ type Network struct {
 	nodes      []node
 	all        *tree
 	byType     [NumTypes]*tree
+	byPlate    [][NumTypes]*tree   // of the boundaries of each plate
 	boxes      rtree.RTreeG[int32] // legs, by longitude and latitude
 }
 
@@ -81,6 +82,18 @@ func (n *Network) index() {
 	n.all.cells = n.newCells(n.all)
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
+	}
+	n.byPlate = make([][NumTypes]*tree, len(n.plates))
+	for p := range n.byPlate {
+		for t := range of {
+			var bounding []int32
+			for _, i := range of[t] {
+				if l := &n.legs[i]; int(l.left) == p || int(l.right) == p {
+					bounding = append(bounding, i)
+				}
+			}
+			n.byPlate[p][t] = newTree(n.legs, bounding)
+		}
 	}
 	for i := range n.legs {
 		for _, box := range boxes(&n.legs[i].arc) {

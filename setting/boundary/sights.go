@@ -10,14 +10,16 @@ import (
 // several questions about the place pay for each once. The zero value is ready;
 // with another place it starts anew. It must not be shared between goroutines.
 type Sights struct {
-	of     *Network
-	from   sphere.LonLat
-	feet   [maxSights]sphere.Vec
-	at     [maxSights]sphere.LonLat // the same feet
-	km     [maxSights]float64
-	az     [maxSights]float64
-	n      int
-	rivals rivals // room for the list, which is too large to be cleared each time
+	of      *Network
+	from    sphere.LonLat
+	feet    [maxSights]sphere.Vec
+	at      [maxSights]sphere.LonLat // the same feet
+	km      [maxSights]float64
+	az      [maxSights]float64
+	n       int
+	plate   string // asked for last
+	plateAt uint8  // its index
+	rivals  rivals // room for the list, which is too large to be cleared each time
 }
 
 const maxSights = 16
@@ -28,6 +30,15 @@ func (s *Sights) start(n *Network, p Place) {
 		return
 	}
 	s.of, s.from, s.n = n, p.LonLat, 0
+	s.plate, s.plateAt = "", noPlate
+}
+
+// index is [Network.plateIndex], for the same plate as a rule.
+func (s *Sights) index(plate string) uint8 {
+	if plate != s.plate {
+		s.plate, s.plateAt = plate, s.of.plateIndex(plate)
+	}
+	return s.plateAt
 }
 
 // to returns the foot's position, and the length and the azimuth of the geodesic

@@ -67,10 +67,16 @@ type builder struct {
 	legs     []leg
 	rods     []rod        // around each run
 	middles  []sphere.Vec // of each run
-	runs     [][2]int32   // its first leg, and how many
-	order    []int32      // of the runs
-	part     []rod        // room for the rods of a branch
+	runs     []run
+	order    []int32 // of the runs
+	part     []rod   // room for the rods of a branch
 	branches []branch
+}
+
+// run is a leaf to be: its first leg, and how many.
+type run struct {
+	first int32
+	legs  int32
 }
 
 func (b *builder) addRun(which []int32) {
@@ -81,7 +87,7 @@ func (b *builder) addRun(which []int32) {
 	r := rodAround(rods[:len(which)])
 	b.rods = append(b.rods, r)
 	b.middles = append(b.middles, r.a.Add(r.b))
-	b.runs = append(b.runs, [2]int32{which[0], int32(len(which))})
+	b.runs = append(b.runs, run{which[0], int32(len(which))})
 }
 
 func (b *builder) build(at int, from, to int) {
@@ -93,7 +99,7 @@ func (b *builder) build(at int, from, to int) {
 	r := rodAround(rods)
 	out := branch{capsule: newCapsule(r.a, r.b, r.w)}
 	if len(part) == 1 {
-		out.at, out.legs = b.runs[part[0]][0], b.runs[part[0]][1]
+		out.at, out.legs = b.runs[part[0]].first, b.runs[part[0]].legs
 		out.addPlates(&b.legs[out.at])
 		b.branches[at] = out
 		return

@@ -50,6 +50,7 @@ type Info struct {
 type Model struct {
 	info    Info
 	entries []Entry // sorted by plate
+	byPlate map[string]*Entry
 }
 
 // NewModel checks the entries and builds a model from them.
@@ -62,8 +63,10 @@ func NewModel(info Info, entries []Entry) (*Model, error) {
 	}
 	m := &Model{info: info, entries: slices.Clone(entries)}
 	slices.SortFunc(m.entries, func(a, b Entry) int { return strings.Compare(a.Plate, b.Plate) })
+	m.byPlate = make(map[string]*Entry, len(m.entries))
 	for i := range m.entries {
 		e := &m.entries[i]
+		m.byPlate[e.Plate] = e
 		if i > 0 && m.entries[i-1].Plate == e.Plate {
 			return fail("plate %q stands twice", e.Plate)
 		}
@@ -100,21 +103,7 @@ func (m *Model) Entries() []Entry { return slices.Clone(m.entries) }
 // Has reports whether the model holds the plate.
 func (m *Model) Has(plate string) bool { return m.entry(plate) != nil }
 
-func (m *Model) entry(plate string) *Entry {
-	lo, hi := 0, len(m.entries)
-	for lo < hi {
-		mid := (lo + hi) / 2
-		if m.entries[mid].Plate < plate {
-			lo = mid + 1
-		} else {
-			hi = mid
-		}
-	}
-	if lo < len(m.entries) && m.entries[lo].Plate == plate {
-		return &m.entries[lo]
-	}
-	return nil
-}
+func (m *Model) entry(plate string) *Entry { return m.byPlate[plate] }
 
 // Basis returns the basis of the plate's angular velocity, "" where the model
 // lacks the plate.
