@@ -33,13 +33,17 @@ func BenchmarkPointRatio(b *testing.B) {
 		b.Fatal(err)
 	}
 	ours := New(Config{Models: shelf([]*setting.Model{bundle.Model}), Registry: prometheus.NewRegistry(), Log: slog.New(slog.NewJSONHandler(io.Discard, nil))})
-	const path = "/v1/point?lon=-72.4&lat=-36.1"
-	rec := httptest.NewRecorder()
-	ours.ServeHTTP(rec, httptest.NewRequest(http.MethodGet, path, nil))
-	body := bytes.Clone(rec.Body.Bytes())
-	if rec.Code != http.StatusOK {
-		b.Fatal(rec.Body)
+	var bodies [][]byte // one of a size that answers have
+	for i := range 1001 {
+		rec := httptest.NewRecorder()
+		ours.ServeHTTP(rec, httptest.NewRequest(http.MethodGet, benchPoint(i), nil))
+		if rec.Code != http.StatusOK {
+			b.Fatal(rec.Body)
+		}
+		bodies = append(bodies, bytes.Clone(rec.Body.Bytes()))
 	}
+	slices.SortFunc(bodies, func(a, b []byte) int { return len(a) - len(b) })
+	body := bodies[len(bodies)/2]
 	bare := echo.New()
 	bare.GET("/v1/point", func(c echo.Context) error {
 		c.Response().Header().Set(echo.HeaderContentLength, strconv.Itoa(len(body)))
@@ -53,7 +57,7 @@ func BenchmarkPointRatio(b *testing.B) {
 		client := &http.Client{Transport: &http.Transport{}}
 		return func(i int) {
 			start := time.Now()
-			r, err := client.Get(fmt.Sprintf("%s/v1/point?lon=%d&lat=%d.5", server.URL, i%360-179, i%179-89))
+			r, err := client.Get(server.URL + benchPoint(i))
 			if err != nil {
 				b.Fatal(err)
 			}
@@ -81,6 +85,11 @@ func BenchmarkPointRatio(b *testing.B) {
 	}
 	b.ReportMetric(p99[0]/p99[1], "p99-of-the-bare")
 	b.ReportMetric(float64(len(body)), "B/body")
+}
+
+// benchPoint is a place to ask for.
+func benchPoint(i int) string {
+	return fmt.Sprintf("/v1/point?lon=%d&lat=%d.5", i%360-179, i%179-89)
 }
 
 // TestIsDecimal compares with the form written as a regular expression.
