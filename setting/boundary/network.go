@@ -82,6 +82,9 @@ func (n *Network) index() {
 	n.all.cells = n.newCells(n.all)
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
+		if len(of[t]) > 0 {
+			n.byType[t].cells = n.newCells(n.byType[t])
+		}
 	}
 	n.byPlate = make([][NumTypes]*tree, len(n.plates))
 	for p := range n.byPlate {
