@@ -54,7 +54,7 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
-	slots   chan struct{} // for pieces of batches
+	turns   *turns
 	echo    *echo.Echo
 	site    *page.Site
 }
@@ -66,13 +66,13 @@ func New(cfg Config) *Server {
 		panic(err) // a file of the program's own
 	}
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New(), site: site}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = cfg.Access.ipExtractor()
 	e.HTTPErrorHandler = s.handleError
-	e.Use(identify, s.observe, s.admit)
+	e.Use(identify, s.observe, s.admit, s.turns.note)
 	for path, h := range map[string]echo.HandlerFunc{
 		"/v1/point":       s.point,
 		"/v1/area":        s.areaOfBox,

@@ -20,6 +20,7 @@ type features struct {
 	st   Stats
 	kind string // the type member, once seen
 	buf  []byte // members that stand before the features
+	raw  json.RawMessage
 }
 
 // annotateGeoJSON copies a FeatureCollection, feature by feature, and adds the
@@ -105,6 +106,13 @@ func (f *features) member(key string) error {
 	return nil
 }
 
+// rawFeatures are the texts of a chunk's features, end to end.
+type rawFeatures struct {
+	text   []byte
+	ends   []int
+	before int64 // features before the first
+}
+
 // stream copies the features.
 func (f *features) stream(ctx context.Context) error {
 	tok, err := f.d.Token()
@@ -114,39 +122,55 @@ func (f *features) stream(ctx context.Context) error {
 	if tok != json.Delim('[') {
 		return &InputError{Pointer: "/features", Detail: "features must be an array"}
 	}
-	for f.d.More() {
-		if f.st.Rows%256 == 0 {
-			if err := ctx.Err(); err != nil {
-				return err
+	var before int64 // features read
+	read := func(c *chunk[rawFeatures]) (more bool, err error) {
+		r := &c.rows
+		r.text, r.ends, r.before = r.text[:0], r.ends[:0], before
+		for len(r.ends) < chunkRows && len(r.text) < chunkBytes {
+			if !f.d.More() {
+				return false, nil
 			}
-			if f.o.Progress != nil {
-				f.o.Progress(f.st)
+			f.g.mark(f.d.InputOffset())
+			f.raw = f.raw[:0]
+			if err := f.d.Decode(&f.raw); err != nil {
+				return false, err
+			}
+			if len(f.raw) > f.o.RowBytes { // the guard alone is as coarse as the reads are
+				return false, errRowTooLong
+			}
+			if f.raw[0] != '{' {
+				return false, &InputError{Pointer: fmt.Sprintf("/features/%d", before), Detail: "a feature must be a JSON object"}
+			}
+			before++
+			c.n++
+			r.text = append(r.text, f.raw...)
+			r.ends = append(r.ends, len(r.text))
+		}
+		return true, nil
+	}
+	newWorker := func() func(*chunk[rawFeatures]) {
+		k := &asker{o: f.o}
+		return func(c *chunk[rawFeatures]) {
+			from := 0
+			for i, to := range c.rows.ends {
+				if c.rows.before > 0 || i > 0 {
+					c.out = append(c.out, ',')
+				}
+				c.out = append(c.out, '\n')
+				var ok bool
+				if c.out, ok = k.feature(c.out, c.rows.text[from:to]); !ok {
+					c.errors++
+				}
+				from = to
 			}
 		}
-		f.g.mark(f.d.InputOffset())
-		var raw json.RawMessage
-		if err := f.d.Decode(&raw); err != nil {
-			return err
-		}
-		if len(raw) > f.o.RowBytes { // the guard alone is as coarse as the reads are
-			return errRowTooLong
-		}
-		f.buf = f.buf[:0]
-		if f.st.Rows > 0 {
-			f.buf = append(f.buf, ',')
-		}
-		f.buf = append(f.buf, '\n')
-		f.st.Rows++
-		if raw[0] != '{' {
-			return &InputError{Pointer: fmt.Sprintf("/features/%d", f.st.Rows-1), Detail: "a feature must be a JSON object"}
-		}
-		var ok bool
-		if f.buf, ok = f.feature(f.buf, raw); !ok {
-			f.st.Errors++
-		}
-		if err := f.write(0, f.buf, 0); err != nil {
-			return err
-		}
+	}
+	f.st, err = inOrder(ctx, f.o, read, newWorker, func(b []byte) error {
+		_, err := f.out.Write(b)
+		return err
+	})
+	if err != nil {
+		return err
 	}
 	_, err = f.d.Token() // the closing bracket
 	return err

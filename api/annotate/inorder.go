@@ -46,12 +46,10 @@ func inOrder[R any](ctx context.Context, o *Options,
 			work := newWorker()
 			for c := range todo {
 				c.out, c.errors = c.out[:0], 0
-				if o.Slots != nil {
-					o.Slots <- struct{}{}
-				}
-				work(c)
-				if o.Slots != nil {
-					<-o.Slots
+				if o.Turn != nil {
+					o.Turn(func() { work(c) })
+				} else {
+					work(c)
 				}
 				c.done <- struct{}{}
 			}

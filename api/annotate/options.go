@@ -39,9 +39,9 @@ type Options struct {
 	// Ground, with which ElevationColumn names the ground's height above sea level.
 	DepthUnit, DepthDatum, ElevationColumn string
 	Progress                               func(Stats) // called now and then; may be nil
-	// Slots bounds how many chunks are worked on at once, of all runs that share it:
-	// a place in it is taken for each. No bound where nil.
-	Slots      chan struct{}
+	// Turn calls the work on a chunk when its turn comes, where several runs share
+	// the processors; nil calls it at once.
+	Turn       func(work func())
 	RowBytes   int   // most bytes of a row, line or feature; MaxRowBytes where 0
 	ArrayBytes int64 // most bytes of a JSON array; MaxArrayBytes where 0
 }
