@@ -29,7 +29,7 @@ func (r *rig) send(method, target string, header ...string) *httptest.ResponseRe
 func tokens(t *testing.T) *access.Tokens {
 	t.Helper()
 	sum := func(s string) string { x := sha256.Sum256([]byte(s)); return hex.EncodeToString(x[:]) }
-	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret"))
+	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret") + "\nother batch " + sum("o-secret"))
 	if err != nil {
 		t.Fatal(err)
 	}
