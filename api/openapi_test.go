@@ -16,6 +16,7 @@ import (
 
 	"github.com/santhosh-tekuri/jsonschema/v6"
 
+	"nearmargin/api/wire"
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/slab"
@@ -263,6 +264,15 @@ func TestNoteCodesMatchTheDomain(t *testing.T) {
 	slices.Sort(want)
 	if len(want) == 0 || !slices.Equal(got, want) {
 		t.Errorf("NoteCode lists %v, the domain has %v", got, want)
+	}
+}
+
+// TestColumnsMatchTheTable compares the columns that the document says a table gains
+// with those that it gains.
+func TestColumnsMatchTheTable(t *testing.T) {
+	text := at(t, document(t), "paths", "/v1/annotate", "post")["description"].(string)
+	if want := "gains the columns " + strings.Join(wire.Columns[:], ", ") + ", each with the prefix"; !strings.Contains(text, want) {
+		t.Errorf("the description does not say %q", want)
 	}
 }
 
