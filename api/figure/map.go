@@ -31,6 +31,7 @@ const (
 	leastReachKm = 250 // from the middle of a map to its edge
 	mostMapH     = 760
 	mostNamed    = 40 // sites; more are not named
+	longestName  = 40 // characters of a name
 )
 
 // locationMap is a map on its way to a figure.
@@ -38,15 +39,17 @@ type locationMap struct {
 	canvas
 	s          *MapSpec
 	proj       projection
-	k          float64 // px to the Earth radius
-	cx, cy     float64 // px of the plane's origin
-	x, y, w, h float64 // the frame
+	k          float64                // px to the Earth radius
+	cx, cy     float64                // px of the plane's origin
+	x, y, w, h float64                // the frame
+	drawn      map[boundary.Type]bool // the types of boundary within the frame
+	unnamed    int                    // sites whose name found no room
 }
 
 // Map draws sites by their setting among land and plate boundaries: a location map
 // with legend, scale and caption. The result is one SVG document.
 func Map(s *MapSpec) []byte {
-	m := &locationMap{s: s}
+	m := &locationMap{s: s, drawn: map[boundary.Type]bool{}}
 	bottom := m.measure()
 	m.drawMap()
 	height := m.drawBelow(bottom)
@@ -96,8 +99,12 @@ func (m *locationMap) measure() float64 {
 		places = append(places, m.s.Sites[i].At)
 	}
 	m.x, m.w = marginX, figureW-2*marginX
-	m.content("text", m.s.Title, like("ink", "x", px(marginX), "y", px(marginX+titleSize), "font-size", px(titleSize), "font-weight", "bold"))
-	m.y = marginX + titleSize + 14
+	m.y = marginX
+	for _, l := range wrap(m.s.Title, titleSize*1.08, m.w) { // a bold face is wider
+		m.content("text", l, like("ink", "x", px(marginX), "y", px(m.y+titleSize), "font-size", px(titleSize), "font-weight", "bold"))
+		m.y += titleSize * lineH
+	}
+	m.y += 14 - titleSize*(lineH-1)
 	m.proj, _ = chooseProjection(places)
 	if _, world := m.proj.(equalEarth); world {
 		right, _, _ := m.proj.at(sphere.LonLat{Lon: 180})
@@ -277,6 +284,7 @@ func (m *locationMap) drawBoundaries() {
 			}
 			for _, part := range b.Parts() {
 				for _, l := range m.lines(part) {
+					m.drawn[look.typ] = m.drawn[look.typ] || slices.ContainsFunc(l, func(p point) bool { return m.within(p, 0) })
 					d.WriteString(pathOf(l, false))
 					if look.teeth || look.ticks {
 						markAlong(&marks, l, side, look.teeth)

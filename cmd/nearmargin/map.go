@@ -65,8 +65,8 @@ func (p *program) readAnnotated(ctx context.Context, f *flags, each func(annotat
 	return name, nil
 }
 
-// mostOnMap bounds the sites of a map: more could not be told apart.
-const mostOnMap = 50_000
+// mostOnMap bounds the sites of a map, which are held in memory.
+const mostOnMap = 1_000_000
 
 // drawMap draws an annotated file as a location map.
 func drawMap(p *program, ctx context.Context, f *flags) error {
@@ -110,7 +110,7 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 	}
 	spec.Caption = append(spec.Caption, fmt.Sprintf("Answers from %s; boundaries of %s (sha256 %.12s), %s, %s.", strings.Join(models, ", "), m.Ref(), m.SHA256(), m.Title(), m.Licence()))
 	if areas > 0 {
-		spec.Caption = append(spec.Caption, fmt.Sprintf("%d areas are not drawn.", areas))
+		spec.Caption = append(spec.Caption, fmt.Sprintf("Areas, which are not drawn: %d.", areas))
 	}
 	spec.Caption = append(spec.Caption, m.Citations()...)
 	spec.Caption = append(spec.Caption, "Land: Natural Earth. The setting is that of the present day. A screening aid on generalised models: for hazard, siting or drilling defer to national hazard models, local codes and licensed practice.")
