@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"unique"
 
 	"nearmargin/api/annotate"
 	"nearmargin/api/figure"
@@ -86,7 +87,7 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 			return fmt.Errorf("more than %d sites; draw a part of them", mostOnMap)
 		default:
 			at := sphere.LonLat{Lon: sphere.WrapLon(r.Lon), Lat: r.Lat}
-			spec.Sites = append(spec.Sites, figure.MapSite{Name: r.Name, At: at, Label: r.Label, Family: r.Family, Confidence: r.Confidence})
+			spec.Sites = append(spec.Sites, figure.MapSite{Name: strings.Clone(r.Name), At: at, Label: kept(r.Label), Family: kept(r.Family), Confidence: kept(r.Confidence)})
 		}
 		return nil
 	})
@@ -120,6 +121,9 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 		return err
 	})
 }
+
+// kept returns a text of which there are few, as the one copy of it.
+func kept(s string) string { return unique.Make(s).Value() }
 
 // near reports whether sites lie close enough together for the fine outline of land.
 func near(sites []figure.MapSite) bool {
