@@ -91,8 +91,8 @@ func TestExamplesAreAnswered(t *testing.T) {
 	for _, o := range operations(t, document(t)) {
 		targets := []string{o.query()}
 		for name, examples := range o.optional {
-			if strings.HasSuffix(name, "_column") || strings.HasPrefix(name, "depth_") && o.method == http.MethodPost {
-				continue // they name columns of the caller's own table; the tests of batches send them
+			if o.id == "annotate" && (strings.HasSuffix(name, "_column") || strings.HasPrefix(name, "depth_")) {
+				continue // they name columns; TestColumnExamplesAreAnswered sends them
 			}
 			for _, e := range examples {
 				targets = append(targets, o.query(name, e))
@@ -110,6 +110,46 @@ func TestExamplesAreAnswered(t *testing.T) {
 	}
 	if sent < 60 {
 		t.Errorf("only %d examples were sent", sent)
+	}
+}
+
+// TestColumnExamplesAreAnswered sends the examples of parameters that name a column, or
+// say how one is read, with a table that has such columns; some need one another.
+func TestColumnExamplesAreAnswered(t *testing.T) {
+	const (
+		table   = "lon,lat,X,Y,hypocentre_km,ground_m,h_error_km\n-72.4,-36.1,-72.4,-36.1,25,1,2\n"
+		feature = `{"type":"Feature","properties":null,"geometry":{"type":"Point","coordinates":[-72.4,-36.1,25]}}`
+	)
+	beside := map[string][]string{
+		"lon_column": {"lat_column", "Y"}, "lat_column": {"lon_column", "X"},
+		"depth_unit":       {"depth_column", "hypocentre_km"},
+		"depth_datum":      {"depth_column", "hypocentre_km", "elevation_column", "ground_m"},
+		"elevation_column": {"depth_column", "hypocentre_km", "depth_datum", "ground"},
+	}
+	r, sent := builtinRig(t), 0
+	for _, o := range operations(t, document(t)) {
+		for name, examples := range o.optional {
+			if o.id != "annotate" || !strings.HasSuffix(name, "_column") && !strings.HasPrefix(name, "depth_") {
+				continue
+			}
+			for _, e := range examples {
+				media, body := "text/csv", table
+				if e == "@z" {
+					media, body = "application/geo+json", feature
+				}
+				w := r.ask(o.method, o.query(append(beside[name], name, e)...), media, body)
+				sent++
+				if w.Code != http.StatusOK || w.Result().Trailer.Get("Nearmargin-Row-Errors") != "0" {
+					t.Errorf("%s=%s: status %d: %s", name, e, w.Code, w.Body)
+				}
+				if strings.HasPrefix(name, "depth_") && !strings.Contains(w.Body.String(), "above") && !strings.Contains(w.Body.String(), "near_interface") && !strings.Contains(w.Body.String(), "below") {
+					t.Errorf("%s=%s: no depth was read: %s", name, e, w.Body)
+				}
+			}
+		}
+	}
+	if sent != 8 {
+		t.Errorf("%d examples were sent, want 8", sent)
 	}
 }
 

@@ -308,7 +308,7 @@ func jsonRow(n int64, members, outer gjson.Result) Row {
 		row.Area = true
 		return row
 	}
-	row.Lon, row.Lat = t.Get("site.lon").Float(), t.Get("site.lat").Float()
+	row.Lon, row.Lat = place(t.Get("site.lon").Raw, false, -180, 360), place(t.Get("site.lat").Raw, false, -90, 90)
 	s := t.Get("setting")
 	row.Label, row.Family, row.Confidence = s.Get("label").String(), s.Get("family").String(), s.Get("confidence").String()
 	row.Reason = s.Get("reasons.0").String()
@@ -319,6 +319,6 @@ func jsonRow(n int64, members, outer gjson.Result) Row {
 		}
 		row.Reason = strings.Join(all, "; ")
 	}
-	row.BoundaryType, row.DistanceKm = t.Get("nearest_boundary.type").String(), t.Get("nearest_boundary.distance_km").Float()
+	row.BoundaryType, row.DistanceKm = t.Get("nearest_boundary.type").String(), distance(t.Get("nearest_boundary.distance_km").Raw)
 	return row
 }
