@@ -64,9 +64,9 @@ func Map(s *MapSpec) []byte {
 	head.start("clipPath", attrs{"id", "nm-frame"})
 	head.leaf("rect", attrs{"x", px(m.x), "y", px(m.y), "width", px(m.w), "height", px(m.h)})
 	head.end()
-	if _, world := m.proj.(equalEarth); world {
+	if world, ok := m.proj.(equalEarth); ok {
 		head.start("clipPath", attrs{"id", "nm-rim"})
-		head.leaf("path", attrs{"d", pathOf(m.rim(), true)})
+		head.leaf("path", attrs{"d", pathOf(m.rim(world), true)})
 		head.end()
 	}
 	head.end()
@@ -106,8 +106,8 @@ func (m *locationMap) measure() float64 {
 	}
 	m.y += 14 - titleSize*(lineH-1)
 	m.proj, _ = chooseProjection(places)
-	if _, world := m.proj.(equalEarth); world {
-		right, _, _ := m.proj.at(sphere.LonLat{Lon: 180})
+	if world, ok := m.proj.(equalEarth); ok {
+		right, _, _ := world.at(world.edge(0, 1))
 		_, top, _ := m.proj.at(sphere.LonLat{Lat: 90})
 		m.k = m.w / 2 / right
 		m.h = 2 * top * m.k
@@ -131,6 +131,15 @@ func (m *locationMap) measure() float64 {
 
 // to returns where a place is in px.
 func (m *locationMap) to(p sphere.LonLat) (point, bool) {
+	if world, ok := m.proj.(equalEarth); ok {
+		p = world.seen(p)
+	}
+	return m.past(p)
+}
+
+// past returns where a place is in px; on a world map its longitude may run on past the
+// edges.
+func (m *locationMap) past(p sphere.LonLat) (point, bool) {
 	x, y, ok := m.proj.at(p)
 	return point{m.cx + x*m.k, m.cy - y*m.k}, ok
 }
@@ -155,10 +164,19 @@ func (m *locationMap) lines(path []sphere.LonLat) (out [][]point) {
 			flush()
 			continue
 		}
+		if m.jumps(run, q) {
+			flush()
+		}
 		run = append(run, q)
 	}
 	flush()
 	return out
+}
+
+// jumps reports whether a line that runs on to a point crosses the edges of a world map.
+func (m *locationMap) jumps(run []point, q point) bool {
+	_, world := m.proj.(equalEarth)
+	return world && len(run) > 0 && math.Abs(q.x-run[len(run)-1].x) > m.w/2
 }
 
 func (m *locationMap) drawMap() {
@@ -243,6 +261,9 @@ func (m *locationMap) meshLine(line []sphere.LonLat, off func(point) float64) (a
 		if !has || !m.within(q, 400) {
 			flush()
 			continue
+		}
+		if m.jumps(run, q) {
+			flush()
 		}
 		if n := len(run); n > 0 {
 			a, b := off(run[n-1]), off(q)

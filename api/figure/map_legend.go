@@ -8,9 +8,6 @@ import (
 	"nearmargin/setting/sphere"
 )
 
-// eastEnd is the end of the equator on a world map.
-var eastEnd = sphere.LonLat{Lon: 180}
-
 func marksOf(line []point, teeth bool) string {
 	var d strings.Builder
 	markAlong(&d, line, 1, teeth)
@@ -113,8 +110,8 @@ func (m *locationMap) drawMarker(shape, family string, open bool, p point) {
 func (m *locationMap) drawBar() {
 	perKm := m.k / sphere.MeanRadiusKm
 	words := ""
-	if _, world := m.proj.(equalEarth); world {
-		right, _, _ := m.proj.at(eastEnd)
+	if world, ok := m.proj.(equalEarth); ok {
+		right, _, _ := world.at(world.edge(0, 1))
 		perKm = right * m.k / (math.Pi * 6378.137)
 		words = " at the equator"
 	}

@@ -30,8 +30,9 @@ func TestProjectionsAgainstProj(t *testing.T) {
 		p    projection
 		args []string
 	}{
-		"Equal Earth": {equalEarth{}, []string{"+proj=eqearth", "+R=1"}},
-		"azimuthal":   {newAzimuthal(sphere.FromLonLat(sphere.LonLat{Lon: 140, Lat: -35})), []string{"+proj=laea", "+lat_0=-35", "+lon_0=140", "+R=1"}},
+		"Equal Earth":            {equalEarth{}, []string{"+proj=eqearth", "+R=1"}},
+		"Equal Earth about 90 E": {equalEarth{90}, []string{"+proj=eqearth", "+R=1", "+lon_0=90"}},
+		"azimuthal":              {newAzimuthal(sphere.FromLonLat(sphere.LonLat{Lon: 140, Lat: -35})), []string{"+proj=laea", "+lat_0=-35", "+lon_0=140", "+R=1"}},
 	} {
 		for _, at := range []sphere.LonLat{{Lon: 0, Lat: 0}, {Lon: 139, Lat: -34}, {Lon: 170, Lat: 45}, {Lon: 60.5, Lat: -80.25}, {Lon: 179, Lat: 10}} {
 			cmd := exec.Command("cct", append([]string{"-d", "12"}, c.args...)...)
@@ -67,6 +68,29 @@ func TestProjectionsByHand(t *testing.T) {
 	_, h, _ := equalEarth{}.at(sphere.LonLat{Lat: 90})
 	if math.Abs(w/h-2.05458) > 1e-5 {
 		t.Errorf("the map is %g wide and %g high", w, h)
+	}
+}
+
+// TestMiddleMeridian: Greenwich, but where that would cut the places apart.
+func TestMiddleMeridian(t *testing.T) {
+	at := func(lons ...float64) (out []sphere.LonLat) {
+		for _, lon := range lons {
+			out = append(out, sphere.LonLat{Lon: lon})
+		}
+		return out
+	}
+	for _, c := range []struct {
+		name   string
+		places []sphere.LonLat
+		want   float64
+	}{
+		{"none", nil, 0}, {"Atlantic", at(-70, 0, 30), 0}, {"around the Pacific", at(140, 170, -175, -72), -150},
+		{"around the Pacific, but none near the edge", at(140, -72), 0}, {"all the way round", at(-180, -130, -80, -30, 20, 70, 120, 170), 0},
+		{"on the edge", at(180, 120), 150}, {"antipodes, none at the edge", at(0, 180), -90},
+	} {
+		if got := middleMeridian(c.places); got != c.want {
+			t.Errorf("%s: %g, want %g", c.name, got, c.want)
+		}
 	}
 }
 
@@ -113,6 +137,7 @@ func TestMapsAreWellFormed(t *testing.T) {
 	for name, sites := range map[string][]MapSite{
 		"one": {site(10, 50)}, "pole": {site(0, 90)}, "antimeridian": {site(179.9, -20), site(-179.9, -19)},
 		"antipodes": {site(0, 0), site(180, 0)}, "world": {site(-70, -30), site(140, 35), site(20, 60)}, "none": nil,
+		"Pacific": {site(140, 38), site(178, -18), site(-172, -14), site(-72, -33)},
 	} {
 		out := Map(&MapSpec{Title: "T & <t>", Sites: sites, Land: land, Boundaries: b.Model.Network().Boundaries(), Caption: []string{"c"}})
 		d := xml.NewDecoder(bytes.NewReader(out))
@@ -130,6 +155,11 @@ func TestMapsAreWellFormed(t *testing.T) {
 		}
 		if n := bytes.Count(out, []byte(`class="nm-s-subduction"`)); len(sites) > 0 && n != len(sites)+1 {
 			t.Errorf("%s: %d markers for %d sites and the legend", name, n, len(sites))
+		}
+		for _, at := range markerAt.FindAllSubmatch(out, len(sites)) {
+			if x, err := strconv.ParseFloat(string(at[1]), 64); err != nil || x < marginX-0.1 || x > figureW-marginX+0.1 {
+				t.Errorf("%s: a marker stands at %s", name, at[1])
+			}
 		}
 		if !bytes.Contains(out, []byte("km")) {
 			t.Errorf("%s lacks a scale", name)

@@ -137,7 +137,7 @@ func (f *File) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 	h := w.Header()
 	h.Set("ETag", f.ETag)
 	h.Set("Cache-Control", "no-cache") // kept, and asked about before each use
-	h.Set("Vary", "Accept-Encoding")
+	h.Add("Vary", "Accept-Encoding")
 	h.Set("X-Content-Type-Options", "nosniff")
 	h.Set("Referrer-Policy", "no-referrer")
 	h.Set("Content-Security-Policy", ContentSecurityPolicy)
