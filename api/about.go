@@ -1,8 +1,8 @@
 package api
 
 import (
+	"bytes"
 	_ "embed"
-	"net/http"
 	"net/url"
 	"time"
 
@@ -135,7 +135,7 @@ func (s *Server) model(c echo.Context) error {
 
 // health says that the process runs.
 func (s *Server) health(c echo.Context) error {
-	return sendJSON(c, map[string]string{"status": "ok"})
+	return sendState(c, map[string]string{"status": "ok"})
 }
 
 type readiness struct {
@@ -150,7 +150,7 @@ type readiness struct {
 // still answers.
 func (s *Server) ready(c echo.Context) error {
 	if s.gate.draining.Load() {
-		return overload("draining", "The service is shutting down", "this instance takes no new work")
+		return overload(kindDraining, "The service is shutting down", "this instance takes no new work")
 	}
 	out := readiness{Status: "ready", Model: refOf(s.cfg.Models.Active())}
 	if s.cfg.Source != nil {
@@ -158,7 +158,7 @@ func (s *Server) ready(c echo.Context) error {
 			out.Status, out.Since, out.Reason = "degraded", since.UTC().Format(time.RFC3339Nano), reason
 		}
 	}
-	return sendJSON(c, out)
+	return sendState(c, out)
 }
 
 //go:embed openapi.json
@@ -167,7 +167,16 @@ var openapiDocument []byte
 // OpenAPI returns the OpenAPI 3.1 document of the service.
 func OpenAPI() []byte { return openapiDocument }
 
+// documentBelow returns the document of a service whose paths stand below a base path:
+// the paths of a document count from its server's address.
+func documentBelow(base string) []byte {
+	if base == "" {
+		return openapiDocument
+	}
+	return bytes.Replace(openapiDocument, []byte(`"servers": [{"url": "/"`), []byte(`"servers": [{"url": "`+base+`"`), 1)
+}
+
 // openapi sends the description of the service.
 func (s *Server) openapi(c echo.Context) error {
-	return c.Blob(http.StatusOK, echo.MIMEApplicationJSON, openapiDocument)
+	return sendBytes(c, echo.MIMEApplicationJSON, s.document)
 }

@@ -101,7 +101,7 @@ func (s *Server) allowance(c echo.Context, client string) error {
 	}
 	s.metrics.refused.WithLabelValues(refusedRate).Inc()
 	detail := "this client asks more often than it may; wait for the seconds of Retry-After, or send many places at once to /v1/annotate"
-	p := newProblem(http.StatusTooManyRequests, "too-many-requests", "Too many requests", detail, FieldFault{Parameter: "client", Detail: detail})
+	p := newProblem(http.StatusTooManyRequests, kindRate, "Too many requests", detail, FieldFault{Parameter: "client", Detail: detail})
 	p.retryAfter = wait
 	return p
 }
@@ -110,26 +110,26 @@ func (s *Server) allowance(c echo.Context, client string) error {
 func (s *Server) authorise(c echo.Context, scope access.Scope) error {
 	given := c.Request().Header.Values(echo.HeaderAuthorization)
 	challenge := `Bearer realm="nearmargin"`
-	refuse := func(status int, kind, title, more, detail string) error {
-		s.metrics.refused.WithLabelValues(kind).Inc()
+	refuse := func(status int, kind problemKind, title, more, detail string) error {
+		s.metrics.refused.WithLabelValues(string(kind)).Inc()
 		c.Response().Header().Set(echo.HeaderWWWAuthenticate, challenge+more)
 		return newProblem(status, kind, title, detail, FieldFault{Parameter: echo.HeaderAuthorization, Detail: detail})
 	}
 	const want = "send Authorization: Bearer and the token that the service's operators gave you"
 	if len(given) == 0 {
-		return refuse(http.StatusUnauthorized, refusedToken, "A token is needed", "", "there is no token; "+want)
+		return refuse(http.StatusUnauthorized, kindToken, "A token is needed", "", "there is no token; "+want)
 	}
 	scheme, token, ok := strings.Cut(given[0], " ")
 	if len(given) > 1 || !ok || !strings.EqualFold(scheme, "Bearer") || strings.TrimSpace(token) == "" {
-		return refuse(http.StatusUnauthorized, refusedToken, "A token is needed", `, error="invalid_request"`, "the header is not of the form Bearer TOKEN; "+want)
+		return refuse(http.StatusUnauthorized, kindToken, "A token is needed", `, error="invalid_request"`, "the header is not of the form Bearer TOKEN; "+want)
 	}
 	grant, ok := s.cfg.Access.Tokens.Find(strings.TrimSpace(token))
 	if !ok {
-		return refuse(http.StatusUnauthorized, refusedToken, "A token is needed", `, error="invalid_token"`, "the token is not known here; "+want)
+		return refuse(http.StatusUnauthorized, kindToken, "A token is needed", `, error="invalid_token"`, "the token is not known here; "+want)
 	}
 	c.Set(keyHolder, grant.Name)
 	if !grant.Allows(scope) {
-		return refuse(http.StatusForbidden, refusedScope, "The token does not allow this", `, error="insufficient_scope", scope="`+string(scope)+`"`, "the token lacks the scope "+string(scope)+"; ask the service's operators for one that has it")
+		return refuse(http.StatusForbidden, kindScope, "The token does not allow this", `, error="insufficient_scope", scope="`+string(scope)+`"`, "the token lacks the scope "+string(scope)+"; ask the service's operators for one that has it")
 	}
 	return nil
 }
@@ -149,11 +149,11 @@ func (s *Server) crossOrigin(c echo.Context) (preflight bool) {
 	}
 	h.Set(echo.HeaderAccessControlAllowOrigin, allow)
 	if r.Method != http.MethodOptions || r.Header.Get(echo.HeaderAccessControlRequestMethod) == "" {
-		h.Set(echo.HeaderAccessControlExposeHeaders, "X-Request-Id, Retry-After")
+		h.Set(echo.HeaderAccessControlExposeHeaders, "X-Request-Id, Retry-After, ETag")
 		return false
 	}
 	h.Set(echo.HeaderAccessControlAllowMethods, "GET, HEAD, POST")
-	h.Set(echo.HeaderAccessControlAllowHeaders, "Authorization, Content-Type, X-Request-Id")
+	h.Set(echo.HeaderAccessControlAllowHeaders, "Authorization, Content-Type, If-None-Match, X-Request-Id")
 	h.Set(echo.HeaderAccessControlMaxAge, "600")
 	return true
 }

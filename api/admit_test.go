@@ -29,7 +29,7 @@ func (r *rig) send(method, target string, header ...string) *httptest.ResponseRe
 func tokens(t *testing.T) *access.Tokens {
 	t.Helper()
 	sum := func(s string) string { x := sha256.Sum256([]byte(s)); return hex.EncodeToString(x[:]) }
-	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret"))
+	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret") + "\nother batch " + sum("o-secret"))
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -165,6 +165,20 @@ func TestCrossOrigin(t *testing.T) {
 	w = r.send("GET", "/healthz", "Origin", "https://evil.example")
 	if w.Header().Get(allow) != "" || w.Header().Get("Vary") != "Origin" {
 		t.Errorf("another origin: %v", w.Header())
+	}
+	// an app of the origin can ask whether an answer that it holds is still right
+	for _, target := range []string{"/v1/section?lon=62.2&lat=-5", "/reference"} {
+		w = r.send("GET", target, "Origin", mine, "Authorization", "Bearer q-secret")
+		if vary := strings.Join(w.Header().Values("Vary"), ", "); w.Code != 200 || !strings.Contains(vary, "Origin") || !strings.Contains(vary, "Accept") {
+			t.Errorf("%s: status %d, Vary %q", target, w.Code, vary)
+		}
+		if e := w.Header().Get("Access-Control-Expose-Headers"); w.Header().Get("ETag") == "" || !strings.Contains(e, "ETag") {
+			t.Errorf("%s: the page may read %q", target, e)
+		}
+	}
+	w = r.send("OPTIONS", "/v1/point", "Origin", mine, "Access-Control-Request-Method", "GET")
+	if !strings.Contains(w.Header().Get("Access-Control-Allow-Headers"), "If-None-Match") {
+		t.Errorf("preflight: %v", w.Header())
 	}
 	w = newRig(t).send("GET", "/healthz", "Origin", mine)
 	if w.Header().Get(allow) != "" {

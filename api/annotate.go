@@ -107,5 +107,5 @@ func batchFormat(r *http.Request) (annotate.Format, string, error) {
 
 func unsupported(header, format string, args ...any) *Problem {
 	detail := fmt.Sprintf(format, args...)
-	return newProblem(http.StatusUnsupportedMediaType, "unsupported-media-type", "The body cannot be read", detail, FieldFault{Parameter: header, Detail: detail})
+	return newProblem(http.StatusUnsupportedMediaType, kindMedia, "The body cannot be read", detail, FieldFault{Parameter: header, Detail: detail})
 }

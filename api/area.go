@@ -90,11 +90,11 @@ func areaProblem(err error) error {
 }
 
 func impossible(f FieldFault) *Problem {
-	return newProblem(http.StatusUnprocessableEntity, "impossible-geometry", "The geometry is well formed and cannot be", f.Detail, f)
+	return newProblem(http.StatusUnprocessableEntity, kindImpossible, "The geometry is well formed and cannot be", f.Detail, f)
 }
 
 func tooLarge(f FieldFault) *Problem {
-	return newProblem(http.StatusRequestEntityTooLarge, "too-large", "The body is too large", f.Detail, f)
+	return newProblem(http.StatusRequestEntityTooLarge, kindLarge, "The body is too large", f.Detail, f)
 }
 
 // checkAreaType refuses bodies that are not said to be JSON.

@@ -21,13 +21,13 @@ func newGate(batches int) *gate { return &gate{slots: make(chan struct{}, batche
 // enter takes a place, which the caller must leave, or says why there is none.
 func (g *gate) enter() (leave func(), err *Problem) {
 	if g.draining.Load() {
-		return nil, overload("draining", "The service is shutting down", "this instance takes no more batches; send it again, to another one")
+		return nil, overload(kindDraining, "The service is shutting down", "this instance takes no more batches; send it again, to another one")
 	}
 	select {
 	case g.slots <- struct{}{}:
 		return func() { <-g.slots }, nil
 	default:
-		return nil, overload("too-many-batches", "Too many batches run", fmt.Sprintf("%d batches run, which is the limit of this instance; send it again later", cap(g.slots)))
+		return nil, overload(kindManyBatches, "Too many batches run", fmt.Sprintf("%d batches run, which is the limit of this instance; send it again later", cap(g.slots)))
 	}
 }
 
@@ -37,7 +37,7 @@ func (g *gate) running() int { return len(g.slots) }
 // retryAfter is what a client is told to wait when batches are refused.
 const retryAfter = 5 * time.Second
 
-func overload(kind, title, detail string) *Problem {
+func overload(kind problemKind, title, detail string) *Problem {
 	p := newProblem(http.StatusServiceUnavailable, kind, title, detail, FieldFault{Parameter: "path", Detail: detail})
 	p.retryAfter = retryAfter
 	return p

@@ -47,7 +47,7 @@ func (c *faultConn) Write(p []byte) (int, error) {
 		answer = rawAnswer(rawProblem(string(head), string(text)))
 	} else if bytes.HasPrefix(p, expectationFailed) {
 		const detail = "the only expectation met is 100-continue"
-		answer = rawAnswer(newProblem(http.StatusExpectationFailed, "expectation-failed", "The expectation is not met", detail, FieldFault{Parameter: "Expect", Detail: detail}))
+		answer = rawAnswer(newProblem(http.StatusExpectationFailed, kindExpectation, "The expectation is not met", detail, FieldFault{Parameter: "Expect", Detail: detail}))
 	} else {
 		return c.Conn.Write(p)
 	}
@@ -78,7 +78,7 @@ func rawProblem(head, text string) *Problem {
 	switch {
 	case status == http.StatusRequestHeaderFieldsTooLarge:
 		const detail = "the request line and the header are longer together than they may be; README, Limits"
-		return newProblem(status, "header-too-large", "The header is too large", detail, FieldFault{Parameter: "header", Detail: detail})
+		return newProblem(status, kindLongHeader, "The header is too large", detail, FieldFault{Parameter: "header", Detail: detail})
 	case found == http.StatusNotImplemented:
 		const detail = "the transfer coding is not known here; send Transfer-Encoding: chunked, or a Content-Length"
 		return badRequest(FieldFault{Parameter: "Transfer-Encoding", Detail: detail})

@@ -24,7 +24,7 @@ func (s *Server) findModel(ref string) (*setting.Model, error) {
 	m, ok := s.cfg.Models.Find(ref)
 	if !ok {
 		detail := fmt.Sprintf("no model %.60q is loaded; /v1/models lists those that are", ref)
-		return nil, newProblem(http.StatusNotFound, "no-such-model", "The model is not loaded", detail, FieldFault{Parameter: "model", Detail: detail})
+		return nil, newProblem(http.StatusNotFound, kindNoModel, "The model is not loaded", detail, FieldFault{Parameter: "model", Detail: detail})
 	}
 	return m, nil
 }

@@ -12,10 +12,10 @@ import (
 
 // Why a request was refused before any work was done on it.
 const (
-	refusedRate  = "too-many-requests"
-	refusedBatch = "too-many-batches"
-	refusedToken = "token"
-	refusedScope = "scope"
+	refusedRate  = string(kindRate)
+	refusedBatch = string(kindManyBatches)
+	refusedToken = string(kindToken)
+	refusedScope = string(kindScope)
 )
 
 var refusals = []string{refusedRate, refusedBatch, refusedToken, refusedScope}

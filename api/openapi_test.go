@@ -8,6 +8,7 @@ import (
 	"go/token"
 	"maps"
 	"net/http"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -15,6 +16,7 @@ import (
 
 	"github.com/santhosh-tekuri/jsonschema/v6"
 
+	"nearmargin/api/wire"
 	"nearmargin/setting"
 	"nearmargin/setting/boundary"
 	"nearmargin/setting/slab"
@@ -112,11 +114,12 @@ func TestDocumentDescribesTheParameters(t *testing.T) {
 			var want []string
 			list, _ := op["parameters"].([]any)
 			for _, p := range list {
-				name := strings.TrimPrefix(p.(map[string]any)["$ref"].(string), "#/components/parameters/")
-				param := at(t, doc, "components", "parameters", name)
-				name = strings.TrimSuffix(name, "_required") // the same parameter where it must be given
-				if param["name"] != name {
-					t.Errorf("parameter %s is named %v", name, param["name"])
+				key := strings.TrimPrefix(p.(map[string]any)["$ref"].(string), "#/components/parameters/")
+				param := at(t, doc, "components", "parameters", key)
+				key = strings.TrimSuffix(key, "_required") // the same parameter where it must be given
+				name := param["name"].(string)
+				if strings.ReplaceAll(strings.ToLower(name), "-", "_") != key {
+					t.Errorf("parameter %s is named %s", key, name)
 				}
 				if param["in"] == "query" {
 					want = append(want, name)
@@ -171,24 +174,17 @@ func TestSchemasCompile(t *testing.T) {
 			}
 		}
 	}
-	for name := range at(t, doc, "components", "responses") {
-		for media, content := range at(t, doc, "components", "responses", name, "content") {
-			example, ok := content.(map[string]any)["example"]
-			if !ok {
-				continue
-			}
-			escaped := strings.ReplaceAll(media, "/", "~1")
-			if err := compile("/components/responses/" + name + "/content/" + escaped + "/schema").Validate(example); err != nil {
-				t.Errorf("response %s: the example: %v", name, err)
-			}
+	for name := range at(t, doc, "components", "headers") {
+		if compile("/components/headers/" + name + "/schema"); at(t, doc, "components", "headers", name)["description"] == "" {
+			t.Errorf("header %s lacks a description", name)
 		}
 	}
 }
 
 // TestObjectsAreClosed sees to it that no object schema lets unknown members
-// pass, but for those that carry the caller's own members.
+// pass, but for those that the caller sends or that carry the caller's own members.
 func TestObjectsAreClosed(t *testing.T) {
-	open := []string{"AnnotatedObject", "AnnotatedFeature", "AnnotatedCollection"}
+	open := []string{"AnnotatedObject", "AnnotatedFeature", "AnnotatedCollection", "PolygonRequest", "MultiPolygonRequest", "FeatureRequest"}
 	for name, s := range at(t, document(t), "components", "schemas") {
 		s := s.(map[string]any)
 		if s["type"] != "object" || slices.Contains(open, name) {
@@ -271,6 +267,15 @@ func TestNoteCodesMatchTheDomain(t *testing.T) {
 	}
 }
 
+// TestColumnsMatchTheTable compares the columns that the document says a table gains
+// with those that it gains.
+func TestColumnsMatchTheTable(t *testing.T) {
+	text := at(t, document(t), "paths", "/v1/annotate", "post")["description"].(string)
+	if want := "gains the columns " + strings.Join(wire.Columns[:], ", ") + ", each with the prefix"; !strings.Contains(text, want) {
+		t.Errorf("the description does not say %q", want)
+	}
+}
+
 // TestDocumentIsServed checks the bytes that /openapi.json sends.
 func TestDocumentIsServed(t *testing.T) {
 	w := newRig(t).get("/openapi.json")
@@ -290,6 +295,34 @@ func TestDocumentIsServed(t *testing.T) {
 	for _, must := range []string{"PRESENT DAY", "SCREENING AID", "national hazard models", "local codes", "licensed practice"} {
 		if !strings.Contains(doc.Info.Description, must) {
 			t.Errorf("the description does not say %q", must)
+		}
+	}
+}
+
+// TestDocumentBelowABasePath: the paths of a document count from its server's address,
+// so it names the base path, as do the examples of the reference page.
+func TestDocumentBelowABasePath(t *testing.T) {
+	r := newLimitedRig(t, func(c *Config) { c.BasePath = "/maps/tectonics" })
+	var doc struct {
+		Servers []struct{ URL string }
+	}
+	if err := json.Unmarshal(r.get("/maps/tectonics/openapi.json").Body.Bytes(), &doc); err != nil {
+		t.Fatal(err)
+	}
+	if len(doc.Servers) != 1 || doc.Servers[0].URL != "/maps/tectonics" {
+		t.Errorf("servers are %v", doc.Servers)
+	}
+	page := r.get("/maps/tectonics/reference").Body.String()
+	if !strings.Contains(page, "127.0.0.1:8080/maps/tectonics/v1/point?") {
+		t.Error("the reference page does not name the base path")
+	}
+	for _, m := range regexp.MustCompile(`(?:href|src)="([^"#]*)"`).FindAllStringSubmatch(page, -1) {
+		if strings.HasPrefix(m[1], "/") {
+			t.Errorf("the reference page has a link that leaves the base path: %s", m[1])
+			continue
+		}
+		if w := r.get("/maps/tectonics/" + strings.TrimPrefix(m[1], "./")); w.Code != http.StatusOK {
+			t.Errorf("the link %s leads to %d", m[1], w.Code)
 		}
 	}
 }

@@ -36,9 +36,33 @@ func (p *Problem) Error() string { return fmt.Sprintf("%d %s: %s", p.Status, p.T
 
 const problemType = "urn:nearmargin:problem:"
 
-// newProblem returns a problem of a kind, which is the last part of its type.
-func newProblem(status int, kind, title, detail string, faults ...FieldFault) *Problem {
-	return &Problem{Type: problemType + kind, Title: title, Status: status, Detail: detail, Errors: faults}
+// problemKind is the last part of a problem's type.
+type problemKind string
+
+// The kinds of problems, each described in openapi.json by an example.
+const (
+	kindInvalid     problemKind = "invalid-request"
+	kindToken       problemKind = "token"
+	kindScope       problemKind = "scope"
+	kindNotFound    problemKind = "not-found"
+	kindNoModel     problemKind = "no-such-model"
+	kindMethod      problemKind = "method-not-allowed"
+	kindSlow        problemKind = "too-slow"
+	kindLarge       problemKind = "too-large"
+	kindMedia       problemKind = "unsupported-media-type"
+	kindExpectation problemKind = "expectation-failed"
+	kindImpossible  problemKind = "impossible-geometry"
+	kindNoSlab      problemKind = "no-slab"
+	kindRate        problemKind = "too-many-requests"
+	kindLongHeader  problemKind = "header-too-large"
+	kindInternal    problemKind = "http-500"
+	kindManyBatches problemKind = "too-many-batches"
+	kindDraining    problemKind = "draining"
+)
+
+// newProblem returns a problem of a kind.
+func newProblem(status int, kind problemKind, title, detail string, faults ...FieldFault) *Problem {
+	return &Problem{Type: problemType + string(kind), Title: title, Status: status, Detail: detail, Errors: faults}
 }
 
 // badRequest returns the problem for faults of a request's syntax or ranges.
@@ -47,7 +71,7 @@ func badRequest(faults ...FieldFault) *Problem {
 	if p := faults[0].Parameter; p != "" {
 		detail = p + ": " + detail
 	}
-	return newProblem(http.StatusBadRequest, "invalid-request", "The request is not valid", detail, faults...)
+	return newProblem(http.StatusBadRequest, kindInvalid, "The request is not valid", detail, faults...)
 }
 
 // problemOf turns any error into a problem document. The cause of an internal
@@ -65,7 +89,7 @@ func problemOf(err error) *Problem {
 		return badRequest(FieldFault{Parameter: field.Field, Detail: field.Detail})
 	case errors.As(err, &input):
 		if input.TooLarge {
-			return newProblem(http.StatusRequestEntityTooLarge, "too-large", "The body is too large", input.Detail, inputFault(input))
+			return newProblem(http.StatusRequestEntityTooLarge, kindLarge, "The body is too large", input.Detail, inputFault(input))
 		}
 		return badRequest(inputFault(input))
 	case errors.As(err, &binding):
@@ -84,16 +108,18 @@ func inputFault(e *annotate.InputError) FieldFault {
 	return f
 }
 
+// statusProblem returns the problem for a status that the router found; any but its
+// two is a fault of the service.
 func statusProblem(status int) *Problem {
 	switch status {
 	case http.StatusNotFound:
 		const detail = "See /openapi.json for the paths there are."
-		return newProblem(status, "not-found", "There is nothing at this path", detail, FieldFault{Parameter: "path", Detail: detail})
+		return newProblem(status, kindNotFound, "There is nothing at this path", detail, FieldFault{Parameter: "path", Detail: detail})
 	case http.StatusMethodNotAllowed:
 		const detail = "The Allow header lists the methods it takes."
-		return newProblem(status, "method-not-allowed", "The path does not take this method", detail, FieldFault{Parameter: "method", Detail: detail})
+		return newProblem(status, kindMethod, "The path does not take this method", detail, FieldFault{Parameter: "method", Detail: detail})
 	}
-	return newProblem(status, "http-"+fmt.Sprint(status), http.StatusText(status), "")
+	return newProblem(http.StatusInternalServerError, kindInternal, http.StatusText(http.StatusInternalServerError), "")
 }
 
 // writeProblem sends the problem document for an error.

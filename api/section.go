@@ -22,7 +22,7 @@ func (s *Server) section(c echo.Context) error {
 	if err != nil {
 		return err
 	}
-	c.Response().Header().Set(echo.HeaderVary, echo.HeaderAccept)
+	c.Response().Header().Add(echo.HeaderVary, echo.HeaderAccept)
 	if prefersSVG(c.Request().Header.Values(echo.HeaderAccept)) {
 		return sendBytes(c, mimeSVG, figure.Section(x))
 	}
@@ -53,7 +53,7 @@ func (s *Server) findSection(c echo.Context) (*setting.Section, error) {
 	var none *setting.NoSlabError
 	if errors.As(err, &none) {
 		detail := none.Error()
-		return nil, newProblem(http.StatusUnprocessableEntity, "no-slab", "There is no slab to cut", detail, FieldFault{Parameter: "lon, lat", Detail: detail})
+		return nil, newProblem(http.StatusUnprocessableEntity, kindNoSlab, "There is no slab to cut", detail, FieldFault{Parameter: "lon, lat", Detail: detail})
 	}
 	return x, err
 }

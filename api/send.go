@@ -19,9 +19,11 @@ import (
 const leastGzip = 8 << 10
 
 // How long an answer may be kept: one for a named edition does not change, any
-// other changes with the active edition and is asked about before each use.
+// other changes with the active edition and is asked about before each use. A shared
+// cache may keep what was asked for without a token: nothing here says public, which
+// would let it hand out answers that a token was needed for.
 const (
-	cacheEdition = "public, max-age=86400"
+	cacheEdition = "max-age=86400"
 	cacheActive  = "no-cache"
 )
 

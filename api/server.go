@@ -1,6 +1,7 @@
 package api
 
 import (
+	"bytes"
 	"encoding/json"
 	"io"
 	"log/slog"
@@ -57,16 +58,19 @@ type Server struct {
 	turns   *turns
 	echo    *echo.Echo
 	site    *page.Site
+	// document describes the service at its own base path.
+	document []byte
 }
 
 // New builds a server with all routes.
 func New(cfg Config) *Server {
-	site, err := page.New(OpenAPI())
+	document := documentBelow(cfg.BasePath)
+	site, err := page.New(document)
 	if err != nil {
 		panic(err) // a file of the program's own
 	}
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New(), site: site}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New(), site: site, document: document}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
@@ -118,7 +122,18 @@ func encodeJSON(w io.Writer, v any) error {
 
 // sendJSON sends a value as JSON.
 func sendJSON(c echo.Context, v any) error {
-	c.Response().Header().Set(echo.HeaderContentType, echo.MIMEApplicationJSON)
+	var b bytes.Buffer
+	if err := encodeJSON(&b, v); err != nil {
+		return err
+	}
+	return sendBytes(c, echo.MIMEApplicationJSON, b.Bytes())
+}
+
+// sendState sends the state of the service, which no cache may keep.
+func sendState(c echo.Context, v any) error {
+	h := c.Response().Header()
+	h.Set(echo.HeaderContentType, echo.MIMEApplicationJSON)
+	h.Set(echo.HeaderCacheControl, "no-store")
 	c.Response().WriteHeader(http.StatusOK)
 	return encodeJSON(c.Response(), v)
 }

@@ -157,7 +157,7 @@ func bodyProblem(err error, most int64) *Problem {
 		return tooLarge(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body is longer than %d bytes, which is the limit; send less, or rows as NDJSON or CSV", most)})
 	case errors.As(err, &timeout) && timeout.Timeout():
 		detail := "the body came too slowly; send it without pauses"
-		return newProblem(http.StatusRequestTimeout, "too-slow", "The request took too long", detail, FieldFault{Pointer: whole, Detail: detail})
+		return newProblem(http.StatusRequestTimeout, kindSlow, "The request took too long", detail, FieldFault{Pointer: whole, Detail: detail})
 	}
 	return badRequest(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body breaks off: %v; send it whole", err)})
 }

@@ -196,3 +196,35 @@ func FuzzArray(f *testing.F) {
 		}
 	})
 }
+
+// FuzzRead: no panic whatever an annotated file holds; rows are numbered from 1, a place
+// is on Earth or none, and a fault of the file says so in words.
+func FuzzRead(f *testing.F) {
+	for _, seed := range []string{
+		"name,lon,lat,ts_setting,ts_distance_km\na,1,2,trench,3\n", "lon;lat;ts_setting\n1,5;2;trench\n", "lon,lat,ts_setting\n,,\n",
+		`{"id":"a","lon":1,"tectonic":{"site":{"lon":1,"lat":2},"setting":{"label":"trench"}}}` + "\n" + `{"tectonic_error":"x"}`,
+		`{"type":"FeatureCollection","features":[{"id":1,"properties":{"tectonic":{"area_km2":1}}},null,7]}`, `{"type":"Feature","properties":{"tectonic":{}}}`,
+		"\xef\xbb\xbf{\"features\":[]}", `{"features":[],"features":[]}`, `{"features":[{"properties":{"tectonic":{"site":{"lon":1e9,"lat":"x"},"setting":{"label":"trench"}}}}]}`, `{"features":[`, "{}\n\x00",
+	} {
+		for format := range byte(3) {
+			f.Add([]byte(seed), format)
+		}
+	}
+	f.Fuzz(func(t *testing.T, in []byte, format byte) {
+		n := int64(0)
+		err := Read(bytes.NewReader(in), []Format{CSV, NDJSON, GeoJSON}[format%3], ReadOptions{}, func(r Row) error {
+			n++
+			if r.Number != n {
+				t.Fatalf("row %d has number %d", n, r.Number)
+			}
+			if r.Lon < -180 || r.Lon > 360 || r.Lat < -90 || r.Lat > 90 {
+				t.Fatalf("row %d lies at %g, %g", n, r.Lon, r.Lat)
+			}
+			return nil
+		})
+		var fault *InputError
+		if err != nil && (!errors.As(err, &fault) || fault.Detail == "") {
+			t.Fatalf("error %#v", err)
+		}
+	})
+}

@@ -4,6 +4,8 @@ import (
 	"bufio"
 	"bytes"
 	"encoding/csv"
+	"encoding/json"
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -38,8 +40,8 @@ type ReadOptions struct {
 	Prefix               string // of the added columns; "" means DefaultPrefix
 }
 
-// Read reads an annotated file and calls each for every row, in order. CSV and
-// NDJSON are read row by row, GeoJSON as a whole.
+// Read reads an annotated file row by row and calls each for every one, in order. A
+// text of a Row holds all of the row's memory: copy what is kept of many.
 func Read(in io.Reader, f Format, o ReadOptions, each func(Row) error) error {
 	if o.Prefix == "" {
 		o.Prefix = DefaultPrefix
@@ -153,9 +155,12 @@ func distance(s string) float64 {
 	return x
 }
 
+// longestAnswer is more than an answer takes up in a line.
+const longestAnswer = 256 << 10
+
 func readNDJSON(in io.Reader, each func(Row) error) error {
 	s := bufio.NewScanner(in)
-	s.Buffer(nil, MaxRowBytes)
+	s.Buffer(nil, MaxRowBytes+longestAnswer)
 	n, any := int64(0), false
 	for s.Scan() {
 		line := bytes.TrimPrefix(bytes.TrimSpace(s.Bytes()), byteOrderMark)
@@ -172,8 +177,10 @@ func readNDJSON(in io.Reader, each func(Row) error) error {
 			return err
 		}
 	}
-	if err := s.Err(); err != nil {
-		return err
+	if errors.Is(s.Err(), bufio.ErrTooLong) {
+		return badLine(int(n+1), "longer than %d bytes", MaxRowBytes+longestAnswer)
+	} else if s.Err() != nil {
+		return s.Err()
 	}
 	if n > 0 && !any {
 		return notAnnotated("member tectonic in any line")
@@ -181,33 +188,102 @@ func readNDJSON(in io.Reader, each func(Row) error) error {
 	return nil
 }
 
+// geoReader reads an annotated FeatureCollection feature by feature, or one Feature.
+type geoReader struct {
+	d    *json.Decoder
+	each func(Row) error
+	rows int64
+	any  bool // of the rows has an answer or an error
+}
+
 func readGeoJSON(in io.Reader, each func(Row) error) error {
-	b, err := io.ReadAll(in)
-	if err != nil {
-		return err
+	br := bufio.NewReaderSize(in, 64<<10)
+	if mark, err := br.Peek(len(byteOrderMark)); err == nil && bytes.Equal(mark, byteOrderMark) {
+		_, _ = br.Discard(len(mark)) // it is in the buffer
 	}
-	b = bytes.TrimPrefix(b, byteOrderMark)
-	if !gjson.ValidBytes(b) {
-		return &InputError{Detail: "the file is not JSON; want a GeoJSON Feature or FeatureCollection"}
+	g := &geoReader{d: json.NewDecoder(br), each: each}
+	if tok, err := g.d.Token(); err != nil || tok != json.Delim('{') {
+		return g.fault(err, "the file is not a JSON object; want a GeoJSON Feature or FeatureCollection")
 	}
-	doc := gjson.ParseBytes(b)
-	list := []gjson.Result{doc}
-	if f := doc.Get("features"); f.IsArray() {
-		list = f.Array()
+	single, collection := map[string]json.RawMessage{}, false
+	for g.d.More() {
+		key, err := g.d.Token()
+		if err != nil {
+			return g.fault(err, "")
+		}
+		name, _ := key.(string) // the name of a member is always a string
+		if name == "features" && !collection {
+			collection = true
+			if err := g.features(); err != nil {
+				return err
+			}
+			continue
+		}
+		var raw json.RawMessage
+		if err := g.d.Decode(&raw); err != nil {
+			return g.fault(err, "")
+		}
+		if name == "properties" || name == "id" {
+			single[name] = raw
+		}
 	}
-	any := false
-	for i, f := range list {
-		p := f.Get("properties")
-		row := jsonRow(int64(i+1), p, f)
-		any = any || row.Label != "" || row.Error != "" || row.Area
-		if err := each(row); err != nil {
+	if _, err := g.d.Token(); err != nil {
+		return g.fault(err, "")
+	}
+	if _, err := g.d.Token(); err != io.EOF {
+		return g.fault(nil, fmt.Sprintf("something follows the JSON object, at byte %d", g.d.InputOffset()))
+	}
+	if !collection {
+		outer, err := json.Marshal(single)
+		if err != nil {
+			return err
+		}
+		if err := g.row(gjson.ParseBytes(outer)); err != nil {
 			return err
 		}
 	}
-	if len(list) > 0 && !any {
+	if g.rows > 0 && !g.any {
 		return notAnnotated("property tectonic in any feature")
 	}
 	return nil
+}
+
+// features reads the array of features.
+func (g *geoReader) features() error {
+	if tok, err := g.d.Token(); err != nil || tok != json.Delim('[') {
+		return g.fault(err, "features must be an array")
+	}
+	var raw json.RawMessage
+	for g.d.More() {
+		if err := g.d.Decode(&raw); err != nil {
+			return g.fault(err, "")
+		}
+		if err := g.row(gjson.ParseBytes(raw)); err != nil {
+			return err
+		}
+	}
+	if _, err := g.d.Token(); err != nil {
+		return g.fault(err, "")
+	}
+	return nil
+}
+
+func (g *geoReader) row(feature gjson.Result) error {
+	g.rows++
+	row := jsonRow(g.rows, feature.Get("properties"), feature)
+	g.any = g.any || row.Label != "" || row.Error != "" || row.Area
+	return g.each(row)
+}
+
+// fault says where the JSON is broken, or what else is wrong where it is not.
+func (g *geoReader) fault(err error, otherwise string) error {
+	if err == nil || otherwise != "" && !errors.As(err, new(*json.SyntaxError)) && err != io.EOF {
+		return &InputError{Detail: otherwise}
+	}
+	if err == io.EOF {
+		err = io.ErrUnexpectedEOF
+	}
+	return &InputError{Detail: fmt.Sprintf("the file is not JSON, near byte %d: %v; want a GeoJSON Feature or FeatureCollection", g.d.InputOffset(), err)}
 }
 
 // jsonRow reads the answer within an object's members; outer may name it by its id.
@@ -232,7 +308,7 @@ func jsonRow(n int64, members, outer gjson.Result) Row {
 		row.Area = true
 		return row
 	}
-	row.Lon, row.Lat = t.Get("site.lon").Float(), t.Get("site.lat").Float()
+	row.Lon, row.Lat = place(t.Get("site.lon").Raw, false, -180, 360), place(t.Get("site.lat").Raw, false, -90, 90)
 	s := t.Get("setting")
 	row.Label, row.Family, row.Confidence = s.Get("label").String(), s.Get("family").String(), s.Get("confidence").String()
 	row.Reason = s.Get("reasons.0").String()
@@ -243,6 +319,6 @@ func jsonRow(n int64, members, outer gjson.Result) Row {
 		}
 		row.Reason = strings.Join(all, "; ")
 	}
-	row.BoundaryType, row.DistanceKm = t.Get("nearest_boundary.type").String(), t.Get("nearest_boundary.distance_km").Float()
+	row.BoundaryType, row.DistanceKm = t.Get("nearest_boundary.type").String(), distance(t.Get("nearest_boundary.distance_km").Raw)
 	return row
 }

@@ -29,7 +29,7 @@ func TestReadWhatRunWrites(t *testing.T) {
 		{"features", GeoJSON, `{"type":"FeatureCollection","features":[
 			{"type":"Feature","id":"s1","properties":null,"geometry":{"type":"Point","coordinates":[61,5]}},
 			{"type":"Feature","id":"s2","properties":null,"geometry":null},
-			{"type":"Feature","id":"s3","properties":{"p":1},"geometry":{"type":"Point","coordinates":[-90,20]}}]}`},
+			{"type":"Feature","id":"s3","properties":{"p":1},"geometry":{"type":"Point","coordinates":[-90,20]}}],"features2":[]}`},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			var out bytes.Buffer
@@ -69,6 +69,12 @@ func TestReadRefuses(t *testing.T) {
 		{"lines without answers", NDJSON, "{\"lon\":1}\n", "no member tectonic"},
 		{"features without answers", GeoJSON, `{"type":"Feature","properties":{}}`, "no property tectonic"},
 		{"not JSON", GeoJSON, "lon,lat", "not JSON"},
+		{"an array", GeoJSON, "[]", "not a JSON object"},
+		{"cut short", GeoJSON, `{"type":"FeatureCollection","features":[{"properties":{"tectonic_error":"x"}},`, "not JSON, near byte 7"},
+		{"nothing", GeoJSON, "", "not JSON, near byte 0: unexpected EOF"},
+		{"features that are none", GeoJSON, `{"features":{}}`, "features must be an array"},
+		{"more after the end", GeoJSON, `{"features":[]} {}`, "something follows"},
+		{"a line too long", NDJSON, `{"tectonic_error":"` + strings.Repeat("x", 2<<20) + `"}`, "line 1: longer than"},
 		{"a line that is not JSON", NDJSON, "{}\nx\n", "line 2"},
 		{"no coordinates", CSV, "a,ts_setting\n1,trench\n", "no column for longitude"},
 		{"array", JSON, "[]", "want csv, ndjson or geojson"},

@@ -31,6 +31,7 @@ const (
 	leastReachKm = 250 // from the middle of a map to its edge
 	mostMapH     = 760
 	mostNamed    = 40 // sites; more are not named
+	longestName  = 40 // characters of a name
 )
 
 // locationMap is a map on its way to a figure.
@@ -38,15 +39,17 @@ type locationMap struct {
 	canvas
 	s          *MapSpec
 	proj       projection
-	k          float64 // px to the Earth radius
-	cx, cy     float64 // px of the plane's origin
-	x, y, w, h float64 // the frame
+	k          float64                // px to the Earth radius
+	cx, cy     float64                // px of the plane's origin
+	x, y, w, h float64                // the frame
+	drawn      map[boundary.Type]bool // the types of boundary within the frame
+	unnamed    int                    // sites whose name found no room
 }
 
 // Map draws sites by their setting among land and plate boundaries: a location map
 // with legend, scale and caption. The result is one SVG document.
 func Map(s *MapSpec) []byte {
-	m := &locationMap{s: s}
+	m := &locationMap{s: s, drawn: map[boundary.Type]bool{}}
 	bottom := m.measure()
 	m.drawMap()
 	height := m.drawBelow(bottom)
@@ -61,9 +64,9 @@ func Map(s *MapSpec) []byte {
 	head.start("clipPath", attrs{"id", "nm-frame"})
 	head.leaf("rect", attrs{"x", px(m.x), "y", px(m.y), "width", px(m.w), "height", px(m.h)})
 	head.end()
-	if _, world := m.proj.(equalEarth); world {
+	if world, ok := m.proj.(equalEarth); ok {
 		head.start("clipPath", attrs{"id", "nm-rim"})
-		head.leaf("path", attrs{"d", pathOf(m.rim(), true)})
+		head.leaf("path", attrs{"d", pathOf(m.rim(world), true)})
 		head.end()
 	}
 	head.end()
@@ -96,11 +99,15 @@ func (m *locationMap) measure() float64 {
 		places = append(places, m.s.Sites[i].At)
 	}
 	m.x, m.w = marginX, figureW-2*marginX
-	m.content("text", m.s.Title, like("ink", "x", px(marginX), "y", px(marginX+titleSize), "font-size", px(titleSize), "font-weight", "bold"))
-	m.y = marginX + titleSize + 14
+	m.y = marginX
+	for _, l := range wrap(m.s.Title, titleSize*1.08, m.w) { // a bold face is wider
+		m.content("text", l, like("ink", "x", px(marginX), "y", px(m.y+titleSize), "font-size", px(titleSize), "font-weight", "bold"))
+		m.y += titleSize * lineH
+	}
+	m.y += 14 - titleSize*(lineH-1)
 	m.proj, _ = chooseProjection(places)
-	if _, world := m.proj.(equalEarth); world {
-		right, _, _ := m.proj.at(sphere.LonLat{Lon: 180})
+	if world, ok := m.proj.(equalEarth); ok {
+		right, _, _ := world.at(world.edge(0, 1))
 		_, top, _ := m.proj.at(sphere.LonLat{Lat: 90})
 		m.k = m.w / 2 / right
 		m.h = 2 * top * m.k
@@ -124,6 +131,15 @@ func (m *locationMap) measure() float64 {
 
 // to returns where a place is in px.
 func (m *locationMap) to(p sphere.LonLat) (point, bool) {
+	if world, ok := m.proj.(equalEarth); ok {
+		p = world.seen(p)
+	}
+	return m.past(p)
+}
+
+// past returns where a place is in px; on a world map its longitude may run on past the
+// edges.
+func (m *locationMap) past(p sphere.LonLat) (point, bool) {
 	x, y, ok := m.proj.at(p)
 	return point{m.cx + x*m.k, m.cy - y*m.k}, ok
 }
@@ -148,10 +164,19 @@ func (m *locationMap) lines(path []sphere.LonLat) (out [][]point) {
 			flush()
 			continue
 		}
+		if m.jumps(run, q) {
+			flush()
+		}
 		run = append(run, q)
 	}
 	flush()
 	return out
+}
+
+// jumps reports whether a line that runs on to a point crosses the edges of a world map.
+func (m *locationMap) jumps(run []point, q point) bool {
+	_, world := m.proj.(equalEarth)
+	return world && len(run) > 0 && math.Abs(q.x-run[len(run)-1].x) > m.w/2
 }
 
 func (m *locationMap) drawMap() {
@@ -237,6 +262,9 @@ func (m *locationMap) meshLine(line []sphere.LonLat, off func(point) float64) (a
 			flush()
 			continue
 		}
+		if m.jumps(run, q) {
+			flush()
+		}
 		if n := len(run); n > 0 {
 			a, b := off(run[n-1]), off(q)
 			if a*b < 0 {
@@ -277,6 +305,7 @@ func (m *locationMap) drawBoundaries() {
 			}
 			for _, part := range b.Parts() {
 				for _, l := range m.lines(part) {
+					m.drawn[look.typ] = m.drawn[look.typ] || slices.ContainsFunc(l, func(p point) bool { return m.within(p, 0) })
 					d.WriteString(pathOf(l, false))
 					if look.teeth || look.ticks {
 						markAlong(&marks, l, side, look.teeth)

@@ -8,21 +8,21 @@ import (
 )
 
 func (m *locationMap) drawSea() {
-	if _, world := m.proj.(equalEarth); world {
-		m.leaf("path", like("sea", "d", pathOf(m.rim(), true)))
+	if world, ok := m.proj.(equalEarth); ok {
+		m.leaf("path", like("sea", "d", pathOf(m.rim(world), true)))
 		return
 	}
 	m.leaf("rect", like("sea", "x", px(m.x), "y", px(m.y), "width", px(m.w), "height", px(m.h)))
 }
 
 // rim returns the outline of a world map.
-func (m *locationMap) rim() (rim []point) {
+func (m *locationMap) rim(world equalEarth) (rim []point) {
 	for lat := -90.0; lat <= 90; lat += 2 {
-		p, _ := m.to(sphere.LonLat{Lon: 180, Lat: lat})
+		p, _ := m.past(world.edge(lat, 1))
 		rim = append(rim, p)
 	}
 	for lat := 90.0; lat >= -90; lat -= 2 {
-		p, _ := m.to(sphere.LonLat{Lon: -180, Lat: lat})
+		p, _ := m.past(world.edge(lat, -1))
 		rim = append(rim, p)
 	}
 	return rim
@@ -31,6 +31,7 @@ func (m *locationMap) rim() (rim []point) {
 // drawLand fills the land.
 func (m *locationMap) drawLand() {
 	az, regional := m.proj.(*azimuthal)
+	world, _ := m.proj.(equalEarth)
 	if !regional {
 		m.start("g", attrs{"clip-path", "url(#nm-rim)"})
 		defer m.end()
@@ -40,7 +41,7 @@ func (m *locationMap) drawLand() {
 		near := false
 		for _, ring := range rings {
 			if !regional {
-				m.worldRing(&d, ring)
+				m.worldRing(&d, world, ring)
 				near = true
 				continue
 			}
@@ -78,7 +79,7 @@ func (m *locationMap) meets(pts []point) bool {
 // worldRing appends a ring on a world map. Longitudes run on past ±180°, and the ring
 // is drawn again a turn away where it passes the edge; a ring about a pole is closed
 // along it.
-func (m *locationMap) worldRing(d *strings.Builder, ring []sphere.LonLat) {
+func (m *locationMap) worldRing(d *strings.Builder, world equalEarth, ring []sphere.LonLat) {
 	run := []sphere.LonLat{ring[0]}
 	low, high := ring[0].Lon, ring[0].Lon
 	for _, p := range ring[1:] {
@@ -92,12 +93,12 @@ func (m *locationMap) worldRing(d *strings.Builder, ring []sphere.LonLat) {
 		run = append(run, sphere.LonLat{Lon: end, Lat: pole}, sphere.LonLat{Lon: ring[0].Lon, Lat: pole})
 	}
 	for _, turn := range []float64{-360, 0, 360} {
-		if low+turn >= 180 || high+turn <= -180 {
+		if low+turn-world.middle >= 180 || high+turn-world.middle <= -180 {
 			continue
 		}
 		var pts []point
 		for _, p := range run {
-			q, _ := m.to(sphere.LonLat{Lon: p.Lon + turn, Lat: p.Lat})
+			q, _ := m.past(sphere.LonLat{Lon: p.Lon + turn, Lat: p.Lat})
 			pts = append(pts, q)
 		}
 		d.WriteString(pathOf(pts, true))

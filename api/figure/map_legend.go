@@ -8,17 +8,23 @@ import (
 	"nearmargin/setting/sphere"
 )
 
-// eastEnd is the end of the equator on a world map.
-var eastEnd = sphere.LonLat{Lon: 180}
-
 func marksOf(line []point, teeth bool) string {
 	var d strings.Builder
 	markAlong(&d, line, 1, teeth)
 	return d.String()
 }
 
+// markerKey is where a marker stands, to 3 px, and how it looks.
+type markerKey struct {
+	x, y   int
+	label  string
+	family string
+	low    bool
+}
+
 // drawSites draws the markers, those of low confidence open, and the names of not too
-// many, where they find room.
+// many, where they find room. Of markers alike that nobody could tell apart one is drawn,
+// so that a figure of any number of sites stays one that programs can open.
 func (m *locationMap) drawSites() {
 	shapes := map[string]string{}
 	for _, l := range siteLooks {
@@ -26,6 +32,7 @@ func (m *locationMap) drawSites() {
 	}
 	var taken [][4]float64
 	place := make([]point, len(m.s.Sites))
+	seen := map[markerKey]bool{}
 	for i := range m.s.Sites {
 		s := &m.s.Sites[i]
 		p, ok := m.to(s.At)
@@ -33,18 +40,24 @@ func (m *locationMap) drawSites() {
 			continue
 		}
 		place[i] = p
+		key := markerKey{int(math.Floor(p.x / 3)), int(math.Floor(p.y / 3)), s.Label, s.Family, s.Confidence == "low"}
+		if seen[key] {
+			continue
+		}
+		seen[key] = true
 		taken = append(taken, [4]float64{p.x - 7, p.y - 7, p.x + 7, p.y + 7})
 		m.drawMarker(shapes[s.Label], s.Family, s.Confidence == "low", p)
 	}
 	if len(m.s.Sites) > mostNamed {
-		return
+		return // the report's reader has the table
 	}
 	for i := range m.s.Sites {
 		s := &m.s.Sites[i]
 		if s.Name == "" || !m.within(place[i], 0) {
 			continue
 		}
-		w := textWidth(s.Name, smallSize)
+		name := shorten(s.Name, longestName)
+		w, named := textWidth(name, smallSize), false
 		for _, side := range []struct {
 			x, y   float64
 			anchor string
@@ -56,10 +69,22 @@ func (m *locationMap) drawSites() {
 				continue
 			}
 			taken = append(taken, box)
-			m.textAt(s.Name, p.x, p.y, smallSize, side.anchor)
+			m.textAt(name, p.x, p.y, smallSize, side.anchor)
+			named = true
 			break
 		}
+		if !named {
+			m.unnamed++
+		}
 	}
+}
+
+// shorten cuts a text to a number of characters.
+func shorten(s string, most int) string {
+	if r := []rune(s); len(r) > most {
+		return string(r[:most-1]) + "\u2026"
+	}
+	return s
 }
 
 func overlaps(list [][4]float64, b [4]float64) bool {
@@ -85,8 +110,8 @@ func (m *locationMap) drawMarker(shape, family string, open bool, p point) {
 func (m *locationMap) drawBar() {
 	perKm := m.k / sphere.MeanRadiusKm
 	words := ""
-	if _, world := m.proj.(equalEarth); world {
-		right, _, _ := m.proj.at(eastEnd)
+	if world, ok := m.proj.(equalEarth); ok {
+		right, _, _ := world.at(world.edge(0, 1))
 		perKm = right * m.k / (math.Pi * 6378.137)
 		words = " at the equator"
 	}
@@ -136,6 +161,9 @@ func (m *locationMap) drawBelow(y float64) float64 {
 		})
 	}
 	for _, look := range lineLooks {
+		if !m.drawn[look.typ] {
+			continue
+		}
 		entries = append(entries, func(p point) {
 			line := []point{{p.x, p.y - 4}, {p.x + 36, p.y - 4}}
 			marks := ""
@@ -151,9 +179,14 @@ func (m *locationMap) drawBelow(y float64) float64 {
 		draw(point{marginX + float64(i/rows)*width, y + 24 + float64(i%rows)*19})
 	}
 	y += 24 + float64(rows)*19
-	if m.s.Others > 0 {
-		m.content("text", fmt.Sprintf("Rows without an answer, which are not drawn: %d.", m.s.Others), like("soft", "x", px(marginX), "y", px(y+8), "font-size", px(smallSize)))
-		y += 18
+	for _, n := range []struct {
+		words string
+		count int
+	}{{"Rows without an answer, which are not drawn", m.s.Others}, {"Sites whose name has no room on the map", m.unnamed}} {
+		if n.count > 0 {
+			m.content("text", fmt.Sprintf("%s: %d.", n.words, n.count), like("soft", "x", px(marginX), "y", px(y+8), "font-size", px(smallSize)))
+			y += 18
+		}
 	}
 	for _, par := range m.s.Caption {
 		for _, l := range wrap(par, smallSize, figureW-2*marginX) {

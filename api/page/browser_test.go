@@ -127,7 +127,7 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	b.run(log.Enable(), emulation.SetDeviceMetricsOverride(int64(width), int64(height), 1, width < 500),
 		emulation.SetEmulatedMedia().WithFeatures([]*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: scheme}}),
 		chromedp.Navigate(b.url+"/"+fragment))
-	if !strings.HasPrefix(fragment, noScript) {
+	if !strings.HasPrefix(fragment, noScript) && fragment != referencePage {
 		b.wait("the page is ready", `document.documentElement.dataset.ready === "yes"`)
 	}
 	return b
@@ -135,6 +135,9 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 
 // noScript as a fragment opens the page without JavaScript.
 const noScript = "?no-script"
+
+// referencePage as a fragment opens the reference page, which has no script.
+const referencePage = "reference"
 
 func (b *tab) listen(ev any) {
 	b.mu.Lock()

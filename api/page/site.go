@@ -8,10 +8,12 @@ import (
 	"encoding/hex"
 	"fmt"
 	"io/fs"
+	"maps"
 	"net/http"
 	"path"
 	"strconv"
 	"strings"
+	"sync"
 )
 
 //go:embed static
@@ -72,10 +74,10 @@ func newFile(name string, body []byte) (*File, error) {
 // Site is all pages and the files that they load. It is immutable.
 type Site struct{ files map[string]*File }
 
-// New builds a site: the map page at "/", the reference page at "/reference", made
-// from an OpenAPI document, and the files below "/assets/".
-func New(openapi []byte) (*Site, error) {
-	s := &Site{files: map[string]*File{}}
+// staticFiles are the files of the program's own by their paths. Preparing them takes
+// half a second, so it is done once.
+var staticFiles = sync.OnceValues(func() (map[string]*File, error) {
+	files := map[string]*File{}
 	err := fs.WalkDir(static, "static", func(name string, d fs.DirEntry, err error) error {
 		if err != nil || d.IsDir() {
 			return err
@@ -88,9 +90,16 @@ func New(openapi []byte) (*Site, error) {
 		if at == "/assets/index.html" {
 			at = "/"
 		}
-		s.files[at], err = newFile(name, body)
+		files[at], err = newFile(name, body)
 		return err
 	})
+	return files, err
+})
+
+// New builds a site: the map page at "/", the reference page at "/reference", made
+// from an OpenAPI document, and the files below "/assets/".
+func New(openapi []byte) (*Site, error) {
+	files, err := staticFiles()
 	if err != nil {
 		return nil, err
 	}
@@ -98,6 +107,7 @@ func New(openapi []byte) (*Site, error) {
 	if err != nil {
 		return nil, err
 	}
+	s := &Site{files: maps.Clone(files)}
 	s.files["/reference"], err = newFile("reference.html", html)
 	return s, err
 }
@@ -127,7 +137,7 @@ func (f *File) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 	h := w.Header()
 	h.Set("ETag", f.ETag)
 	h.Set("Cache-Control", "no-cache") // kept, and asked about before each use
-	h.Set("Vary", "Accept-Encoding")
+	h.Add("Vary", "Accept-Encoding")
 	h.Set("X-Content-Type-Options", "nosniff")
 	h.Set("Referrer-Policy", "no-referrer")
 	h.Set("Content-Security-Policy", ContentSecurityPolicy)

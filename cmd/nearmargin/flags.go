@@ -22,6 +22,7 @@ type flags struct {
 	depthColumn, uncertaintyCol   string
 	prefix, title                 string
 	asJSON                        bool
+	rows                          int
 	depthUnit, depthDatum         string
 	elevationColumn               string
 	database                      string

@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"unique"
 
 	"nearmargin/api/annotate"
 	"nearmargin/api/figure"
@@ -65,8 +66,8 @@ func (p *program) readAnnotated(ctx context.Context, f *flags, each func(annotat
 	return name, nil
 }
 
-// mostOnMap bounds the sites of a map: more could not be told apart.
-const mostOnMap = 50_000
+// mostOnMap bounds the sites of a map, which are held in memory.
+const mostOnMap = 1_000_000
 
 // drawMap draws an annotated file as a location map.
 func drawMap(p *program, ctx context.Context, f *flags) error {
@@ -86,7 +87,7 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 			return fmt.Errorf("more than %d sites; draw a part of them", mostOnMap)
 		default:
 			at := sphere.LonLat{Lon: sphere.WrapLon(r.Lon), Lat: r.Lat}
-			spec.Sites = append(spec.Sites, figure.MapSite{Name: r.Name, At: at, Label: r.Label, Family: r.Family, Confidence: r.Confidence})
+			spec.Sites = append(spec.Sites, figure.MapSite{Name: strings.Clone(r.Name), At: at, Label: kept(r.Label), Family: kept(r.Family), Confidence: kept(r.Confidence)})
 		}
 		return nil
 	})
@@ -110,7 +111,7 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 	}
 	spec.Caption = append(spec.Caption, fmt.Sprintf("Answers from %s; boundaries of %s (sha256 %.12s), %s, %s.", strings.Join(models, ", "), m.Ref(), m.SHA256(), m.Title(), m.Licence()))
 	if areas > 0 {
-		spec.Caption = append(spec.Caption, fmt.Sprintf("%d areas are not drawn.", areas))
+		spec.Caption = append(spec.Caption, fmt.Sprintf("Areas, which are not drawn: %d.", areas))
 	}
 	spec.Caption = append(spec.Caption, m.Citations()...)
 	spec.Caption = append(spec.Caption, "Land: Natural Earth. The setting is that of the present day. A screening aid on generalised models: for hazard, siting or drilling defer to national hazard models, local codes and licensed practice.")
@@ -120,6 +121,9 @@ func drawMap(p *program, ctx context.Context, f *flags) error {
 		return err
 	})
 }
+
+// kept returns a text of which there are few, as the one copy of it.
+func kept(s string) string { return unique.Make(s).Value() }
 
 // near reports whether sites lie close enough together for the fine outline of land.
 func near(sites []figure.MapSite) bool {

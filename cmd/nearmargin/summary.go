@@ -11,6 +11,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"unicode"
 
 	"nearmargin/api/annotate"
 	"nearmargin/setting"
@@ -21,13 +22,17 @@ func summaryFlags(f *flags) {
 	f.modelFlag()
 	readFlags(f)
 	f.set.BoolVar(&f.asJSON, "json", false, "write JSON instead of tables")
+	f.set.IntVar(&f.rows, "rows", 0, "at most this `number` of rows listed of each kind, 1 to 1000; 0: 20 in tables, 1000 in JSON")
 }
 
 // distanceBinsKm are the upper ends of the histogram's bins but the last, in km.
 var distanceBinsKm = [...]float64{10, 25, 50, 100, 200, 400, 800, 1600}
 
-// mostLowRows bounds the rows that a summary lists by number.
-const mostLowRows = 1000
+// How many rows of a kind a summary lists by number.
+const (
+	mostRows        = 1000
+	mostRowsInTable = 20
+)
 
 // summaryCount is how many rows have a label or type.
 type summaryCount struct {
@@ -64,9 +69,9 @@ type fileSummary struct {
 	BoundaryTypes []summaryCount `json:"nearest_boundary_types"`
 	Distances     []summaryBin   `json:"nearest_boundary_distances"`
 	Low           int            `json:"low_confidence"`
-	LowRows       []summaryRow   `json:"low_confidence_rows"` // at most 1,000
+	LowRows       []summaryRow   `json:"low_confidence_rows"` // the first of them
 	Errors        int            `json:"errors"`
-	ErrorRows     []summaryRow   `json:"error_rows"` // at most 1,000
+	ErrorRows     []summaryRow   `json:"error_rows"` // the first of them
 }
 
 // summary counts an annotated file.
@@ -74,6 +79,15 @@ func summary(p *program, ctx context.Context, f *flags) error {
 	s := fileSummary{Models: []string{}, LowRows: []summaryRow{}, ErrorRows: []summaryRow{}}
 	labels, types, confidences := map[string]int{}, map[string]int{}, map[string]int{}
 	bins := make([]int, len(distanceBinsKm)+1)
+	if f.rows < 0 || f.rows > mostRows {
+		return usageError("--rows is %d; want 0 to %d", f.rows, mostRows)
+	}
+	listed := f.rows
+	if listed == 0 && f.asJSON {
+		listed = mostRows
+	} else if listed == 0 {
+		listed = mostRowsInTable
+	}
 	var err error
 	s.File, err = p.readAnnotated(ctx, f, func(r annotate.Row) error {
 		s.Rows++
@@ -86,7 +100,7 @@ func summary(p *program, ctx context.Context, f *flags) error {
 			return nil
 		case r.Label == "":
 			s.Errors++
-			if len(s.ErrorRows) < mostLowRows {
+			if len(s.ErrorRows) < listed {
 				s.ErrorRows = append(s.ErrorRows, summaryRow{Row: r.Number, Name: r.Name, Reason: cmp.Or(r.Error, "no answer")})
 			}
 			return nil
@@ -106,7 +120,7 @@ func summary(p *program, ctx context.Context, f *flags) error {
 		}
 		if r.Confidence == "low" {
 			s.Low++
-			if len(s.LowRows) < mostLowRows {
+			if len(s.LowRows) < listed {
 				s.LowRows = append(s.LowRows, summaryRow{r.Number, r.Name, r.Label, r.Reason, setting.SiteAt(r.Lon, r.Lat), r.Brief})
 			}
 		}
@@ -201,15 +215,15 @@ func ordered(counts map[string]int, order []string) []summaryCount {
 // write writes the summary as tables for a terminal.
 func (s *fileSummary) write(out io.Writer) error {
 	w := bufio.NewWriter(out)
-	fmt.Fprintf(w, "%s: %d rows, %d answered, %d without an answer", s.File, s.Rows, s.Answered, s.Errors)
+	fmt.Fprintf(w, "%s: %d rows, %d answered, %d without an answer", forTerminal(s.File, 200), s.Rows, s.Answered, s.Errors)
 	if s.Areas > 0 {
 		fmt.Fprintf(w, ", %d areas not counted below", s.Areas)
 	}
-	fmt.Fprintf(w, "\nmodel: %s\n", cmp.Or(strings.Join(s.Models, ", "), "none"))
+	fmt.Fprintf(w, "\nmodel: %s\n", forTerminal(cmp.Or(strings.Join(s.Models, ", "), "none"), 1000))
 	table := func(title string, list []summaryCount) {
 		fmt.Fprintf(w, "\n%s\n", title)
 		for _, c := range list {
-			writeBar(w, c.Name, c.Rows, s.Answered)
+			writeBar(w, forTerminal(c.Name, 40), c.Rows, s.Answered)
 		}
 	}
 	table("Setting", s.Settings)
@@ -231,20 +245,36 @@ func (s *fileSummary) write(out io.Writer) error {
 		for _, r := range list {
 			fmt.Fprintf(w, "  row %d", r.Row)
 			if r.Name != "" {
-				fmt.Fprintf(w, " (%s)", r.Name)
+				fmt.Fprintf(w, " (%s)", forTerminal(r.Name, 60))
 			}
 			if r.Label != "" {
-				fmt.Fprintf(w, " %s", r.Label)
+				fmt.Fprintf(w, " %s", forTerminal(r.Label, 60))
 			}
-			fmt.Fprintf(w, ": %s\n", strings.Join(strings.Fields(r.Reason), " "))
+			fmt.Fprintf(w, ": %s\n", forTerminal(r.Reason, 1000))
 		}
 		if all > len(list) {
-			fmt.Fprintf(w, "  and %d more\n", all-len(list))
+			fmt.Fprintf(w, "  and %d more (--rows lists up to %d, --json for programs)\n", all-len(list), mostRows)
 		}
 	}
 	rows("Low confidence: moved by one sigma, a label of another family is met", s.LowRows, s.Low)
 	rows("Without an answer", s.ErrorRows, s.Errors)
 	return w.Flush()
+}
+
+// forTerminal makes a text of a stranger's file fit for a line on a terminal: on one line,
+// without characters that would steer the terminal, and not too long.
+func forTerminal(s string, most int) string {
+	s = strings.Map(func(r rune) rune {
+		if !unicode.IsPrint(r) && !unicode.IsSpace(r) {
+			return '\uFFFD'
+		}
+		return r
+	}, s)
+	r := []rune(strings.Join(strings.Fields(s), " "))
+	if len(r) > most {
+		return string(r[:most-1]) + "\u2026"
+	}
+	return string(r)
 }
 
 // writeBar writes a count with its share and a bar of at most 40 characters.

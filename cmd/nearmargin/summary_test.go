@@ -153,6 +153,32 @@ func TestMapAndSummaryRefuse(t *testing.T) {
 	}
 }
 
+// TestSummaryOfStrangeText: what a stranger's file says steers no terminal, and a long list
+// is cut in tables.
+func TestSummaryOfStrangeText(t *testing.T) {
+	in := "name,lon,lat,ts_setting,ts_error\n"
+	for range 30 {
+		in += "\"\x1b[31mred\nline \u202etwo\",,,,lon: is missing\n"
+	}
+	got := invoke(t, nil, in, "summary", "-")
+	if got.status != exitDone || strings.ContainsAny(got.stdout, "\x1b\u202e") || !strings.Contains(got.stdout, "row 20 (\uFFFD[31mred line \uFFFDtwo): lon: is missing\n") {
+		t.Errorf("status %d: %q", got.status, got.stdout)
+	}
+	if strings.Contains(got.stdout, "row 21 ") || !strings.Contains(got.stdout, "and 10 more (--rows ") {
+		t.Errorf("the list is not cut after 20: %s", got.stdout)
+	}
+	if got := invoke(t, nil, in, "summary", "-", "--rows", "25"); !strings.Contains(got.stdout, "row 25 ") || !strings.Contains(got.stdout, "and 5 more") {
+		t.Errorf("--rows 25 gives %s", got.stdout)
+	}
+	if got := invoke(t, nil, in, "summary", "-", "--rows", "1001"); got.status != exitUsage {
+		t.Errorf("--rows 1001 gives status %d", got.status)
+	}
+	var s fileSummary
+	if err := json.Unmarshal([]byte(invoke(t, nil, in, "summary", "-", "--json").stdout), &s); err != nil || len(s.ErrorRows) != 30 || !strings.HasPrefix(s.ErrorRows[0].Name, "\x1b[31mred\n") {
+		t.Errorf("%v: %+v", err, s.ErrorRows)
+	}
+}
+
 // TestSummaryBins: a bin holds its lower end and not its upper.
 func TestSummaryBins(t *testing.T) {
 	in := "lon,lat,ts_setting,ts_distance_km\n"
