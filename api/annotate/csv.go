@@ -131,8 +131,8 @@ func (j *csvJob) worker() func(*chunk[csvRows]) {
 // sniff looks at the first line: byte order mark, separator, end of line. It
 // returns the number of bytes that it took away.
 func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
-	head, err := br.Peek(64 << 10)
-	if err != nil && err != io.EOF && !errors.Is(err, bufio.ErrBufferFull) {
+	head, err := peekLine(br)
+	if err != nil {
 		return 0, csvFault(err, j.o.RowBytes)
 	}
 	if bytes.HasPrefix(head, []byte("\xff\xfe")) || bytes.HasPrefix(head, []byte("\xfe\xff")) {
@@ -145,16 +145,7 @@ func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
 		head = head[n:]
 	}
 	head = bytes.TrimLeft(head, "\r\n") // blank lines are skipped
-	line, quoted := head, false
-	for i, c := range head {
-		if c == '"' {
-			quoted = !quoted
-		}
-		if c == '\n' && !quoted {
-			line = head[:i+1]
-			break
-		}
-	}
+	line, _ := firstLine(head)
 	if len(bytes.TrimSpace(line)) == 0 && len(line) == len(head) {
 		return 0, badLine(1, "the input is empty; the first line must name the columns, such as id,lon,lat")
 	}
@@ -168,6 +159,37 @@ func (j *csvJob) sniff(br *bufio.Reader) (int64, error) {
 	j.comma = separator(line)
 	j.decimal = j.comma != ','
 	return skipped, nil
+}
+
+// peekLine returns what can be had up to the end of the first line that is not
+// blank: that line at least, and 64 KiB at most. It does not wait for more.
+func peekLine(br *bufio.Reader) ([]byte, error) {
+	for n := 1; ; n = br.Buffered() + 1 {
+		_, err := br.Peek(min(n, br.Size()))
+		head, _ := br.Peek(br.Buffered())
+		_, whole := firstLine(bytes.TrimLeft(bytes.TrimPrefix(head, byteOrderMark), "\r\n"))
+		switch {
+		case whole || len(head) == br.Size() || err == io.EOF:
+			return head, nil
+		case err != nil:
+			return nil, err
+		}
+	}
+}
+
+// firstLine returns the text up to the first line break outside of quotes, with it,
+// and whether there is one.
+func firstLine(text []byte) (line []byte, whole bool) {
+	quoted := false
+	for i, c := range text {
+		if c == '"' {
+			quoted = !quoted
+		}
+		if c == '\n' && !quoted {
+			return text[:i+1], true
+		}
+	}
+	return text, false
 }
 
 // separator returns which of comma, semicolon and tab stands most often outside

@@ -1,12 +1,15 @@
 package annotate
 
 import (
+	"bufio"
 	"bytes"
 	"context"
+	"fmt"
 	"io"
 	"slices"
 	"strings"
 	"testing"
+	"testing/iotest"
 )
 
 // TestTables: given tables as people have them, expect an answer or an error in
@@ -245,5 +248,31 @@ func TestRowsWithoutEnd(t *testing.T) {
 	_, err := Run(context.Background(), &endless{head: []byte("["), fill: ' '}, io.Discard, JSON, Options{Lookup: lookup(t, JSON)})
 	if err == nil || !strings.Contains(err.Error(), "send NDJSON or CSV") {
 		t.Errorf("json: %v", err)
+	}
+}
+
+// TestFirstLineIsNotWaitedBeyond sends a table in two parts, the second only when the
+// separator has been found in the first.
+func TestFirstLineIsNotWaitedBeyond(t *testing.T) {
+	for _, head := range []string{"id;lon;lat\n", "\xef\xbb\xbf\r\n\"a\nb\";lon;lat\r\n"} {
+		in, out := io.Pipe()
+		go out.Write([]byte(head))
+		var j csvJob
+		if _, err := j.sniff(bufio.NewReaderSize(in, 64<<10)); err != nil || j.comma != ';' {
+			t.Errorf("%q: separator %q, %v", head, j.comma, err)
+		}
+		in.Close()
+	}
+}
+
+// TestHeadComesByteByByte reads tables a byte at a time.
+func TestHeadComesByteByByte(t *testing.T) {
+	for _, text := range []string{"lon,lat\n1,2\n", "\xef\xbb\xbf\n\nlon\tlat\r\n1\t2\r\n", "lon,lat", `"l` + "\n" + `on",lat` + "\n1,2\n", ""} {
+		var whole, bytewise csvJob
+		n, err := whole.sniff(bufio.NewReaderSize(strings.NewReader(text), 64<<10))
+		m, err2 := bytewise.sniff(bufio.NewReaderSize(iotest.OneByteReader(strings.NewReader(text)), 64<<10))
+		if n != m || whole.comma != bytewise.comma || whole.newline != bytewise.newline || fmt.Sprint(err) != fmt.Sprint(err2) {
+			t.Errorf("%q: %d, %q, %q, %v; a byte at a time %d, %q, %q, %v", text, n, whole.comma, whole.newline, err, m, bytewise.comma, bytewise.newline, err2)
+		}
 	}
 }

@@ -30,6 +30,7 @@ var (
 	program = flag.String("program", "", "the nearmargin `file` to measure")
 	model   = flag.String("model", "", "a model's `directory`, for start; the built-in model where empty")
 	most    = flag.Int("rows", 1_000_000, "the largest `number` of rows, for memory")
+	grids   = flag.String("grids", "", "write made-up grids of 19 slabs into a `directory` and do nothing else")
 	bare    = flag.Int("bare", 0, "serve a body of that many `bytes` and nothing else")
 )
 
@@ -38,6 +39,10 @@ func main() {
 	flag.Parse()
 	if *bare > 0 {
 		serveBare(*bare)
+		return
+	}
+	if *grids != "" {
+		writeGrids(*grids)
 		return
 	}
 	if *program == "" || flag.NArg() == 0 {
