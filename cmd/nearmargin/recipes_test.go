@@ -22,11 +22,6 @@ func TestRecipes(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	var table strings.Builder
-	table.WriteString("id,lon,lat\n")
-	for i := range 1000 {
-		fmt.Fprintf(&table, "%04d,%d.5,%d.25\n", i, i*7%360-180, i*3%180-90)
-	}
 	address := startServer(t)
 	blocks := fenced.FindAllStringSubmatch(string(raw), -1)
 	if len(blocks) < 6 {
@@ -35,8 +30,10 @@ func TestRecipes(t *testing.T) {
 	for i, b := range blocks {
 		t.Run(fmt.Sprint(i+1), func(t *testing.T) {
 			dir := t.TempDir()
-			if err := os.WriteFile(filepath.Join(dir, "sites.csv"), []byte(table.String()), 0o644); err != nil {
-				t.Fatal(err)
+			for _, f := range tables {
+				if err := os.WriteFile(filepath.Join(dir, "sites."+f.name), []byte(f.whole(1000)), 0o644); err != nil {
+					t.Fatal(err)
+				}
 			}
 			c := exec.Command("sh", "-eu", "-c", strings.ReplaceAll(b[2], "127.0.0.1:8080", address))
 			c.Dir = dir
