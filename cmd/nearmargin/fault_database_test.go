@@ -109,9 +109,6 @@ func (p *process) readiness() (r readiness) {
 // TestDatabaseGoneUnderLoad takes the database away in three ways while a service is
 // asked: its process ends, it is frozen, and packets to and from it vanish.
 func TestDatabaseGoneUnderLoad(t *testing.T) {
-	if testing.Short() {
-		t.Skip("takes more than a minute")
-	}
 	server := storetest.Get(t)
 	for _, c := range []struct {
 		name  string

@@ -92,7 +92,10 @@ func TestRecipesTakeUpWhereAKillLeftThem(t *testing.T) {
 	for i, f := range tables {
 		t.Run(f.name, func(t *testing.T) {
 			p := startProcess(t, "--listen", address)
-			const rows = 40_000
+			rows := 40_000
+			if testing.Short() {
+				rows = 12_000
+			}
 			input := f.whole(rows)
 			want := f.annotate(t, address, input)
 			dir := t.TempDir()
