@@ -40,6 +40,9 @@ func annotateArray(ctx context.Context, in io.Reader, out io.Writer, o *Options)
 			b = append(b, ',', '\n')
 		}
 		st.Rows++
+		if st.Rows%chunkRows == 0 {
+			o.turn.next()
+		}
 		var ok bool
 		if b, ok = k.object(b, raw); !ok {
 			st.Errors++

@@ -137,6 +137,9 @@ func (f *features) stream(ctx context.Context) error {
 		}
 		f.buf = append(f.buf, '\n')
 		f.st.Rows++
+		if f.st.Rows%chunkRows == 0 {
+			f.o.turn.next()
+		}
 		if raw[0] != '{' {
 			return &InputError{Pointer: fmt.Sprintf("/features/%d", f.st.Rows-1), Detail: "a feature must be a JSON object"}
 		}

@@ -43,16 +43,12 @@ func inOrder[R any](ctx context.Context, o *Options,
 	var wg sync.WaitGroup
 	for range workers {
 		wg.Go(func() {
-			work := newWorker()
+			work, turn := newWorker(), turn{slots: o.Slots}
 			for c := range todo {
 				c.out, c.errors = c.out[:0], 0
-				if o.Slots != nil {
-					o.Slots <- struct{}{}
-				}
+				turn.take()
 				work(c)
-				if o.Slots != nil {
-					<-o.Slots
-				}
+				turn.give()
 				c.done <- struct{}{}
 			}
 		})
@@ -89,7 +85,9 @@ func inOrder[R any](ctx context.Context, o *Options,
 		}
 		c := <-free
 		c.n = 0
+		o.turn.take()
 		more, readErr = read(c)
+		o.turn.give()
 		todo <- c
 		order <- c
 	}

@@ -13,11 +13,19 @@ func Run(ctx context.Context, in io.Reader, out io.Writer, f Format, o Options) 
 	if err := o.fill(); err != nil {
 		return Stats{}, err
 	}
+	o.turn = turn{slots: o.Slots}
+	defer o.turn.give() // also where something panics
+	in = turnReader{in, &o.turn}
 	switch f {
 	case CSV:
 		return annotateCSV(ctx, in, out, &o)
 	case NDJSON:
 		return annotateNDJSON(ctx, in, out, &o)
+	}
+	// what computes in the goroutine that reads and writes
+	out = turnWriter{out, &o.turn}
+	o.turn.take()
+	switch f {
 	case GeoJSON:
 		return annotateGeoJSON(ctx, in, out, &o)
 	case JSON:
