@@ -20,7 +20,7 @@ const importLock int64 = 0x6e6561726d617267
 const (
 	// Where this program vanishes with its machine the server notices within a minute and
 	// gives the lock back; by its own settings it may take two hours.
-	vanishSQL = `SELECT set_config('tcp_keepalives_idle', '30', true), set_config('tcp_keepalives_interval', '10', true), set_config('tcp_keepalives_count', '3', true)`
+	vanishSQL = `SELECT set_config('tcp_keepalives_idle', '30', true), set_config('tcp_keepalives_interval', '10', true), set_config('tcp_keepalives_count', '3', true), set_config('tcp_user_timeout', '60000', true)`
 
 	lockSQL  = `SELECT pg_try_advisory_xact_lock(@key)`
 	modelSQL = `INSERT INTO nearmargin.models (model_id) VALUES (@model) ON CONFLICT DO NOTHING`

@@ -11,6 +11,7 @@ import (
 	"strings"
 	"syscall"
 	"testing"
+	"time"
 
 	"nearmargin/store/storetest"
 )
@@ -105,9 +106,15 @@ func TestLogOnAFullDisk(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	checkLog(t, string(raw))
+	account(t, string(raw), unheard+1+3)
+}
+
+// account checks that each request has its record in the log, or is said to be lost.
+func account(t *testing.T, log string, asked float64) {
+	t.Helper()
+	checkLog(t, log)
 	lost, torn, records := 0.0, 0, 0.0
-	for line := range strings.Lines(string(raw)) {
+	for line := range strings.Lines(log) {
 		var rec struct {
 			Msg, Route string
 			Lines      float64
@@ -121,10 +128,55 @@ func TestLogOnAFullDisk(t *testing.T) {
 			records++
 		}
 	}
-	const asked = unheard + 1 + 3
 	if records+lost != asked || records < 3 || lost < 100 || torn > 1 {
-		t.Errorf("%v records of requests and %v lines said to be lost, %d torn; %d were made", records, lost, torn, asked)
+		t.Errorf("%v records of requests and %v lines said to be lost, %d torn; %v were made", records, lost, torn, asked)
 	}
+}
+
+// TestLogReaderThatStandsStill serves while nobody reads the log, and reads it then.
+func TestLogReaderThatStandsStill(t *testing.T) {
+	r, w, err := os.Pipe()
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer r.Close()
+	address := freeAddress(t)
+	c := programCommand(t, "serve", "--listen", address)
+	c.Stderr = w
+	if err := c.Start(); err != nil {
+		t.Fatal(err)
+	}
+	w.Close()
+	t.Cleanup(func() {
+		c.Process.Kill()
+		c.Wait()
+	})
+	log := bufio.NewReader(r)
+	if _, err := log.ReadString('\n'); err != nil { // it says that it listens
+		t.Fatal(err)
+	}
+	const unread = 3000 // more than the pipe and the queue hold
+	for range unread {
+		if s := status(t, "http://"+address+"/v1/point?lon=1&lat=2"); s != http.StatusOK {
+			t.Fatalf("status %d", s)
+		}
+	}
+	rest := make(chan string, 1)
+	go func() {
+		raw, _ := io.ReadAll(log)
+		rest <- string(raw)
+	}()
+	time.Sleep(200 * time.Millisecond) // what waits is read
+	for range 3 {
+		status(t, "http://"+address+"/v1/point?lon=1&lat=2")
+	}
+	if err := c.Process.Signal(syscall.SIGTERM); err != nil {
+		t.Fatal(err)
+	}
+	if err := c.Wait(); err != nil {
+		t.Error(err)
+	}
+	account(t, <-rest, unread+3)
 }
 
 // TestLogWithoutAReader serves while whatever read the log has gone.

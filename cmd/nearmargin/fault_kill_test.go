@@ -10,6 +10,7 @@ import (
 	"os/exec"
 	"path/filepath"
 	"strings"
+	"syscall"
 	"testing"
 	"time"
 
@@ -304,4 +305,52 @@ func TestKilledInAnImport(t *testing.T) {
 		_, body := get(t, p.address, "/readyz")
 		return strings.Contains(body, `"edition":"other"`)
 	})
+}
+
+// TestImportWhoseMachineVanishes stops an import in the middle and has every packet to
+// and from it vanish, as when its machine loses power. The server must give up the
+// import, and with it the lock that keeps others from importing.
+func TestImportWhoseMachineVanishes(t *testing.T) {
+	if testing.Short() {
+		t.Skip("waits for the server's timeouts")
+	}
+	server := storetest.Get(t)
+	url := server.Empty(t)
+	direct := server.Direct(t, url)
+	must(t, url, "migrate")
+	locked := make(chan string, 1)
+	go func() {
+		locked <- server.Inside(t, url, `BEGIN; LOCK TABLE nearmargin.slab_contours IN ACCESS EXCLUSIVE MODE; SELECT pg_sleep(10); COMMIT`)
+	}()
+	waitFor(t, "the lock", func() bool {
+		return server.Inside(t, url, `SELECT count(*) FROM pg_locks WHERE relation = 'nearmargin.slab_contours'::regclass`) == "1"
+	})
+	c := programCommand(t, "model", "import", "builtin", "--database", direct)
+	if err := c.Start(); err != nil {
+		t.Fatal(err)
+	}
+	defer c.Wait()
+	defer c.Process.Kill()
+	importing := func() string { return server.Inside(t, url, importingSQL) }
+	waitFor(t, "the import to stand at the lock", func() bool {
+		return server.Inside(t, url, importingSQL+` AND wait_event_type = 'Lock'`) == "1"
+	})
+	mend := server.Part(t, direct)
+	if err := c.Process.Signal(syscall.SIGSTOP); err != nil {
+		t.Fatal(err)
+	}
+	start := time.Now()
+	<-locked
+	for end := start.Add(100 * time.Second); importing() != "0"; time.Sleep(500 * time.Millisecond) {
+		if time.Now().After(end) {
+			t.Fatal("the server still holds the import")
+		}
+	}
+	t.Logf("the server gave the import up after %v", time.Since(start).Round(time.Second))
+	mend()
+	c.Process.Kill()
+	if n := server.Inside(t, url, `SELECT count(*) FROM nearmargin.editions`); n != "0" {
+		t.Errorf("%s editions", n)
+	}
+	must(t, url, "model", "import", "builtin")
 }

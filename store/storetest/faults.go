@@ -16,6 +16,7 @@ import (
 
 	"github.com/moby/moby/client"
 	"github.com/testcontainers/testcontainers-go"
+	tcexec "github.com/testcontainers/testcontainers-go/exec"
 )
 
 // Pause freezes the server: connections stay, new ones may even be made, and nothing
@@ -169,4 +170,26 @@ func (s *Server) in(t testing.TB, script string) {
 		}
 		t.Fatalf("%s: status %d, %v: %s", script, status, err, said)
 	}
+}
+
+// Inside runs SQL by psql within the container, whose network may be parted, and returns
+// what it prints. The test is skipped where the server is not a container.
+func (s *Server) Inside(t testing.TB, dsn, sql string) string {
+	t.Helper()
+	if s.container == nil {
+		t.Skip("the server is not a container")
+	}
+	u, err := url.Parse(dsn)
+	if err != nil {
+		t.Fatal(err)
+	}
+	status, out, err := s.container.Exec(context.Background(), []string{"psql", "-U", user, "-d", strings.TrimPrefix(u.Path, "/"), "-Atc", sql}, tcexec.Multiplexed())
+	if err != nil {
+		t.Fatal(err)
+	}
+	said, err := io.ReadAll(out)
+	if err != nil || status != 0 {
+		t.Fatalf("%s: status %d, %v: %s", sql, status, err, said)
+	}
+	return strings.TrimSpace(string(said))
 }
