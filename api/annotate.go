@@ -53,7 +53,7 @@ func (s *Server) annotate(c echo.Context) error {
 	in := &batchReader{r: c.Request().Body, ctx: ctx, rc: rc, stall: limits.StallTime}
 	out := &batchWriter{c: c, ctx: ctx, rc: rc, stall: limits.StallTime, contentType: contentType}
 	st, err := annotate.Run(ctx, in, out, format, annotate.Options{
-		Lookup: l, Turn: s.turns.take,
+		Lookup: l, Slots: s.slots,
 		RowBytes: limits.RowBytes, ArrayBytes: limits.BodyBytes,
 		LonColumn: q.text("lon_column"), LatColumn: q.text("lat_column"),
 		DepthColumn: q.text("depth_column"), UncertaintyColumn: q.text("uncertainty_column"),

@@ -251,6 +251,8 @@ func TestShutdown(t *testing.T) {
 	for target, want := range map[string]int{"/readyz": 503, "/healthz": 200, "/v1/point?lon=1&lat=2": 200} {
 		if w := r.get(target); w.Code != want {
 			t.Errorf("%s: status %d, want %d", target, w.Code, want)
+		} else if w.Header().Get("Connection") != "close" {
+			t.Errorf("%s leaves its connection open", target)
 		}
 	}
 	w := r.ask(http.MethodPost, "/v1/annotate", "text/csv", "lon,lat\n")

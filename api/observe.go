@@ -38,6 +38,9 @@ func (s *Server) handleError(err error, c echo.Context) {
 func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
 		start, whole := time.Now(), false
+		if s.gate.draining.Load() { // so that no request is on its way when the connection is closed
+			c.Response().Header().Set(echo.HeaderConnection, "close")
+		}
 		defer func() { // also where a handler breaks the answer off
 			s.record(c, whole, time.Since(start))
 		}()

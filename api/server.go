@@ -55,7 +55,7 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
-	turns   *turns
+	slots   chan struct{} // for what computes long
 	echo    *echo.Echo
 	site    *page.Site
 	// document describes the service at its own base path.
@@ -70,13 +70,13 @@ func New(cfg Config) *Server {
 		panic(err) // a file of the program's own
 	}
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), turns: newTurns(), echo: echo.New(), site: site, document: document}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site, document: document}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true
 	e.IPExtractor = cfg.Access.ipExtractor()
 	e.HTTPErrorHandler = s.handleError
-	e.Use(identify, s.observe, s.admit, s.turns.note)
+	e.Use(identify, s.observe, s.admit, newReserve(s.slots).note)
 	for path, h := range map[string]echo.HandlerFunc{
 		"/v1/point":       s.point,
 		"/v1/area":        s.areaOfBox,

@@ -8,52 +8,52 @@ import (
 	"github.com/labstack/echo/v4"
 )
 
-// turns lets a bounded number of pieces of batches be worked on at once. A piece is
-// 128 rows at most; those that wait come in turn.
-//
-// While places are asked for one at a time as well, one processor is left free, so
-// that they find it however many batches run: where all are busy, a request waits
-// until Go's scheduler looks at the network, which may be 10 ms, and then for its
-// place in the queue. Else batches have all processors.
-type turns struct {
-	slots chan struct{} // all processors but one
-	spare chan struct{} // the last
+// newSlots lets as many goroutines of batches and areas compute at once as there are
+// processors; a place is held for 128 rows at most, or an area, and those that wait
+// come in turn.
+func newSlots() chan struct{} { return make(chan struct{}, runtime.GOMAXPROCS(0)) }
+
+// reserve keeps one place from batches and areas while places are asked for one at a
+// time, so that those requests find a processor free however many batches run. Where
+// all are busy, Go's scheduler looks for what came in from the network only now and
+// then. With a single processor nothing is kept.
+type reserve struct {
+	slots chan struct{}
 	began time.Time
-	asked atomic.Int64 // when a request other than a batch came last, since began
+	asked atomic.Int64 // when the last such request came, since began
+	kept  atomic.Bool
 }
 
-func newTurns() *turns {
-	others := max(1, runtime.GOMAXPROCS(0)-1)
-	t := &turns{slots: make(chan struct{}, others), spare: make(chan struct{}, runtime.GOMAXPROCS(0)-others), began: time.Now()}
-	t.asked.Store(int64(-leaveFree))
-	return t
-}
+func newReserve(slots chan struct{}) *reserve { return &reserve{slots: slots, began: time.Now()} }
 
-// leaveFree is how long a processor is left free after a request.
-const leaveFree = time.Second
+// keepFree is how long the place is kept after a request.
+const keepFree = time.Second
 
-// take calls work when its turn comes.
-func (t *turns) take(work func()) {
-	spare := t.spare
-	if time.Since(t.began)-time.Duration(t.asked.Load()) < leaveFree {
-		spare = nil // a send on it is never chosen
-	}
-	select {
-	case t.slots <- struct{}{}:
-		work()
-		<-t.slots
-	case spare <- struct{}{}:
-		work()
-		<-t.spare
-	}
-}
+// heavy are the routes whose requests take turns themselves.
+var heavy = map[string]bool{"/v1/annotate": true, "/v1/area": true}
 
-// note keeps a processor free for requests other than batches.
-func (t *turns) note(next echo.HandlerFunc) echo.HandlerFunc {
+// note keeps a place free for a while after each request that takes no turn.
+func (r *reserve) note(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
-		if c.Path() != "/v1/annotate" {
-			t.asked.Store(int64(time.Since(t.began)))
+		if cap(r.slots) > 1 && !heavy[c.Path()] {
+			r.asked.Store(int64(time.Since(r.began)))
+			if r.kept.CompareAndSwap(false, true) {
+				go r.keep()
+			}
 		}
 		return next(c)
 	}
+}
+
+func (r *reserve) keep() {
+	r.slots <- struct{}{}
+	for {
+		left := keepFree - (time.Since(r.began) - time.Duration(r.asked.Load()))
+		if left <= 0 {
+			break
+		}
+		time.Sleep(left)
+	}
+	<-r.slots
+	r.kept.Store(false)
 }

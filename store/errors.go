@@ -16,6 +16,7 @@ import (
 // [Error] around one of these, or around the cause alone where none fits.
 var (
 	ErrUnavailable   = errors.New("the database does not answer")
+	ErrNoSpace       = errors.New("the database's disk is full; nothing was changed, make space and try again")
 	ErrNoSchema      = errors.New(`the database lacks the schema nearmargin, or has an older one; run "nearmargin migrate"`)
 	ErrNoRights      = errors.New("the role lacks a right; reading needs USAGE on the schema nearmargin and SELECT on its tables")
 	ErrNoEdition     = errors.New("there is no such edition")
@@ -113,6 +114,8 @@ func kindOf(e *pgconn.PgError) error {
 		return ErrNoSchema
 	case strings.HasPrefix(e.Code, "23"), strings.HasPrefix(e.Code, "22"):
 		return ErrLimit
+	case e.Code == "53100":
+		return ErrNoSpace
 	case strings.HasPrefix(e.Code, "08"), strings.HasPrefix(e.Code, "57P"), strings.HasPrefix(e.Code, "53"):
 		return ErrUnavailable
 	}

@@ -18,6 +18,10 @@ import (
 const importLock int64 = 0x6e6561726d617267
 
 const (
+	// Where this program vanishes with its machine the server notices within a minute and
+	// gives the lock back; by its own settings it may take two hours.
+	vanishSQL = `SELECT set_config('tcp_keepalives_idle', '30', true), set_config('tcp_keepalives_interval', '10', true), set_config('tcp_keepalives_count', '3', true), set_config('tcp_user_timeout', '60000', true)`
+
 	lockSQL  = `SELECT pg_try_advisory_xact_lock(@key)`
 	modelSQL = `INSERT INTO nearmargin.models (model_id) VALUES (@model) ON CONFLICT DO NOTHING`
 
@@ -71,6 +75,9 @@ func (s *Store) Import(ctx context.Context, b *bundle.Bundle) error {
 		return &Error{Op: "import", Ref: ref, Err: err}
 	}
 	err = pgx.BeginFunc(ctx, s.conn, func(tx pgx.Tx) error {
+		if _, err := tx.Exec(ctx, vanishSQL); err != nil {
+			return err
+		}
 		var alone bool
 		if err := tx.QueryRow(ctx, lockSQL, pgx.StrictNamedArgs{"key": importLock}).Scan(&alone); err != nil {
 			return err

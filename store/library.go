@@ -184,8 +184,8 @@ func (l *Library) follow(ctx context.Context) error {
 		return err
 	}
 	defer s.Close(context.WithoutCancel(ctx))
-	if _, err := s.conn.Exec(ctx, `LISTEN nearmargin_activation`); err != nil {
-		return interpretError("listen", "", err)
+	if err := listen(ctx, s); err != nil {
+		return err
 	}
 	for {
 		if err := l.refresh(ctx, s); err != nil {
@@ -202,6 +202,13 @@ func (l *Library) follow(ctx context.Context) error {
 			return err
 		}
 	}
+}
+
+func listen(ctx context.Context, s *Store) error {
+	ctx, cancel := context.WithTimeout(ctx, askTimeout)
+	defer cancel()
+	_, err := s.conn.Exec(ctx, `LISTEN nearmargin_activation`)
+	return interpretError("listen", "", err)
 }
 
 // await returns when there may be something new.
@@ -308,7 +315,7 @@ func (l *Library) degrade(reason string) {
 
 // publicReason is what may be told to anybody: no host, no role, no cause.
 func publicReason(err error) string {
-	for _, kind := range [...]error{ErrCorrupt, ErrNoSchema, ErrNoRights, ErrNothingActive, ErrUnavailable} {
+	for _, kind := range [...]error{ErrCorrupt, ErrNoSchema, ErrNoRights, ErrNothingActive, ErrNoSpace, ErrUnavailable} {
 		if errors.Is(err, kind) {
 			return kind.Error()
 		}

@@ -52,49 +52,54 @@ FROM nearmargin.slab_contours WHERE edition_id = @e ORDER BY slab_id, ordinal`
 // Load reads an edition, "id@edition" or "id" for the model's active one, and checks
 // it as a directory is checked. The error is an ErrNoEdition where there is none; an
 // ErrCorrupt where its rows make no model, or, as a ChecksumError, another model than
-// was imported.
+// was imported; an ErrUnavailable where the database says nothing for 15 s.
 func (s *Store) Load(ctx context.Context, ref string) (*bundle.Bundle, error) {
 	id, edition, err := splitRef(ref)
 	if err != nil {
 		return nil, &Error{Op: "load", Err: err}
 	}
-	var b *bundle.Bundle
+	r := reader{}
 	snapshot := pgx.TxOptions{IsoLevel: pgx.RepeatableRead, AccessMode: pgx.ReadOnly}
+	ctx, r.vigil = keepVigil(ctx, s.silence)
 	err = pgx.BeginTxFunc(ctx, s.conn, snapshot, func(tx pgx.Tx) error {
 		if edition == "" {
 			if err := tx.QueryRow(ctx, activeOfModelSQL, pgx.StrictNamedArgs{"model": id}).Scan(&edition); err != nil {
 				return err
 			}
 		}
-		r := reader{tx: tx, ctx: ctx}
+		r.tx, r.ctx = tx, ctx
 		if err := r.edition(id, edition); err != nil {
 			return err
 		}
-		if err := r.contents(); err != nil {
-			return err
-		}
-		if b, err = bundle.FromParts(r.parts); err != nil {
-			return r.corrupt(err)
-		}
-		if made := b.Model.SHA256(); made != r.sha256 {
-			sum := &ChecksumError{Ref: b.Model.Ref(), Stored: r.sha256, Made: made}
-			return &Error{Op: "load", Ref: sum.Ref, Err: sum}
-		}
-		return nil
+		return r.contents()
 	})
-	if err != nil {
+	if err = r.vigil.end(err); err != nil {
 		return nil, interpretError("load", ref, err)
 	}
-	return b, nil
+	return r.bundle()
 }
 
 // reader collects an edition's rows.
 type reader struct {
 	tx     pgx.Tx
 	ctx    context.Context
+	vigil  *vigil
 	id     int64
 	sha256 string
 	parts  bundle.Parts
+}
+
+// bundle makes the model and checks that it is the one that was imported.
+func (r *reader) bundle() (*bundle.Bundle, error) {
+	b, err := bundle.FromParts(r.parts)
+	if err != nil {
+		return nil, r.corrupt(err)
+	}
+	if made := b.Model.SHA256(); made != r.sha256 {
+		sum := &ChecksumError{Ref: b.Model.Ref(), Stored: r.sha256, Made: made}
+		return nil, &Error{Op: "load", Ref: sum.Ref, Err: sum}
+	}
+	return b, nil
 }
 
 // corrupt says that rows make no model.
@@ -110,11 +115,13 @@ func (r *reader) each(sql string, into []any, use func() error) error {
 		return err
 	}
 	_, err = pgx.ForEachRow(rows, into, func() error {
+		r.vigil.heard()
 		if err := use(); err != nil {
 			return r.corrupt(err)
 		}
 		return nil
 	})
+	r.vigil.heard()
 	return err
 }
 

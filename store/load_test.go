@@ -5,6 +5,7 @@ import (
 	"errors"
 	"strings"
 	"testing"
+	"time"
 
 	"nearmargin/setting/bundle"
 	"nearmargin/store/storetest"
@@ -82,6 +83,41 @@ func TestActivationGoesForthAndBack(t *testing.T) {
 	}
 	if n := count(t, url, `SELECT count(*) FROM nearmargin.activations`); n != 3 {
 		t.Errorf("the log has %d lines, want 3", n)
+	}
+}
+
+// TestLoadOfAServerThatFallsSilent loads while a table is locked, so that the server
+// stops in the middle without a word, and then while it is free.
+func TestLoadOfAServerThatFallsSilent(t *testing.T) {
+	url := migrated(t)
+	imported(t, url, model(t, "1"))
+	tx, err := storetest.Conn(t, url).Begin(t.Context())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := tx.Exec(t.Context(), `LOCK TABLE nearmargin.slab_contours IN ACCESS EXCLUSIVE MODE`); err != nil {
+		t.Fatal(err)
+	}
+	s := opened(t, url)
+	s.silence = 2 * time.Second
+	if _, err := s.Load(t.Context(), "builtin@1"); !errors.Is(err, ErrUnavailable) || !strings.Contains(err.Error(), "nothing came for 2s") {
+		t.Errorf("it says %v; want ErrUnavailable and how long it waited", err)
+	}
+	if !s.conn.IsClosed() {
+		t.Error("a connection that fell silent is kept")
+	}
+	if err := tx.Rollback(t.Context()); err != nil {
+		t.Fatal(err)
+	}
+	s = opened(t, url)
+	s.silence = 30 * time.Second
+	if _, err := s.Load(t.Context(), "builtin@1"); err != nil {
+		t.Error(err)
+	}
+	ctx, cancel := context.WithCancel(t.Context())
+	cancel()
+	if _, err := opened(t, url).Load(ctx, "builtin@1"); !errors.Is(err, context.Canceled) || errors.Is(err, ErrUnavailable) {
+		t.Errorf("a load that was called off says %v", err)
 	}
 }
 

@@ -3,6 +3,7 @@ package store
 import (
 	"context"
 	"fmt"
+	"net"
 	"strings"
 	"time"
 
@@ -12,8 +13,15 @@ import (
 // connectTimeout bounds one attempt to connect, where the URL gives no bound.
 const connectTimeout = 10 * time.Second
 
+// keepAlive is how a peer that is gone without a word is noticed while an answer is
+// waited for: after half a minute, where the driver's own settings take most of an hour.
+var keepAlive = net.KeepAliveConfig{Enable: true, Idle: 15 * time.Second, Interval: 5 * time.Second, Count: 3}
+
 // Store is a connection to the database.
-type Store struct{ conn *pgx.Conn }
+type Store struct {
+	conn    *pgx.Conn
+	silence time.Duration // that a load bears; see [Store.Load]
+}
 
 // Connect connects to a PostgreSQL URL or key-value string.
 func Connect(ctx context.Context, url string) (*Store, error) {
@@ -21,7 +29,7 @@ func Connect(ctx context.Context, url string) (*Store, error) {
 	if err != nil {
 		return nil, err
 	}
-	return &Store{conn}, nil
+	return &Store{conn, askTimeout}, nil
 }
 
 func connect(ctx context.Context, url string) (*pgx.Conn, error) {
@@ -35,6 +43,7 @@ func connect(ctx context.Context, url string) (*pgx.Conn, error) {
 	if cfg.RuntimeParams["application_name"] == "" {
 		cfg.RuntimeParams["application_name"] = "nearmargin"
 	}
+	cfg.DialFunc = (&net.Dialer{KeepAliveConfig: keepAlive}).DialContext
 	conn, err := pgx.ConnectConfig(ctx, cfg)
 	return conn, interpretError("connect", "", err)
 }

@@ -27,7 +27,7 @@ type features struct {
 // answer to the properties of each. A single Feature is taken as well.
 func annotateGeoJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	g := &guard{r: in, limit: int64(o.RowBytes)}
-	f := &features{asker: asker{o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
+	f := &features{asker: asker{ctx: ctx, o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
 	f.d.UseNumber() // a number beyond float64 is still a number
 	if err := f.run(ctx); err != nil {
 		return f.st, f.fault(err)
@@ -149,10 +149,13 @@ func (f *features) stream(ctx context.Context) error {
 		return true, nil
 	}
 	newWorker := func() func(*chunk[rawFeatures]) {
-		k := &asker{o: f.o}
+		k := &asker{ctx: ctx, o: f.o}
 		return func(c *chunk[rawFeatures]) {
 			from := 0
 			for i, to := range c.rows.ends {
+				if ctx.Err() != nil { // a feature may be an area, which takes time
+					return
+				}
 				if c.rows.before > 0 || i > 0 {
 					c.out = append(c.out, ',')
 				}
@@ -189,9 +192,13 @@ func (f *features) finish(streaming bool) error {
 	}
 	raw := append([]byte{'{'}, f.buf...)
 	raw[len(raw)-1] = '}' // in place of the last comma
-	f.st.Rows = 1
 	var ok bool
-	if f.buf, ok = f.feature(nil, raw); !ok {
+	var err error
+	if f.buf, ok, err = f.inTurn((*asker).feature, nil, raw); err != nil {
+		return err
+	}
+	f.st.Rows = 1
+	if !ok {
 		f.st.Errors = 1
 	}
 	return f.write(0, f.buf, '\n')

@@ -12,6 +12,7 @@ type chunk[R any] struct {
 	n      int64  // rows in it
 	errors int64  // of them, those that carry an error
 	out    []byte // what the worker made of them
+	err    error  // why the worker did not work
 	done   chan struct{}
 }
 
@@ -43,13 +44,13 @@ func inOrder[R any](ctx context.Context, o *Options,
 	var wg sync.WaitGroup
 	for range workers {
 		wg.Go(func() {
-			work := newWorker()
+			work, turn := newWorker(), turn{slots: o.Slots}
 			for c := range todo {
 				c.out, c.errors = c.out[:0], 0
-				if o.Turn != nil {
-					o.Turn(func() { work(c) })
-				} else {
+				if c.err = turn.take(ctx); c.err == nil {
 					work(c)
+					turn.give()
+					c.err = ctx.Err() // the worker may have left off there
 				}
 				c.done <- struct{}{}
 			}
@@ -62,11 +63,16 @@ func inOrder[R any](ctx context.Context, o *Options,
 		for c := range order {
 			<-c.done
 			if writeErr == nil {
-				if writeErr = write(c.out); writeErr != nil {
+				if writeErr = c.err; writeErr == nil {
+					writeErr = write(c.out)
+				}
+				if writeErr != nil {
 					close(failed)
 				}
-				st.Rows += c.n
-				st.Errors += c.errors
+				if c.err == nil {
+					st.Rows += c.n
+					st.Errors += c.errors
+				}
 				if o.Progress != nil {
 					o.Progress(st)
 				}
@@ -87,7 +93,10 @@ func inOrder[R any](ctx context.Context, o *Options,
 		}
 		c := <-free
 		c.n = 0
-		more, readErr = read(c)
+		if readErr = o.turn.take(ctx); readErr == nil {
+			more, readErr = read(c)
+			o.turn.give()
+		}
 		todo <- c
 		order <- c
 	}

@@ -39,11 +39,14 @@ type Options struct {
 	// Ground, with which ElevationColumn names the ground's height above sea level.
 	DepthUnit, DepthDatum, ElevationColumn string
 	Progress                               func(Stats) // called now and then; may be nil
-	// Turn calls the work on a chunk when its turn comes, where several runs share
-	// the processors; nil calls it at once.
-	Turn       func(work func())
+	// Slots bounds how many goroutines read rows and work on them at once, of all runs
+	// that share it: a place in it is taken for each chunk, and given back while the
+	// input or the output is waited for. No bound where nil.
+	Slots      chan struct{}
 	RowBytes   int   // most bytes of a row, line or feature; MaxRowBytes where 0
 	ArrayBytes int64 // most bytes of a JSON array; MaxArrayBytes where 0
+
+	turn turn // of the goroutine that reads
 }
 
 // DefaultPrefix stands before the names of added CSV columns.

@@ -13,6 +13,9 @@ func Run(ctx context.Context, in io.Reader, out io.Writer, f Format, o Options) 
 	if err := o.fill(); err != nil {
 		return Stats{}, err
 	}
+	o.turn = turn{slots: o.Slots}
+	defer o.turn.give() // also where something panics
+	in = turnReader{ctx, in, &o.turn}
 	switch f {
 	case CSV:
 		return annotateCSV(ctx, in, out, &o)

@@ -109,31 +109,6 @@ func annotateFile(p *program, ctx context.Context, f *flags) error {
 	return nil
 }
 
-// writeOut writes to standard output, or to a file that appears under its name
-// only when it is whole.
-func (p *program) writeOut(name string, write func(io.Writer) error) error {
-	if name == "" {
-		return write(p.stdout)
-	}
-	tmp, err := os.CreateTemp(filepath.Dir(name), "."+filepath.Base(name)+".*")
-	if err != nil {
-		return err
-	}
-	defer os.Remove(tmp.Name()) // no effect once it is renamed
-	if err := write(tmp); err != nil {
-		tmp.Close()
-		return err
-	}
-	if err := tmp.Chmod(0o644); err != nil {
-		tmp.Close()
-		return err
-	}
-	if err := tmp.Close(); err != nil {
-		return err
-	}
-	return os.Rename(tmp.Name(), name)
-}
-
 // progress returns a function that shows how far the work has come, at most
 // twice a second, where standard error is a terminal; nil elsewhere.
 func (p *program) progress() func(annotate.Stats) {

@@ -15,8 +15,6 @@ import (
 	"nearmargin/store/storetest"
 )
 
-func TestMain(m *testing.M) { storetest.Main(m) }
-
 // exported writes the built-in model as a directory, under another edition.
 func exported(t *testing.T, edition string) string {
 	t.Helper()

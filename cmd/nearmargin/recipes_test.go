@@ -35,17 +35,14 @@ func recipes(t *testing.T) (out []string) {
 	return out
 }
 
-// recipeDir is a folder with the table that the recipes read: 1,000 rows.
+// recipeDir is a folder with the files that the recipes read: 1,000 rows each.
 func recipeDir(t *testing.T) string {
 	t.Helper()
-	var table strings.Builder
-	table.WriteString("id,lon,lat\n")
-	for i := range 1000 {
-		fmt.Fprintf(&table, "%04d,%d.5,%d.25\n", i, i*7%359-179, i*3%179-89)
-	}
 	dir := t.TempDir()
-	if err := os.WriteFile(filepath.Join(dir, "sites.csv"), []byte(table.String()), 0o644); err != nil {
-		t.Fatal(err)
+	for _, f := range tables {
+		if err := os.WriteFile(filepath.Join(dir, "sites."+f.name), []byte(f.whole(1000)), 0o644); err != nil {
+			t.Fatal(err)
+		}
 	}
 	return dir
 }

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"flag"
@@ -69,7 +70,10 @@ func (p *program) run(ctx context.Context, args []string) int {
 	c, rest := find(args)
 	if c == nil {
 		if len(args) == 1 && (args[0] == "help" || args[0] == "--help" || args[0] == "-h") {
-			fmt.Fprint(p.stdout, usage())
+			if _, err := fmt.Fprint(p.stdout, usage()); err != nil {
+				fmt.Fprintln(p.stderr, "nearmargin: "+err.Error())
+				return exitFailed
+			}
 			return exitDone
 		}
 		if len(args) > 0 {
@@ -78,15 +82,20 @@ func (p *program) run(ctx context.Context, args []string) int {
 		fmt.Fprint(p.stderr, usage())
 		return exitUsage
 	}
+	out := &watchedOutput{w: p.stdout}
+	p.stdout = out
 	f := newFlags(c, p.env)
 	err := f.parse(rest)
-	if errors.Is(err, flag.ErrHelp) {
+	switch {
+	case errors.Is(err, flag.ErrHelp):
 		f.set.SetOutput(p.stdout)
 		f.usage()
-		return exitDone
-	}
-	if err == nil {
+		err = nil
+	case err == nil:
 		err = c.run(p, ctx, f)
+	}
+	if err == nil || errors.Is(err, errRows) {
+		err = cmp.Or(out.err, err)
 	}
 	switch {
 	case err == nil:

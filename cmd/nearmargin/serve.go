@@ -34,7 +34,10 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	if err != nil {
 		return err
 	}
-	log := slog.New(slog.NewJSONHandler(p.stderr, nil))
+	lines := newLogWriter(p.stderr)
+	defer lines.close()
+	log := slog.New(slog.NewJSONHandler(lines, nil)) // which writes a line a call
+	signal.Ignore(syscall.SIGPIPE)                   // the reader of the log may go; the service stays
 	hup := make(chan os.Signal, 1)
 	signal.Notify(hup, syscall.SIGHUP)
 	defer signal.Stop(hup)

@@ -6,14 +6,31 @@ import (
 	"sync"
 )
 
-// proxy passes connections on to a server and can cut them.
+// proxy passes connections on to a server, and can cut them or hold them up.
 type proxy struct {
 	target   string
 	listener net.Listener
 	mu       sync.Mutex
 	down     bool
 	open     map[net.Conn]bool
+	held     sync.RWMutex // for writing while nothing is to pass
 }
+
+// held is a reader whose bytes wait while the proxy holds them up.
+type held struct {
+	net.Conn
+	p *proxy
+}
+
+func (h held) Read(b []byte) (int, error) {
+	n, err := h.Conn.Read(b)
+	h.p.held.RLock()
+	defer h.p.held.RUnlock()
+	return n, err
+}
+
+func (p *proxy) hold()  { p.held.Lock() }
+func (p *proxy) letGo() { p.held.Unlock() }
 
 func newProxy(target string) (*proxy, error) {
 	if _, _, err := net.SplitHostPort(target); err != nil {
@@ -64,7 +81,7 @@ func (p *proxy) pass(c net.Conn) {
 	done := make(chan struct{}, 2)
 	for _, x := range [...][2]net.Conn{{c, s}, {s, c}} {
 		go func() {
-			_, _ = io.Copy(x[0], x[1]) // a cut is what the test wants
+			_, _ = io.Copy(x[0], held{x[1], p}) // a cut is what the test wants
 			done <- struct{}{}
 		}()
 	}

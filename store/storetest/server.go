@@ -118,6 +118,7 @@ func startContainer() (s *Server, err error) {
 		testcontainers.WithExposedPorts(port),
 		testcontainers.WithEnv(map[string]string{"POSTGRES_PASSWORD": password}),
 		testcontainers.WithHostConfigModifier(func(h *container.HostConfig) {
+			h.Tmpfs = map[string]string{smallDisk: fmt.Sprintf("size=%dm,mode=0755", smallDiskMB)}
 			h.PortBindings = network.PortMap{network.MustParsePort(port): {{HostIP: netip.MustParseAddr("127.0.0.1"), HostPort: strconv.Itoa(host.Port)}}}
 		}))
 	if err != nil {
