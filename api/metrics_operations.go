@@ -58,7 +58,7 @@ func (m *metrics) watch(reg *prometheus.Registry, g *gate, models Models) {
 			return 0
 		}),
 		&modelCollector{models: models,
-			info:  prometheus.NewDesc("nearmargin_model_info", "Always 1; the labels name an edition that is loaded and whether it is the active one.", []string{"id", "edition", "active"}, nil),
+			info:  prometheus.NewDesc("nearmargin_model_info", "Always 1; the labels name an edition that is loaded, its checksum and whether it is the active one.", []string{"id", "edition", "sha256", "active"}, nil),
 			dated: prometheus.NewDesc("nearmargin_model_edition_timestamp_seconds", "First day of the month that an edition's name begins with (YYYY.MM), as Unix time.", []string{"id", "edition"}, nil),
 		})
 }
@@ -74,7 +74,7 @@ func (c *modelCollector) Describe(ch chan<- *prometheus.Desc) { ch <- c.info; ch
 func (c *modelCollector) Collect(ch chan<- prometheus.Metric) {
 	active := c.models.Active()
 	for _, m := range c.models.All() {
-		ch <- prometheus.MustNewConstMetric(c.info, prometheus.GaugeValue, 1, m.ID(), m.Edition(), strconv.FormatBool(m == active))
+		ch <- prometheus.MustNewConstMetric(c.info, prometheus.GaugeValue, 1, m.ID(), m.Edition(), m.SHA256(), strconv.FormatBool(m == active))
 		if t, ok := editionMonth(m.Edition()); ok {
 			ch <- prometheus.MustNewConstMetric(c.dated, prometheus.GaugeValue, float64(t.Unix()), m.ID(), m.Edition())
 		}

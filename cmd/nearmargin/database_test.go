@@ -229,7 +229,7 @@ func TestRunningBatchKeepsItsEdition(t *testing.T) {
 		"/v1/point?lon=1&lat=2&model=builtin@other":   `"edition":"other"`,
 		"/v1/models/" + first:                         `"active":false`,
 		"/v1/point?lon=1&lat=2&model=builtin@unheard": `no-such-model`,
-		"/metrics": `nearmargin_active_model_info{model="builtin@other"`,
+		"/metrics": `nearmargin_model_info{active="true",edition="other",id="builtin"`,
 	} {
 		if _, body := get(t, address, path); !strings.Contains(body, want) {
 			t.Errorf("%s: %.300s, want %s in it", path, body, want)
