@@ -16,7 +16,7 @@ import (
 // Access says who may ask. The zero value lets everybody ask as often as they
 // like, but no page of another origin.
 type Access struct {
-	Tokens  *access.Tokens  // none needed where nil or empty
+	Tokens  *access.Ring    // none needed where nil or empty
 	Rate    *access.Limiter // no limit where nil
 	Origins *access.Origins // none where nil
 	Proxies []*net.IPNet    // whose X-Forwarded-For is believed
@@ -82,8 +82,8 @@ func (s *Server) admit(next echo.HandlerFunc) echo.HandlerFunc {
 		if err := s.allowance(c, client); err != nil {
 			return err
 		}
-		if s.cfg.Access.Tokens.Len() > 0 {
-			if err := s.authorise(c, scope); err != nil {
+		if tokens := s.cfg.Access.Tokens.Tokens(); tokens.Len() > 0 {
+			if err := s.authorise(c, tokens, scope); err != nil {
 				return err
 			}
 		}
@@ -107,7 +107,7 @@ func (s *Server) allowance(c echo.Context, client string) error {
 }
 
 // authorise looks at the bearer token (RFC 6750). It never repeats the token.
-func (s *Server) authorise(c echo.Context, scope access.Scope) error {
+func (s *Server) authorise(c echo.Context, tokens *access.Tokens, scope access.Scope) error {
 	given := c.Request().Header.Values(echo.HeaderAuthorization)
 	challenge := `Bearer realm="nearmargin"`
 	refuse := func(status int, kind, title, more, detail string) error {
@@ -123,7 +123,7 @@ func (s *Server) authorise(c echo.Context, scope access.Scope) error {
 	if len(given) > 1 || !ok || !strings.EqualFold(scheme, "Bearer") || strings.TrimSpace(token) == "" {
 		return refuse(http.StatusUnauthorized, refusedToken, "A token is needed", `, error="invalid_request"`, "the header is not of the form Bearer TOKEN; "+want)
 	}
-	grant, ok := s.cfg.Access.Tokens.Find(strings.TrimSpace(token))
+	grant, ok := tokens.Find(strings.TrimSpace(token))
 	if !ok {
 		return refuse(http.StatusUnauthorized, refusedToken, "A token is needed", `, error="invalid_token"`, "the token is not known here; "+want)
 	}

@@ -26,14 +26,14 @@ func (r *rig) send(method, target string, header ...string) *httptest.ResponseRe
 	return w
 }
 
-func tokens(t *testing.T) *access.Tokens {
+func tokens(t *testing.T) *access.Ring {
 	t.Helper()
 	sum := func(s string) string { x := sha256.Sum256([]byte(s)); return hex.EncodeToString(x[:]) }
 	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret"))
 	if err != nil {
 		t.Fatal(err)
 	}
-	return list
+	return access.NewRing(list)
 }
 
 // TestTokensAreAsked: given tokens, expect 401 and 403 with a challenge and a

@@ -5,6 +5,7 @@ import (
 	"flag"
 	"fmt"
 	"io"
+	"log/slog"
 	"math"
 	"net"
 	"os"
@@ -114,9 +115,9 @@ func (c *serveConfig) validate() (api.Access, error) {
 	if c.burst < 1 || c.burst > 1e6 {
 		fail(fmt.Errorf("--rate-burst is %d; want 1 to 1000000 requests", c.burst))
 	}
-	var err error
-	a.Tokens, err = c.readTokens()
+	tokens, err := c.readTokens()
 	fail(err)
+	a.Tokens = access.NewRing(tokens)
 	a.Origins, err = access.ParseOrigins(c.origins)
 	fail(err)
 	a.Proxies, err = access.ParseProxies(c.trustedProxies)
@@ -149,6 +150,22 @@ func (c *serveConfig) readTokens() (*access.Tokens, error) {
 		return nil, errors.New("tokens: there is none in what was given, which would let everybody in; leave --tokens and --tokens-file out for that")
 	}
 	return t, nil
+}
+
+// reloadTokens reads the tokens again. A file that is at fault leaves the old ones
+// valid: neither is everybody let in, nor everybody shut out.
+func (c *serveConfig) reloadTokens(ring *access.Ring, log *slog.Logger) {
+	if c.tokensFile == "" {
+		return // those of the flag cannot have changed
+	}
+	t, err := c.readTokens()
+	if err != nil {
+		log.Error("the tokens were not reloaded; the old ones stay", "error", err, "tokens", ring.Tokens().Len())
+		return
+	}
+	before := ring.Tokens().Len()
+	ring.Replace(t)
+	log.Info("the tokens were reloaded", "tokens", t.Len(), "before", before)
 }
 
 // secretFlags are not shown: what stands in them opens something, or helps to.

@@ -38,7 +38,7 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	hup := make(chan os.Signal, 1)
 	signal.Notify(hup, syscall.SIGHUP)
 	defer signal.Stop(hup)
-	models, source, follow, err := open(ctx, f, log, hup)
+	from, err := open(ctx, f, log)
 	if err != nil {
 		return err
 	}
@@ -49,7 +49,7 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	reg := prometheus.NewRegistry()
 	reg.MustRegister(collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	h := api.New(api.Config{
-		Models: models, Source: source, Log: log, Registry: reg, Version: release, Commit: commit(),
+		Models: from.models, Source: from.source, Log: log, Registry: reg, Version: release, Commit: commit(),
 		Limits: f.serving.limits, Access: access, BasePath: f.serving.basePath, PrivateMetrics: f.serving.privateListen != "",
 	})
 	fctx, stop := context.WithCancel(ctx)
@@ -57,7 +57,19 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	defer following.Wait()
 	defer stop()
 	return f.serving.listenAndServe(ctx, log, f.listen, h, func(address string) {
-		log.Info("listening", "address", address, "version", release, "commit", commit(), "model", models.Active().Ref(), "sha256", models.Active().SHA256())
-		following.Go(func() { follow(fctx) })
+		m := from.models.Active()
+		log.Info("listening", "address", address, "version", release, "commit", commit(), "model", m.Ref(), "sha256", m.SHA256())
+		following.Go(func() { from.follow(fctx) })
+		following.Go(func() {
+			for {
+				select {
+				case <-fctx.Done():
+					return
+				case <-hup:
+					f.serving.reloadTokens(access.Tokens, log)
+					from.reload()
+				}
+			}
+		})
 	})
 }
