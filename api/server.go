@@ -46,6 +46,9 @@ type Config struct {
 	// PrivateMetrics keeps the metrics off this server's paths; Server.Metrics
 	// serves them elsewhere.
 	PrivateMetrics bool
+	// Now tells the time by which requests are measured; time.Now where nil.
+	// Deadlines are not by it: connections and contexts keep their own.
+	Now func() time.Time
 }
 
 // Server answers HTTP requests. Its only state is which batches run and whether
@@ -66,6 +69,9 @@ func New(cfg Config) *Server {
 		panic(err) // a file of the program's own
 	}
 	cfg.Limits.fill()
+	if cfg.Now == nil {
+		cfg.Now = time.Now
+	}
 	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
