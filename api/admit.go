@@ -53,6 +53,12 @@ func requestID(r *http.Request) string {
 	return hex.EncodeToString(b[:])
 }
 
+// requestIDOf returns the id that identify gave a request.
+func requestIDOf(c echo.Context) string {
+	id, _ := c.Get(keyRequestID).(string)
+	return id
+}
+
 // identify gives a request its id and answers the headers that every answer has.
 func identify(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {

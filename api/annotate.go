@@ -32,7 +32,7 @@ func (s *Server) annotate(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	l, err := s.lookup(q, format == annotate.CSV)
+	l, err := s.lookup(c, q, format == annotate.CSV)
 	if err != nil {
 		return err
 	}

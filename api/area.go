@@ -61,7 +61,7 @@ func (s *Server) area(c echo.Context) error {
 }
 
 func (s *Server) sendArea(c echo.Context, q *query, area *setting.Area) error {
-	l, err := s.lookup(q, true)
+	l, err := s.lookup(c, q, true)
 	if err != nil {
 		return err
 	}

@@ -16,6 +16,9 @@ import (
 // keyRows is the key under which a batch leaves what it counted.
 const keyRows = "rows"
 
+// statusAborted stands for a status where the answer was broken off.
+const statusAborted = "aborted"
+
 // handleError sends the problem document for an error, once.
 func (s *Server) handleError(err error, c echo.Context) {
 	p := problemOf(err)
@@ -38,8 +41,10 @@ func (s *Server) handleError(err error, c echo.Context) {
 func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
 		start, whole := s.cfg.Now(), false
+		span := s.startSpan(c)
 		defer func() { // also where a handler breaks the answer off
 			s.record(c, whole, max(0, s.cfg.Now().Sub(start))) // the clock may have been set back
+			endSpan(span, c, whole)
 		}()
 		if err := s.guarded(next, c); err != nil {
 			c.Error(err)
@@ -78,11 +83,14 @@ func (s *Server) record(c echo.Context, whole bool, took time.Duration) {
 		route = "none"
 	}
 	if !whole {
-		status = "aborted"
+		status = statusAborted
 	}
 	s.metrics.request(route, c.Request().Method, status, took)
 	attrs := []any{"request_id", c.Get(keyRequestID), "method", c.Request().Method, "route", route, "status", status,
 		"client", c.RealIP(), "bytes", c.Response().Size, "ms", float64(took.Microseconds()) / 1000}
+	if id := s.traceID(c); id != "" {
+		attrs = append(attrs, "trace_id", id)
+	}
 	if holder, ok := c.Get(keyHolder).(string); ok {
 		attrs = append(attrs, "token", holder)
 	}

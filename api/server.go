@@ -9,6 +9,7 @@ import (
 
 	"github.com/labstack/echo/v4"
 	"github.com/prometheus/client_golang/prometheus"
+	"go.opentelemetry.io/otel/trace"
 
 	"nearmargin/api/page"
 	"nearmargin/setting"
@@ -46,6 +47,8 @@ type Config struct {
 	// PrivateMetrics keeps the metrics off this server's paths; Server.Metrics
 	// serves them elsewhere.
 	PrivateMetrics bool
+	// Tracer makes the spans of requests; none are made where it is nil.
+	Tracer trace.Tracer
 	// Now tells the time by which requests are measured; time.Now where nil.
 	// Deadlines are not by it: connections and contexts keep their own.
 	Now func() time.Time

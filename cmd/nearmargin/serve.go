@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"fmt"
 	"log/slog"
 	"os"
 	"os/signal"
@@ -10,6 +11,7 @@ import (
 
 	"github.com/prometheus/client_golang/prometheus"
 	"github.com/prometheus/client_golang/prometheus/collectors"
+	"go.opentelemetry.io/otel/trace"
 
 	"nearmargin/api"
 	"nearmargin/store"
@@ -23,6 +25,8 @@ func serveFlags(f *flags) {
 	f.set.DurationVar(&f.databasePoll, "database-poll", store.DefaultPoll, "how `often` to look for another active edition besides being told")
 	f.set.IntVar(&f.editions, "editions", store.DefaultKeep, "how `many` of the editions that were activated last stay loaded")
 	f.operationFlags()
+	f.more = "SIGHUP reads a model directory and the file of tokens again. Traces are sent where\n" +
+		otelEndpoint + " names a collector, and set up by OpenTelemetry's other variables."
 }
 
 // serve answers over HTTP until the context ends.
@@ -34,6 +38,10 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	if err != nil {
 		return err
 	}
+	traced, err := wantsTraces(p.env)
+	if err != nil {
+		return usageError("%v", err)
+	}
 	log := slog.New(slog.NewJSONHandler(p.stderr, nil))
 	hup := make(chan os.Signal, 1)
 	signal.Notify(hup, syscall.SIGHUP)
@@ -44,13 +52,25 @@ func serve(p *program, ctx context.Context, f *flags) error {
 	}
 	if f.serving.checkOnly {
 		f.printConfig(p.stdout)
+		if traced {
+			fmt.Fprintln(p.stdout, "# traces are sent where "+otelEndpoint+" or "+otelTracesEndpoint+" says")
+		}
 		return nil
+	}
+	var tracer trace.Tracer
+	if traced {
+		made, sendLast, err := startTraces(ctx, log)
+		if err != nil {
+			return err
+		}
+		defer sendLast()
+		tracer = made
 	}
 	reg := prometheus.NewRegistry()
 	reg.MustRegister(collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	h := api.New(api.Config{
 		Models: from.models, Source: from.source, Log: log, Registry: reg, Version: release, Commit: commit(),
-		Limits: f.serving.limits, Access: access, BasePath: f.serving.basePath, PrivateMetrics: f.serving.privateListen != "",
+		Limits: f.serving.limits, Access: access, BasePath: f.serving.basePath, PrivateMetrics: f.serving.privateListen != "", Tracer: tracer,
 	})
 	fctx, stop := context.WithCancel(ctx)
 	var following sync.WaitGroup
