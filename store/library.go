@@ -344,7 +344,7 @@ func publicReason(err error) string {
 
 func (l *Library) longer(pause time.Duration) time.Duration {
 	next := min(2*pause, l.cfg.BackoffMax)
-	return next - time.Duration(rand.Int64N(int64(next)/4+1)) // so that many services do not come back at once
+	return next - time.Duration(rand.Int64N(int64(next)/4+1)) // #nosec G404 -- spreads attempts in time, and guards nothing; so that many services do not come back at once
 }
 
 func sleep(ctx context.Context, d time.Duration) error {

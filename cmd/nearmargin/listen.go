@@ -100,7 +100,7 @@ func (c *serveConfig) shutDown(log *slog.Logger, srv *http.Server, h *api.Server
 	ctx, cancel = context.WithTimeout(context.Background(), cutTime)
 	defer cancel()
 	if srv.Shutdown(ctx) != nil { // some wait for their clients
-		srv.Close()
+		_ = srv.Close() // nothing is left to be done about it
 	}
 	return fmt.Errorf("after %v still %d batches ran and were cut short", c.shutdownTime, left)
 }

@@ -65,13 +65,13 @@ func (t *tree) build(legs []leg, middles []sphere.Vec, from, to int) {
 		}
 	}
 	if len(part) <= leafLegs {
-		t.branches[at].from, t.branches[at].to = int32(from), int32(to)
+		t.branches[at].from, t.branches[at].to = int32(from), int32(to) // #nosec G115 -- indices of legs, fewer than 2^31 in any memory
 		return
 	}
 	divide(part, middles, widestAxis(middles, part))
 	mid := from + len(part)/2
 	t.build(legs, middles, from, mid)
-	t.branches[at].right = int32(len(t.branches))
+	t.branches[at].right = int32(len(t.branches)) // #nosec G115 -- indices of legs, fewer than 2^31 in any memory
 	t.build(legs, middles, mid, to)
 }
 
