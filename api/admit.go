@@ -3,6 +3,7 @@ package api
 import (
 	"crypto/rand"
 	"encoding/hex"
+	"fmt"
 	"net"
 	"net/http"
 	"regexp"
@@ -106,7 +107,8 @@ func (s *Server) allowance(c echo.Context, client string) error {
 		return nil
 	}
 	s.metrics.refused.WithLabelValues(refusedRate).Inc()
-	detail := "this client asks more often than it may; wait for the seconds of Retry-After, or send many places at once to /v1/annotate"
+	perSecond, burst := s.cfg.Access.Rate.Limits()
+	detail := fmt.Sprintf("this client asks more often than it may, %g times a second and %d at once; wait for the seconds of Retry-After, or send many places at once to /v1/annotate", perSecond, burst)
 	p := newProblem(http.StatusTooManyRequests, "too-many-requests", "Too many requests", detail, FieldFault{Parameter: "client", Detail: detail})
 	p.retryAfter = wait
 	return p

@@ -103,7 +103,7 @@ func TestRateLimit(t *testing.T) {
 			t.Fatalf("request %d: status %d, want %d", i+1, w.Code, want)
 		}
 		if want == 429 {
-			if p := problem(t, w); w.Header().Get("Retry-After") != "1" || p.Type != problemType+"too-many-requests" || len(p.Errors) != 1 {
+			if p := problem(t, w); w.Header().Get("Retry-After") != "1" || p.Type != problemType+"too-many-requests" || len(p.Errors) != 1 || !strings.Contains(p.Detail, "1 times a second and 2 at once") {
 				t.Errorf("Retry-After %q, %+v", w.Header().Get("Retry-After"), p)
 			}
 		}

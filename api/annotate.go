@@ -53,7 +53,7 @@ func (s *Server) annotate(c echo.Context) error {
 	in := &batchReader{r: c.Request().Body, ctx: ctx, rc: rc, stall: limits.StallTime}
 	out := &batchWriter{c: c, ctx: ctx, rc: rc, stall: limits.StallTime, contentType: contentType}
 	st, err := annotate.Run(ctx, in, out, format, annotate.Options{
-		Lookup:   l,
+		Lookup: l, Slots: s.slots,
 		RowBytes: limits.RowBytes, ArrayBytes: limits.BodyBytes,
 		LonColumn: q.text("lon_column"), LatColumn: q.text("lat_column"),
 		DepthColumn: q.text("depth_column"), UncertaintyColumn: q.text("uncertainty_column"),
@@ -70,7 +70,7 @@ func (s *Server) annotate(c echo.Context) error {
 		// net/http takes the deadline for the client's leaving; the client is there
 		s.metrics.cut.WithLabelValues(cutSlowSender).Inc()
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes)
+		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
 	case c.Response().Committed || ctx.Err() != nil:
 		// The status is out, or nobody is left to read it. A broken body is the one
 		// way left to tell the reader that the answer is not whole.
@@ -82,7 +82,7 @@ func (s *Server) annotate(c echo.Context) error {
 		panic(http.ErrAbortHandler)
 	case in.err != nil:
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes)
+		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
 	}
 	return err
 }

@@ -14,11 +14,12 @@ import (
 const (
 	refusedRate  = "too-many-requests"
 	refusedBatch = "too-many-batches"
+	refusedArea  = "too-many-areas"
 	refusedToken = "token"
 	refusedScope = "scope"
 )
 
-var refusals = []string{refusedRate, refusedBatch, refusedToken, refusedScope}
+var refusals = []string{refusedRate, refusedBatch, refusedArea, refusedToken, refusedScope}
 
 // operations makes the counters of what operations look after. Every series is
 // there from the start, so that a rate over it is defined.
@@ -27,7 +28,7 @@ func (m *metrics) operations() {
 		Name: "nearmargin_batches_cut_total", Help: "Batches that ended before their end, by reason.",
 	}, []string{"reason"})
 	m.refused = prometheus.NewCounterVec(prometheus.CounterOpts{
-		Name: "nearmargin_requests_refused_total", Help: "Requests refused before any work: no room for a batch, too many requests, no token, a token of another scope.",
+		Name: "nearmargin_requests_refused_total", Help: "Requests refused before any work: no room for a batch or an area, too many requests, no token, a token of another scope.",
 	}, []string{"reason"})
 	m.panics = prometheus.NewCounter(prometheus.CounterOpts{
 		Name: "nearmargin_panics_total", Help: "Panics of handlers; each is a defect.",

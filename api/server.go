@@ -60,7 +60,8 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
-	slots   chan struct{} // for pieces of batches
+	slots   chan struct{} // for areas and pieces of batches
+	areas   chan struct{} // for areas that are worked on or wait
 	echo    *echo.Echo
 	site    *page.Site
 }
@@ -75,7 +76,7 @@ func New(cfg Config) *Server {
 	if cfg.Now == nil {
 		cfg.Now = time.Now
 	}
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), areas: make(chan struct{}, cfg.Limits.Areas), echo: echo.New(), site: site}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true

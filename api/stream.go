@@ -148,15 +148,16 @@ func cutReason(ctx context.Context, in *batchReader, out *batchWriter, err error
 	return cutServerFault
 }
 
-// bodyProblem is the problem of a body that could not be read to its end.
-func bodyProblem(err error, most int64) *Problem {
+// bodyProblem is the problem of a body that could not be read to its end: it is longer
+// than most bytes, breaks off, or came more slowly than patience says.
+func bodyProblem(err error, most int64, patience string) *Problem {
 	whole := new(string)
 	var timeout net.Error
 	switch {
 	case errors.Is(err, errBodyTooLong):
 		return tooLarge(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body is longer than %d bytes, which is the limit; send less, or rows as NDJSON or CSV", most)})
 	case errors.As(err, &timeout) && timeout.Timeout():
-		detail := "the body came too slowly; send it without pauses"
+		detail := "the body came too slowly: " + patience + "; send it without pauses"
 		return newProblem(http.StatusRequestTimeout, "too-slow", "The request took too long", detail, FieldFault{Pointer: whole, Detail: detail})
 	}
 	return badRequest(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body breaks off: %v; send it whole", err)})

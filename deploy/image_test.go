@@ -32,7 +32,7 @@ func TestUnit(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	for _, want := range []string{"NoNewPrivileges=yes", "ProtectSystem=strict", "DynamicUser=yes", "CapabilityBoundingSet=\n", "ExecStart=/usr/local/bin/nearmargin serve\n"} {
+	for _, want := range []string{"NoNewPrivileges=yes", "ProtectSystem=strict", "DynamicUser=yes", "CapabilityBoundingSet=\n", "ExecReload=/bin/kill -HUP $MAINPID\n", "ExecStart=/usr/local/bin/nearmargin serve\n"} {
 		if !strings.Contains(string(raw), want) {
 			t.Errorf("the unit lacks %q", want)
 		}

@@ -51,6 +51,9 @@ func (l *Limiter) tick() time.Time {
 	return l.passed
 }
 
+// Limits tells how many requests a second each client may make, and how many at once.
+func (l *Limiter) Limits() (perSecond float64, burst int) { return float64(l.perSecond), l.burst }
+
 // Allow takes one request off a client's allowance. Where none is left it says
 // how long the client is to wait, at least a second.
 func (l *Limiter) Allow(client string) (wait time.Duration, ok bool) {

@@ -27,12 +27,9 @@ func annotateArray(ctx context.Context, in io.Reader, out io.Writer, o *Options)
 	if len(items) > MaxArray {
 		return st, &InputError{Pointer: fmt.Sprintf("/%d", MaxArray), Detail: fmt.Sprintf("the array has %d elements and %d are the limit; send NDJSON or CSV", len(items), MaxArray)}
 	}
-	k := &asker{o: o}
+	k := &asker{ctx: ctx, o: o}
 	b := []byte{'['}
 	for i, raw := range items {
-		if err := ctx.Err(); err != nil { // an element may be an area, which takes time
-			return st, err
-		}
 		if raw[0] != '{' {
 			return st, &InputError{Pointer: fmt.Sprintf("/%d", i), Detail: "an element must be an object with lon and lat"}
 		}
@@ -41,7 +38,10 @@ func annotateArray(ctx context.Context, in io.Reader, out io.Writer, o *Options)
 		}
 		st.Rows++
 		var ok bool
-		if b, ok = k.object(b, raw); !ok {
+		if b, ok, err = k.inTurn((*asker).object, b, raw); err != nil {
+			return st, err
+		}
+		if !ok {
 			st.Errors++
 		}
 	}

@@ -26,9 +26,9 @@ type features struct {
 // answer to the properties of each. A single Feature is taken as well.
 func annotateGeoJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options) (Stats, error) {
 	g := &guard{r: in, limit: int64(o.RowBytes)}
-	f := &features{asker: asker{o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
+	f := &features{asker: asker{ctx: ctx, o: o}, g: g, d: json.NewDecoder(g), out: bufio.NewWriterSize(out, 64<<10)}
 	f.d.UseNumber() // a number beyond float64 is still a number
-	if err := f.run(ctx); err != nil {
+	if err := f.run(); err != nil {
 		return f.st, f.fault(err)
 	}
 	if o.Progress != nil {
@@ -37,7 +37,7 @@ func annotateGeoJSON(ctx context.Context, in io.Reader, out io.Writer, o *Option
 	return f.st, f.out.Flush()
 }
 
-func (f *features) run(ctx context.Context) error {
+func (f *features) run() error {
 	tok, err := f.d.Token()
 	if err != nil {
 		return err
@@ -62,7 +62,7 @@ func (f *features) run(ctx context.Context) error {
 			if err := f.write('{', f.buf, '['); err != nil {
 				return err
 			}
-			if err := f.stream(ctx); err != nil {
+			if err := f.stream(); err != nil {
 				return err
 			}
 			f.buf = append(f.buf[:0], ']')
@@ -106,7 +106,7 @@ func (f *features) member(key string) error {
 }
 
 // stream copies the features.
-func (f *features) stream(ctx context.Context) error {
+func (f *features) stream() error {
 	tok, err := f.d.Token()
 	if err != nil {
 		return err
@@ -115,13 +115,8 @@ func (f *features) stream(ctx context.Context) error {
 		return &InputError{Pointer: "/features", Detail: "features must be an array"}
 	}
 	for f.d.More() {
-		if f.st.Rows%256 == 0 {
-			if err := ctx.Err(); err != nil {
-				return err
-			}
-			if f.o.Progress != nil {
-				f.o.Progress(f.st)
-			}
+		if f.st.Rows%256 == 0 && f.o.Progress != nil {
+			f.o.Progress(f.st)
 		}
 		f.g.mark(f.d.InputOffset())
 		var raw json.RawMessage
@@ -141,7 +136,10 @@ func (f *features) stream(ctx context.Context) error {
 			return &InputError{Pointer: fmt.Sprintf("/features/%d", f.st.Rows-1), Detail: "a feature must be a JSON object"}
 		}
 		var ok bool
-		if f.buf, ok = f.feature(f.buf, raw); !ok {
+		if f.buf, ok, err = f.inTurn((*asker).feature, f.buf, raw); err != nil {
+			return err
+		}
+		if !ok {
 			f.st.Errors++
 		}
 		if err := f.write(0, f.buf, 0); err != nil {
@@ -167,7 +165,11 @@ func (f *features) finish(streaming bool) error {
 	raw[len(raw)-1] = '}' // in place of the last comma
 	f.st.Rows = 1
 	var ok bool
-	if f.buf, ok = f.feature(nil, raw); !ok {
+	var err error
+	if f.buf, ok, err = f.inTurn((*asker).feature, nil, raw); err != nil {
+		return err
+	}
+	if !ok {
 		f.st.Errors = 1
 	}
 	return f.write(0, f.buf, '\n')

@@ -2,7 +2,10 @@ package annotate
 
 import (
 	"context"
+	"errors"
+	"fmt"
 	"runtime"
+	"runtime/debug"
 	"sync"
 )
 
@@ -12,6 +15,7 @@ type chunk[R any] struct {
 	n      int64  // rows in it
 	errors int64  // of them, those that carry an error
 	out    []byte // what the worker made of them
+	err    error  // why the worker did not finish
 	done   chan struct{}
 }
 
@@ -27,7 +31,9 @@ const (
 //
 // read fills a chunk and reports whether there may be more; what it put in before
 // an error is still worked on and written. Each worker has a function of its own
-// from newWorker. After a failure of write nothing more is read than is under way.
+// from newWorker. After a failure of write nothing more is read than is under way;
+// after the end of the context nothing more is worked on or written. A panic of a
+// worker becomes one of the caller.
 func inOrder[R any](ctx context.Context, o *Options,
 	read func(c *chunk[R]) (more bool, err error),
 	newWorker func() func(c *chunk[R]),
@@ -46,12 +52,12 @@ func inOrder[R any](ctx context.Context, o *Options,
 			work := newWorker()
 			for c := range todo {
 				c.out, c.errors = c.out[:0], 0
-				if o.Slots != nil {
-					o.Slots <- struct{}{}
+				if c.err = o.take(ctx); c.err == nil {
+					c.err = guarded(work, c)
+					o.give()
 				}
-				work(c)
-				if o.Slots != nil {
-					<-o.Slots
+				if c.err == nil {
+					c.err = ctx.Err() // the worker may have left off there
 				}
 				c.done <- struct{}{}
 			}
@@ -64,11 +70,16 @@ func inOrder[R any](ctx context.Context, o *Options,
 		for c := range order {
 			<-c.done
 			if writeErr == nil {
-				if writeErr = write(c.out); writeErr != nil {
+				if writeErr = c.err; writeErr == nil {
+					writeErr = write(c.out)
+				}
+				if writeErr != nil {
 					close(failed)
 				}
-				st.Rows += c.n
-				st.Errors += c.errors
+				if c.err == nil {
+					st.Rows += c.n
+					st.Errors += c.errors
+				}
 				if o.Progress != nil {
 					o.Progress(st)
 				}
@@ -96,8 +107,28 @@ func inOrder[R any](ctx context.Context, o *Options,
 	close(todo)
 	close(order)
 	wg.Wait()
+	var p *workerPanic
+	if errors.As(writeErr, &p) {
+		panic(p.text)
+	}
 	if writeErr != nil {
 		return st, writeErr
 	}
 	return st, readErr
+}
+
+// workerPanic is a panic on its way from a worker to the caller.
+type workerPanic struct{ text string }
+
+func (p *workerPanic) Error() string { return p.text }
+
+// guarded does a worker's work. A panic becomes an error that holds its stack.
+func guarded[R any](work func(c *chunk[R]), c *chunk[R]) (err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = &workerPanic{fmt.Sprintf("%v\n%s", p, debug.Stack())}
+		}
+	}()
+	work(c)
+	return nil
 }

@@ -1,6 +1,7 @@
 package annotate
 
 import (
+	"context"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -20,6 +21,7 @@ const (
 
 // asker answers for JSON objects and features, one after the other.
 type asker struct {
+	ctx    context.Context
 	o      *Options
 	answer setting.Answer
 	area   setting.AreaAnswer

@@ -45,10 +45,13 @@ func annotateNDJSON(ctx context.Context, in io.Reader, out io.Writer, o *Options
 		return true, nil
 	}
 	newWorker := func() func(*chunk[lines]) {
-		k := &asker{o: o}
+		k := &asker{ctx: ctx, o: o}
 		return func(c *chunk[lines]) {
 			from := 0
 			for i, to := range c.rows.ends {
+				if ctx.Err() != nil { // a line may be an area, which takes time
+					return
+				}
 				if from < to {
 					var ok bool
 					if c.out, ok = k.line(c.out, c.rows.text[from:to], c.rows.before+i+1); !ok {

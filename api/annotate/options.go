@@ -39,8 +39,8 @@ type Options struct {
 	// Ground, with which ElevationColumn names the ground's height above sea level.
 	DepthUnit, DepthDatum, ElevationColumn string
 	Progress                               func(Stats) // called now and then; may be nil
-	// Slots bounds how many chunks are worked on at once, of all runs that share it:
-	// a place in it is taken for each. No bound where nil.
+	// Slots bounds how many chunks or features are worked on at once, of all runs that
+	// share it: a place in it is taken for each. No bound where nil.
 	Slots      chan struct{}
 	RowBytes   int   // most bytes of a row, line or feature; MaxRowBytes where 0
 	ArrayBytes int64 // most bytes of a JSON array; MaxArrayBytes where 0
