@@ -36,11 +36,11 @@ func annotateArray(ctx context.Context, in io.Reader, out io.Writer, o *Options)
 		if i > 0 {
 			b = append(b, ',', '\n')
 		}
-		st.Rows++
 		var ok bool
 		if b, ok, err = k.inTurn((*asker).object, b, raw); err != nil {
 			return st, err
 		}
+		st.Rows++
 		if !ok {
 			st.Errors++
 		}

@@ -137,6 +137,7 @@ func (f *features) stream() error {
 		}
 		var ok bool
 		if f.buf, ok, err = f.inTurn((*asker).feature, f.buf, raw); err != nil {
+			f.st.Rows-- // it has no answer
 			return err
 		}
 		if !ok {
@@ -163,12 +164,12 @@ func (f *features) finish(streaming bool) error {
 	}
 	raw := append([]byte{'{'}, f.buf...)
 	raw[len(raw)-1] = '}' // in place of the last comma
-	f.st.Rows = 1
 	var ok bool
 	var err error
 	if f.buf, ok, err = f.inTurn((*asker).feature, nil, raw); err != nil {
 		return err
 	}
+	f.st.Rows = 1
 	if !ok {
 		f.st.Errors = 1
 	}
