@@ -38,7 +38,7 @@ func (s *Server) plates(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	m, err := s.findModel(q.text("model"))
+	m, err := s.findModel(c, q.text("model"))
 	if err != nil {
 		return err
 	}
@@ -126,7 +126,7 @@ func (s *Server) model(c echo.Context) error {
 			id = plain
 		}
 	}
-	m, err := s.findModel(id)
+	m, err := s.findModel(c, id)
 	if err != nil {
 		return err
 	}

@@ -3,6 +3,7 @@ package api
 import (
 	"crypto/rand"
 	"encoding/hex"
+	"fmt"
 	"net"
 	"net/http"
 	"regexp"
@@ -16,7 +17,7 @@ import (
 // Access says who may ask. The zero value lets everybody ask as often as they
 // like, but no page of another origin.
 type Access struct {
-	Tokens  *access.Tokens  // none needed where nil or empty
+	Tokens  *access.Ring    // none needed where nil or empty
 	Rate    *access.Limiter // no limit where nil
 	Origins *access.Origins // none where nil
 	Proxies []*net.IPNet    // whose X-Forwarded-For is believed
@@ -53,6 +54,12 @@ func requestID(r *http.Request) string {
 	return hex.EncodeToString(b[:])
 }
 
+// requestIDOf returns the id that identify gave a request.
+func requestIDOf(c echo.Context) string {
+	id, _ := c.Get(keyRequestID).(string)
+	return id
+}
+
 // identify gives a request its id and answers the headers that every answer has.
 func identify(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
@@ -82,8 +89,8 @@ func (s *Server) admit(next echo.HandlerFunc) echo.HandlerFunc {
 		if err := s.allowance(c, client); err != nil {
 			return err
 		}
-		if s.cfg.Access.Tokens.Len() > 0 {
-			if err := s.authorise(c, scope); err != nil {
+		if tokens := s.cfg.Access.Tokens.Tokens(); tokens.Len() > 0 {
+			if err := s.authorise(c, tokens, scope); err != nil {
 				return err
 			}
 		}
@@ -100,14 +107,15 @@ func (s *Server) allowance(c echo.Context, client string) error {
 		return nil
 	}
 	s.metrics.refused.WithLabelValues(refusedRate).Inc()
-	detail := "this client asks more often than it may; wait for the seconds of Retry-After, or send many places at once to /v1/annotate"
+	perSecond, burst := s.cfg.Access.Rate.Limits()
+	detail := fmt.Sprintf("this client asks more often than it may, %g times a second and %d at once; wait for the seconds of Retry-After, or send many places at once to /v1/annotate", perSecond, burst)
 	p := newProblem(http.StatusTooManyRequests, kindRate, "Too many requests", detail, FieldFault{Parameter: "client", Detail: detail})
 	p.retryAfter = wait
 	return p
 }
 
 // authorise looks at the bearer token (RFC 6750). It never repeats the token.
-func (s *Server) authorise(c echo.Context, scope access.Scope) error {
+func (s *Server) authorise(c echo.Context, tokens *access.Tokens, scope access.Scope) error {
 	given := c.Request().Header.Values(echo.HeaderAuthorization)
 	challenge := `Bearer realm="nearmargin"`
 	refuse := func(status int, kind problemKind, title, more, detail string) error {
@@ -123,7 +131,7 @@ func (s *Server) authorise(c echo.Context, scope access.Scope) error {
 	if len(given) > 1 || !ok || !strings.EqualFold(scheme, "Bearer") || strings.TrimSpace(token) == "" {
 		return refuse(http.StatusUnauthorized, kindToken, "A token is needed", `, error="invalid_request"`, "the header is not of the form Bearer TOKEN; "+want)
 	}
-	grant, ok := s.cfg.Access.Tokens.Find(strings.TrimSpace(token))
+	grant, ok := tokens.Find(strings.TrimSpace(token))
 	if !ok {
 		return refuse(http.StatusUnauthorized, kindToken, "A token is needed", `, error="invalid_token"`, "the token is not known here; "+want)
 	}

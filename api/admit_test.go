@@ -26,14 +26,14 @@ func (r *rig) send(method, target string, header ...string) *httptest.ResponseRe
 	return w
 }
 
-func tokens(t *testing.T) *access.Tokens {
+func tokens(t *testing.T) *access.Ring {
 	t.Helper()
 	sum := func(s string) string { x := sha256.Sum256([]byte(s)); return hex.EncodeToString(x[:]) }
 	list, err := access.ParseTokens("app query " + sum("q-secret") + "\njob query,batch " + sum("b-secret") + "\nother batch " + sum("o-secret"))
 	if err != nil {
 		t.Fatal(err)
 	}
-	return list
+	return access.NewRing(list)
 }
 
 // TestTokensAreAsked: given tokens, expect 401 and 403 with a challenge and a
@@ -103,7 +103,7 @@ func TestRateLimit(t *testing.T) {
 			t.Fatalf("request %d: status %d, want %d", i+1, w.Code, want)
 		}
 		if want == 429 {
-			if p := problem(t, w); w.Header().Get("Retry-After") != "1" || p.Type != problemType+"too-many-requests" || len(p.Errors) != 1 {
+			if p := problem(t, w); w.Header().Get("Retry-After") != "1" || p.Type != problemType+"too-many-requests" || len(p.Errors) != 1 || !strings.Contains(p.Detail, "1 times a second and 2 at once") {
 				t.Errorf("Retry-After %q, %+v", w.Header().Get("Retry-After"), p)
 			}
 		}

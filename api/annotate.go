@@ -32,7 +32,7 @@ func (s *Server) annotate(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	l, err := s.lookup(q, format == annotate.CSV)
+	l, err := s.lookup(c, q, format == annotate.CSV)
 	if err != nil {
 		return err
 	}
@@ -70,7 +70,7 @@ func (s *Server) annotate(c echo.Context) error {
 		// net/http takes the deadline for the client's leaving; the client is there
 		s.metrics.cut.WithLabelValues(cutSlowSender).Inc()
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes)
+		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
 	case c.Response().Committed || ctx.Err() != nil:
 		// The status is out, or nobody is left to read it. A broken body is the one
 		// way left to tell the reader that the answer is not whole.
@@ -82,7 +82,7 @@ func (s *Server) annotate(c echo.Context) error {
 		panic(http.ErrAbortHandler)
 	case in.err != nil:
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes)
+		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
 	}
 	return err
 }

@@ -1,7 +1,9 @@
 package api
 
 import (
+	"context"
 	"errors"
+	"fmt"
 	"io"
 	"mime"
 	"net/http"
@@ -32,7 +34,7 @@ func (s *Server) areaOfBox(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	return s.sendArea(c, q, area)
+	return s.sendArea(c, q, func() (*setting.Area, error) { return area, nil })
 }
 
 // area answers for a GeoJSON polygon.
@@ -51,23 +53,44 @@ func (s *Server) area(c echo.Context) error {
 	}
 	if err != nil {
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(err, most)
+		return bodyProblem(err, most, fmt.Sprintf("a request has %v to arrive", s.cfg.Limits.ReadTime))
 	}
-	area, err := geojson.DecodeArea(body)
-	if err != nil {
-		return areaProblem(err)
-	}
-	return s.sendArea(c, q, area)
+	return s.sendArea(c, q, func() (*setting.Area, error) { return geojson.DecodeArea(body) })
 }
 
-func (s *Server) sendArea(c echo.Context, q *query, area *setting.Area) error {
-	l, err := s.lookup(q, true)
+// sendArea makes an area and answers for it, when its turn comes.
+func (s *Server) sendArea(c echo.Context, q *query, read func() (*setting.Area, error)) error {
+	l, err := s.lookup(c, q, true)
 	if err != nil {
 		return err
 	}
+	ctx := c.Request().Context()
+	body, err := s.answerArea(ctx, l, read)
+	switch {
+	case err != nil && ctx.Err() != nil:
+		panic(http.ErrAbortHandler) // nobody is left to be told
+	case err != nil:
+		return err
+	}
+	return sendBytes(c, echo.MIMEApplicationJSON, body)
+}
+
+// answerArea stops with the context's error where that ends.
+func (s *Server) answerArea(ctx context.Context, l *setting.Lookup, read func() (*setting.Area, error)) ([]byte, error) {
+	leave, err := s.enterArea(ctx)
+	if err != nil {
+		return nil, err
+	}
+	defer leave()
+	area, err := read()
+	if err != nil {
+		return nil, areaProblem(err)
+	}
 	var out setting.AreaAnswer
-	l.Area(area, &out)
-	return sendBytes(c, echo.MIMEApplicationJSON, append(wire.AppendArea(make([]byte, 0, 4096), &out), '\n'))
+	if err := l.Area(ctx, area, &out); err != nil {
+		return nil, err
+	}
+	return append(wire.AppendArea(make([]byte, 0, 4096), &out), '\n'), nil
 }
 
 // areaProblem turns a fault of a polygon into a problem.

@@ -30,7 +30,7 @@ func (s *Server) boundaries(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	m, err := s.findModel(q.text("model"))
+	m, err := s.findModel(c, q.text("model"))
 	if err != nil {
 		return err
 	}

@@ -16,7 +16,7 @@ func (s *Server) layer(c echo.Context, of func(*setting.Model) []byte) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	m, err := s.findModel(q.text("model"))
+	m, err := s.findModel(c, q.text("model"))
 	if err != nil {
 		return err
 	}

@@ -14,10 +14,15 @@ type Limits struct {
 	BodyBytes int64         // of a body that is not streamed: an area, a JSON array
 	RowBytes  int           // of one row, line or feature of a batch
 	Batches   int           // at once
+	Areas     int           // worked on or waiting for their turn
 	BatchTime time.Duration // of one batch, from its header to its end
 	// StallTime is how long a batch may wait for its client in either direction
 	// before it gets on: by progressBytes of its body, or by one write of the answer.
 	StallTime time.Duration
+	// HeaderBytes and ReadTime are the http.Server's to keep; here they are told to
+	// who goes beyond. ReadTime is that of a whole request other than a batch.
+	HeaderBytes int
+	ReadTime    time.Duration
 }
 
 // DefaultLimits are the limits used where none are given.
@@ -25,8 +30,12 @@ var DefaultLimits = Limits{
 	BodyBytes: annotate.MaxArrayBytes,
 	RowBytes:  annotate.MaxRowBytes,
 	Batches:   16,
+	Areas:     16,
 	BatchTime: 6 * time.Hour,
 	StallTime: 30 * time.Second,
+
+	HeaderBytes: 64 << 10,
+	ReadTime:    time.Minute,
 }
 
 // progressBytes of a body within StallTime count as progress. A client that
@@ -43,7 +52,10 @@ func (l Limits) Validate() error {
 	}
 	within("max-body-bytes", l.BodyBytes, 1<<10, 256<<20, " bytes")
 	within("max-row-bytes", int64(l.RowBytes), 1<<10, 64<<20, " bytes")
+	within("max-header-bytes", int64(l.HeaderBytes), 4<<10, 1<<20, "")
+	within("read-timeout", int64(l.ReadTime/time.Second), 1, 3600, " s")
 	within("max-batches", int64(l.Batches), 1, 1000, "")
+	within("max-areas", int64(l.Areas), 1, 1000, "")
 	within("batch-timeout", int64(l.BatchTime/time.Second), 1, 7*24*3600, " s")
 	within("stall-timeout", int64(l.StallTime/time.Second), 1, 3600, " s")
 	return errors.Join(errs...)
@@ -61,10 +73,19 @@ func (l *Limits) fill() {
 	if l.Batches == 0 {
 		l.Batches = d.Batches
 	}
+	if l.Areas == 0 {
+		l.Areas = d.Areas
+	}
 	if l.BatchTime == 0 {
 		l.BatchTime = d.BatchTime
 	}
 	if l.StallTime == 0 {
 		l.StallTime = d.StallTime
+	}
+	if l.HeaderBytes == 0 {
+		l.HeaderBytes = d.HeaderBytes
+	}
+	if l.ReadTime == 0 {
+		l.ReadTime = d.ReadTime
 	}
 }

@@ -35,9 +35,10 @@ func serveRig(t *testing.T, r *rig) (srv *httptest.Server, giveUp context.Cancel
 	t.Helper()
 	base, giveUp := context.WithCancelCause(context.Background())
 	srv = httptest.NewUnstartedServer(r)
-	srv.Listener = Listener(srv.Listener)
+	srv.Listener = Listener(srv.Listener, r.cfg.Limits.HeaderBytes)
 	srv.Config.BaseContext = func(net.Listener) context.Context { return base }
-	srv.Config.WriteTimeout, srv.Config.ReadTimeout = time.Minute, time.Minute
+	srv.Config.WriteTimeout, srv.Config.ReadTimeout = time.Minute, r.cfg.Limits.ReadTime
+	srv.Config.MaxHeaderBytes = r.cfg.Limits.HeaderBytes
 	srv.Start()
 	t.Cleanup(func() {
 		giveUp(nil)
@@ -160,7 +161,21 @@ func TestSlowClients(t *testing.T) {
 			t.Fatal(err)
 		}
 		body, _ := io.ReadAll(res.Body)
-		if res.StatusCode != http.StatusRequestTimeout || !strings.Contains(string(body), "too slowly") {
+		if res.StatusCode != http.StatusRequestTimeout || !strings.Contains(string(body), "1024 bytes have 300ms to arrive") {
+			t.Errorf("status %d: %s", res.StatusCode, body)
+		}
+	})
+	t.Run("sender of an area", func(t *testing.T) {
+		r := newLimitedRig(t, func(c *Config) { c.Limits.ReadTime = stall })
+		srv, _ := serveRig(t, r)
+		conn := dial(t, srv)
+		fmt.Fprintf(conn, "POST /v1/area HTTP/1.1\r\nHost: x\r\nContent-Type: application/geo+json\r\nContent-Length: 99\r\n\r\n{")
+		res, err := http.ReadResponse(bufio.NewReader(conn), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		body, _ := io.ReadAll(res.Body)
+		if res.StatusCode != http.StatusRequestTimeout || !strings.Contains(string(body), "has 300ms to arrive") {
 			t.Errorf("status %d: %s", res.StatusCode, body)
 		}
 	})
@@ -206,6 +221,27 @@ func dial(t *testing.T, srv *httptest.Server) net.Conn {
 	}
 	t.Cleanup(func() { conn.Close() })
 	return conn
+}
+
+// TestHeaderTooLong: a header beyond the limit gets a problem document that names it.
+func TestHeaderTooLong(t *testing.T) {
+	srv, _ := serveRig(t, newLimitedRig(t, func(c *Config) { c.Limits.HeaderBytes = 5000 }))
+	for n, want := range map[int]int{4000: http.StatusOK, 40_000: http.StatusRequestHeaderFieldsTooLarge} {
+		req, err := http.NewRequest(http.MethodGet, srv.URL+"/healthz", nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		req.Header.Set("X-Long", strings.Repeat("x", n))
+		res, err := http.DefaultClient.Do(req)
+		if err != nil {
+			t.Fatal(err)
+		}
+		body, err := io.ReadAll(res.Body)
+		res.Body.Close()
+		if err != nil || res.StatusCode != want || want != http.StatusOK && !strings.Contains(string(body), "longer together than 5000 bytes") {
+			t.Errorf("%d bytes: status %d, %v: %s", n, res.StatusCode, err, body)
+		}
+	}
 }
 
 // TestPatientBatch: a batch that gets on, slowly but steadily, outlives the
@@ -274,11 +310,11 @@ func TestLimitsValidate(t *testing.T) {
 	if err := DefaultLimits.Validate(); err != nil {
 		t.Errorf("the defaults: %v", err)
 	}
-	err := Limits{BodyBytes: 1, RowBytes: 1 << 30, Batches: -1, BatchTime: time.Millisecond, StallTime: 2 * time.Hour}.Validate()
+	err := Limits{BodyBytes: 1, RowBytes: 1 << 30, Batches: -1, Areas: 1001, BatchTime: time.Millisecond, StallTime: 2 * time.Hour}.Validate()
 	if err == nil {
 		t.Fatal("limits out of range pass")
 	}
-	for _, want := range []string{"max-body-bytes is 1 bytes", "max-row-bytes", "max-batches is -1; want 1 to 1000", "batch-timeout", "stall-timeout is 7200 s; want 1 to 3600"} {
+	for _, want := range []string{"max-body-bytes is 1 bytes", "max-row-bytes", "max-batches is -1; want 1 to 1000", "max-areas is 1001; want 1 to 1000", "batch-timeout", "stall-timeout is 7200 s; want 1 to 3600"} {
 		if !strings.Contains(err.Error(), want) {
 			t.Errorf("%q is not in: %v", want, err)
 		}

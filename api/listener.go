@@ -11,21 +11,28 @@ import (
 // Listener makes the answers that net/http itself gives to requests which never
 // reach a handler (a broken request line, a header too long, an unknown transfer
 // coding) problem documents as well. net/http writes them straight to the
-// connection, as plain text and some with a status of 5xx.
-func Listener(l net.Listener) net.Listener { return listener{l} }
+// connection, as plain text and some with a status of 5xx. headerBytes is the
+// server's limit, which is told to who goes beyond.
+func Listener(l net.Listener, headerBytes int) net.Listener { return listener{l, headerBytes} }
 
-type listener struct{ net.Listener }
+type listener struct {
+	net.Listener
+	headerBytes int
+}
 
 func (l listener) Accept() (net.Conn, error) {
 	c, err := l.Listener.Accept()
 	if err != nil {
 		return nil, err
 	}
-	return &faultConn{Conn: c}, nil
+	return &faultConn{c, l.headerBytes}, nil
 }
 
 // faultConn puts a problem document in place of net/http's own plain text.
-type faultConn struct{ net.Conn }
+type faultConn struct {
+	net.Conn
+	headerBytes int
+}
 
 // The form of net/http's own answers. An answer of a handler never has it: it
 // carries a Date, and no handler here answers 417.
@@ -44,7 +51,7 @@ func (c *faultConn) Write(p []byte) (int, error) {
 	}
 	var answer []byte
 	if head, text, ok := bytes.Cut(p, plainFault); ok && !bytes.Contains(head, []byte("\r\n")) {
-		answer = rawAnswer(rawProblem(string(head), string(text)))
+		answer = rawAnswer(rawProblem(string(head), string(text), c.headerBytes))
 	} else if bytes.HasPrefix(p, expectationFailed) {
 		const detail = "the only expectation met is 100-continue"
 		answer = rawAnswer(newProblem(http.StatusExpectationFailed, kindExpectation, "The expectation is not met", detail, FieldFault{Parameter: "Expect", Detail: detail}))
@@ -69,7 +76,7 @@ func (c *faultConn) CloseWrite() error {
 // rawProblem returns the problem for a fault that net/http found, of which it
 // wrote the status line and a text. The statuses of 5xx that it has for requests
 // become 400: the fault is the request's.
-func rawProblem(head, text string) *Problem {
+func rawProblem(head, text string, headerBytes int) *Problem {
 	status := http.StatusBadRequest
 	var found int
 	if n, _ := fmt.Sscanf(head, "HTTP/1.1 %d", &found); n == 1 && found >= 400 && found < 500 {
@@ -77,7 +84,7 @@ func rawProblem(head, text string) *Problem {
 	}
 	switch {
 	case status == http.StatusRequestHeaderFieldsTooLarge:
-		const detail = "the request line and the header are longer together than they may be; README, Limits"
+		detail := fmt.Sprintf("the request line and the header are longer together than %d bytes, which is the limit; send less", headerBytes)
 		return newProblem(status, kindLongHeader, "The header is too large", detail, FieldFault{Parameter: "header", Detail: detail})
 	case found == http.StatusNotImplemented:
 		const detail = "the transfer coding is not known here; send Transfer-Encoding: chunked, or a Content-Length"

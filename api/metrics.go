@@ -41,10 +41,10 @@ func newMetrics(cfg Config) *metrics {
 	}
 	m.operations()
 	info := prometheus.NewGaugeVec(prometheus.GaugeOpts{
-		Name: "nearmargin_build_info", Help: "Always 1; the labels say what runs and the model it started with.",
-	}, []string{"version", "commit", "model"})
-	info.WithLabelValues(cfg.Version, cfg.Commit, cfg.Models.Active().Ref()).Set(1)
-	cfg.Registry.MustRegister(m.requests, m.seconds, m.rows, m.faults, m.cut, m.refused, m.panics, info, activeModel{cfg.Models})
+		Name: "nearmargin_build_info", Help: "Always 1; the labels say which program runs.",
+	}, []string{"version", "commit"})
+	info.WithLabelValues(cfg.Version, cfg.Commit).Set(1)
+	cfg.Registry.MustRegister(m.requests, m.seconds, m.rows, m.faults, m.cut, m.refused, m.panics, info)
 	if cfg.Source != nil {
 		cfg.Registry.MustRegister(prometheus.NewGaugeFunc(prometheus.GaugeOpts{
 			Name: "nearmargin_degraded_since_timestamp_seconds", Help: "Since when newer models cannot be had, in seconds since 1970; 0 where they can.",
@@ -57,20 +57,6 @@ func newMetrics(cfg Config) *metrics {
 		}))
 	}
 	return m
-}
-
-// activeModel tells which model is active at the time of asking.
-type activeModel struct{ models Models }
-
-var activeModelDesc = prometheus.NewDesc("nearmargin_active_model_info", "Always 1; the labels say which model is active.", []string{"model", "sha256"}, nil)
-
-// Describe implements prometheus.Collector.
-func (a activeModel) Describe(c chan<- *prometheus.Desc) { c <- activeModelDesc }
-
-// Collect implements prometheus.Collector.
-func (a activeModel) Collect(c chan<- prometheus.Metric) {
-	m := a.models.Active()
-	c <- prometheus.MustNewConstMetric(activeModelDesc, prometheus.GaugeValue, 1, m.Ref(), m.SHA256())
 }
 
 var knownMethods = map[string]bool{

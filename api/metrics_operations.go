@@ -14,11 +14,12 @@ import (
 const (
 	refusedRate  = string(kindRate)
 	refusedBatch = string(kindManyBatches)
+	refusedArea  = string(kindManyAreas)
 	refusedToken = string(kindToken)
 	refusedScope = string(kindScope)
 )
 
-var refusals = []string{refusedRate, refusedBatch, refusedToken, refusedScope}
+var refusals = []string{refusedRate, refusedBatch, refusedArea, refusedToken, refusedScope}
 
 // operations makes the counters of what operations look after. Every series is
 // there from the start, so that a rate over it is defined.
@@ -27,7 +28,7 @@ func (m *metrics) operations() {
 		Name: "nearmargin_batches_cut_total", Help: "Batches that ended before their end, by reason.",
 	}, []string{"reason"})
 	m.refused = prometheus.NewCounterVec(prometheus.CounterOpts{
-		Name: "nearmargin_requests_refused_total", Help: "Requests refused before any work: no room for a batch, too many requests, no token, a token of another scope.",
+		Name: "nearmargin_requests_refused_total", Help: "Requests refused before any work: no room for a batch or an area, too many requests, no token, a token of another scope.",
 	}, []string{"reason"})
 	m.panics = prometheus.NewCounter(prometheus.CounterOpts{
 		Name: "nearmargin_panics_total", Help: "Panics of handlers; each is a defect.",
@@ -58,7 +59,7 @@ func (m *metrics) watch(reg *prometheus.Registry, g *gate, models Models) {
 			return 0
 		}),
 		&modelCollector{models: models,
-			info:  prometheus.NewDesc("nearmargin_model_info", "Always 1; the labels name an edition that is loaded and whether it is the active one.", []string{"id", "edition", "active"}, nil),
+			info:  prometheus.NewDesc("nearmargin_model_info", "Always 1; the labels name an edition that is loaded, its checksum and whether it is the active one.", []string{"id", "edition", "sha256", "active"}, nil),
 			dated: prometheus.NewDesc("nearmargin_model_edition_timestamp_seconds", "First day of the month that an edition's name begins with (YYYY.MM), as Unix time.", []string{"id", "edition"}, nil),
 		})
 }
@@ -74,7 +75,7 @@ func (c *modelCollector) Describe(ch chan<- *prometheus.Desc) { ch <- c.info; ch
 func (c *modelCollector) Collect(ch chan<- prometheus.Metric) {
 	active := c.models.Active()
 	for _, m := range c.models.All() {
-		ch <- prometheus.MustNewConstMetric(c.info, prometheus.GaugeValue, 1, m.ID(), m.Edition(), strconv.FormatBool(m == active))
+		ch <- prometheus.MustNewConstMetric(c.info, prometheus.GaugeValue, 1, m.ID(), m.Edition(), m.SHA256(), strconv.FormatBool(m == active))
 		if t, ok := editionMonth(m.Edition()); ok {
 			ch <- prometheus.MustNewConstMetric(c.dated, prometheus.GaugeValue, float64(t.Unix()), m.ID(), m.Edition())
 		}

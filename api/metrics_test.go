@@ -30,7 +30,8 @@ func TestMetricsLint(t *testing.T) {
 		`nearmargin_http_request_duration_seconds_count{route="/v1/point"} 1`,
 		`nearmargin_annotated_rows_total{format="csv"} 2`,
 		`nearmargin_annotated_row_errors_total{format="csv"} 1`,
-		`nearmargin_build_info{commit="abc",model="made-up@7",version="1.2.3"} 1`,
+		`nearmargin_build_info{commit="abc",version="1.2.3"} 1`,
+		`nearmargin_model_info{active="true",edition="7",id="made-up",sha256="` + strings.Repeat("0123456789abcdef", 4) + `"} 1`,
 	} {
 		if !strings.Contains(text, line+"\n") {
 			t.Errorf("the metrics lack %s:\n%s", line, text)

@@ -16,6 +16,9 @@ import (
 // keyRows is the key under which a batch leaves what it counted.
 const keyRows = "rows"
 
+// statusAborted stands for a status where the answer was broken off.
+const statusAborted = "aborted"
+
 // handleError sends the problem document for an error, once.
 func (s *Server) handleError(err error, c echo.Context) {
 	p := problemOf(err)
@@ -37,12 +40,14 @@ func (s *Server) handleError(err error, c echo.Context) {
 // observe counts and logs a request, and turns a handler's panic into an answer.
 func (s *Server) observe(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
-		start, whole := time.Now(), false
+		start, whole := s.cfg.Now(), false
+		span := s.startSpan(c)
 		if s.gate.draining.Load() { // so that no request is on its way when the connection is closed
 			c.Response().Header().Set(echo.HeaderConnection, "close")
 		}
 		defer func() { // also where a handler breaks the answer off
-			s.record(c, whole, time.Since(start))
+			s.record(c, whole, max(0, s.cfg.Now().Sub(start))) // the clock may have been set back
+			endSpan(span, c, whole)
 		}()
 		if err := s.guarded(next, c); err != nil {
 			c.Error(err)
@@ -81,11 +86,14 @@ func (s *Server) record(c echo.Context, whole bool, took time.Duration) {
 		route = "none"
 	}
 	if !whole {
-		status = "aborted"
+		status = statusAborted
 	}
 	s.metrics.request(route, c.Request().Method, status, took)
 	attrs := []any{"request_id", c.Get(keyRequestID), "method", c.Request().Method, "route", route, "status", status,
 		"client", c.RealIP(), "bytes", c.Response().Size, "ms", float64(took.Microseconds()) / 1000}
+	if id := s.traceID(c); id != "" {
+		attrs = append(attrs, "trace_id", id)
+	}
 	if holder, ok := c.Get(keyHolder).(string); ok {
 		attrs = append(attrs, "token", holder)
 	}

@@ -22,7 +22,7 @@ func (s *Server) point(c echo.Context) error {
 	if err := q.err(); err != nil {
 		return err
 	}
-	l, err := s.lookup(q, false)
+	l, err := s.lookup(c, q, false)
 	if err != nil {
 		return err
 	}

@@ -57,6 +57,7 @@ const (
 	kindLongHeader  problemKind = "header-too-large"
 	kindInternal    problemKind = "http-500"
 	kindManyBatches problemKind = "too-many-batches"
+	kindManyAreas   problemKind = "too-many-areas"
 	kindDraining    problemKind = "draining"
 )
 

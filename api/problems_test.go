@@ -141,6 +141,9 @@ func provocations(t *testing.T) []provocation {
 				t.Fatal(err)
 			}
 		}},
+		{name: "BusyAreas", kind: kindManyAreas, status: 503, config: func(c *Config) { c.Limits.Areas = 1 }, before: func(_ *testing.T, r *rig) {
+			r.areas <- struct{}{}
+		}},
 		{name: "Draining", kind: kindDraining, status: 503, before: func(_ *testing.T, r *rig) { r.Drain() }},
 	}
 }
@@ -390,9 +393,9 @@ func overTheWire(t *testing.T, r *rig, request string) (int, []byte) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	srv := &http.Server{Handler: r, MaxHeaderBytes: 64 << 10}
+	srv := &http.Server{Handler: r, MaxHeaderBytes: r.cfg.Limits.HeaderBytes}
 	done := make(chan error, 1)
-	go func() { done <- srv.Serve(Listener(l)) }()
+	go func() { done <- srv.Serve(Listener(l, r.cfg.Limits.HeaderBytes)) }()
 	defer func() {
 		srv.Close()
 		<-done

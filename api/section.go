@@ -45,7 +45,7 @@ func (s *Server) findSection(c echo.Context) (*setting.Section, error) {
 	if err := q.err(); err != nil {
 		return nil, err
 	}
-	l, err := s.lookup(q, false)
+	l, err := s.lookup(c, q, false)
 	if err != nil {
 		return nil, err
 	}

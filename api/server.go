@@ -10,6 +10,7 @@ import (
 
 	"github.com/labstack/echo/v4"
 	"github.com/prometheus/client_golang/prometheus"
+	"go.opentelemetry.io/otel/trace"
 
 	"nearmargin/api/page"
 	"nearmargin/setting"
@@ -47,6 +48,11 @@ type Config struct {
 	// PrivateMetrics keeps the metrics off this server's paths; Server.Metrics
 	// serves them elsewhere.
 	PrivateMetrics bool
+	// Tracer makes the spans of requests; none are made where it is nil.
+	Tracer trace.Tracer
+	// Now tells the time by which requests are measured; time.Now where nil.
+	// Deadlines are not by it: connections and contexts keep their own.
+	Now func() time.Time
 }
 
 // Server answers HTTP requests. Its only state is which batches run and whether
@@ -55,7 +61,8 @@ type Server struct {
 	cfg     Config
 	metrics *metrics
 	gate    *gate
-	slots   chan struct{} // for what computes long
+	slots   chan struct{} // for areas and pieces of batches
+	areas   chan struct{} // for areas that are worked on or wait
 	echo    *echo.Echo
 	site    *page.Site
 	// document describes the service at its own base path.
@@ -70,7 +77,10 @@ func New(cfg Config) *Server {
 		panic(err) // a file of the program's own
 	}
 	cfg.Limits.fill()
-	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), echo: echo.New(), site: site, document: document}
+	if cfg.Now == nil {
+		cfg.Now = time.Now
+	}
+	s := &Server{cfg: cfg, metrics: newMetrics(cfg), gate: newGate(cfg.Limits.Batches), slots: newSlots(), areas: make(chan struct{}, cfg.Limits.Areas), echo: echo.New(), site: site, document: document}
 	s.metrics.watch(cfg.Registry, s.gate, cfg.Models)
 	e := s.echo
 	e.HideBanner, e.HidePort = true, true

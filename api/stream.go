@@ -68,7 +68,7 @@ func (b *batchReader) Read(p []byte) (int, error) {
 	if end, ok := b.ctx.Deadline(); ok && end.Before(deadline) {
 		deadline = end
 	}
-	b.rc.SetReadDeadline(deadline) // an in-memory recorder has none
+	_ = b.rc.SetReadDeadline(deadline) // an in-memory recorder has none
 	n, err := b.r.Read(p)
 	b.waited += time.Since(start)
 	if b.gained += n; b.gained >= progressBytes {
@@ -77,7 +77,7 @@ func (b *batchReader) Read(p []byte) (int, error) {
 	switch {
 	case err == io.EOF:
 		// from here on the connection is only watched for the client's leaving
-		b.rc.SetReadDeadline(time.Time{})
+		_ = b.rc.SetReadDeadline(time.Time{})
 	case err != nil:
 		b.err = err
 	}
@@ -99,7 +99,7 @@ func (w *batchWriter) Write(p []byte) (int, error) {
 	if err := w.ctx.Err(); err != nil {
 		return 0, err
 	}
-	w.rc.SetWriteDeadline(time.Now().Add(w.stall)) // an in-memory recorder has none
+	_ = w.rc.SetWriteDeadline(time.Now().Add(w.stall)) // an in-memory recorder has none
 	r := w.c.Response()
 	if !r.Committed {
 		r.Header().Set(echo.HeaderContentType, w.contentType)
@@ -115,7 +115,7 @@ func (w *batchWriter) Write(p []byte) (int, error) {
 
 // finish declares what was done, in the trailers.
 func (w *batchWriter) finish(st annotate.Stats) {
-	w.rc.SetWriteDeadline(time.Now().Add(w.stall))
+	_ = w.rc.SetWriteDeadline(time.Now().Add(w.stall))
 	h := w.c.Response().Header()
 	h.Set(trailerRows, strconv.FormatInt(st.Rows, 10))
 	h.Set(trailerErrors, strconv.FormatInt(st.Errors, 10))
@@ -148,15 +148,16 @@ func cutReason(ctx context.Context, in *batchReader, out *batchWriter, err error
 	return cutServerFault
 }
 
-// bodyProblem is the problem of a body that could not be read to its end.
-func bodyProblem(err error, most int64) *Problem {
+// bodyProblem is the problem of a body that could not be read to its end: it is longer
+// than most bytes, breaks off, or came more slowly than patience says.
+func bodyProblem(err error, most int64, patience string) *Problem {
 	whole := new(string)
 	var timeout net.Error
 	switch {
 	case errors.Is(err, errBodyTooLong):
 		return tooLarge(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body is longer than %d bytes, which is the limit; send less, or rows as NDJSON or CSV", most)})
 	case errors.As(err, &timeout) && timeout.Timeout():
-		detail := "the body came too slowly; send it without pauses"
+		detail := "the body came too slowly: " + patience + "; send it without pauses"
 		return newProblem(http.StatusRequestTimeout, kindSlow, "The request took too long", detail, FieldFault{Pointer: whole, Detail: detail})
 	}
 	return badRequest(FieldFault{Pointer: whole, Detail: fmt.Sprintf("the body breaks off: %v; send it whole", err)})

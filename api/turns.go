@@ -1,6 +1,8 @@
 package api
 
 import (
+	"context"
+	"fmt"
 	"runtime"
 	"sync/atomic"
 	"time"
@@ -56,4 +58,22 @@ func (r *reserve) keep() {
 	}
 	<-r.slots
 	r.kept.Store(false)
+}
+
+// enterArea waits for an area's turn, which the caller must leave. It refuses where
+// as many areas wait as may, and ends with the context.
+func (s *Server) enterArea(ctx context.Context) (leave func(), err error) {
+	select {
+	case s.areas <- struct{}{}:
+	default:
+		s.metrics.refused.WithLabelValues(refusedArea).Inc()
+		return nil, overload(kindManyAreas, "Too many areas are asked about", fmt.Sprintf("%d areas are being worked on or wait, which is the limit of this instance; send it again later", cap(s.areas)))
+	}
+	select {
+	case s.slots <- struct{}{}:
+		return func() { <-s.slots; <-s.areas }, nil
+	case <-ctx.Done():
+		<-s.areas
+		return nil, ctx.Err()
+	}
 }

@@ -36,6 +36,11 @@ func (o one) Active() *setting.Model             { return o.m }
 func (o one) Find(string) (*setting.Model, bool) { return o.m, true }
 func (o one) All() []*setting.Model              { return []*setting.Model{o.m} }
 
+// well is a database that answers.
+type well struct{}
+
+func (well) Degraded() (time.Time, string) { return time.Time{}, "" }
+
 // metrics are the names and label values that a service with some requests behind
 // it has, the suffixes of histograms included.
 func metrics(t *testing.T) (names map[string]bool, text string) {
@@ -46,7 +51,7 @@ func metrics(t *testing.T) (names map[string]bool, text string) {
 	}
 	reg := prometheus.NewRegistry()
 	reg.MustRegister(collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
-	s := api.New(api.Config{Models: one{b.Model}, Log: slog.New(slog.NewJSONHandler(io.Discard, nil)), Registry: reg, Version: "1", Commit: "c"})
+	s := api.New(api.Config{Models: one{b.Model}, Source: well{}, Log: slog.New(slog.NewJSONHandler(io.Discard, nil)), Registry: reg, Version: "1", Commit: "c"})
 	for _, target := range []string{"/v1/point?lon=1&lat=2", "/readyz"} {
 		s.ServeHTTP(httptest.NewRecorder(), httptest.NewRequest("GET", target, nil))
 	}

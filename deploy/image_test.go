@@ -32,7 +32,7 @@ func TestUnit(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	for _, want := range []string{"NoNewPrivileges=yes", "ProtectSystem=strict", "DynamicUser=yes", "CapabilityBoundingSet=\n", "ExecStart=/usr/local/bin/nearmargin serve\n"} {
+	for _, want := range []string{"NoNewPrivileges=yes", "ProtectSystem=strict", "DynamicUser=yes", "CapabilityBoundingSet=\n", "ExecReload=/bin/kill -HUP $MAINPID\n", "ExecStart=/usr/local/bin/nearmargin serve\n"} {
 		if !strings.Contains(string(raw), want) {
 			t.Errorf("the unit lacks %q", want)
 		}
@@ -51,8 +51,8 @@ func TestUnit(t *testing.T) {
 	}
 }
 
-// TestBuildIsReproducible builds the program twice, into two folders, and
-// compares the bytes.
+// TestBuildIsReproducible builds the program and the list of its components twice,
+// into two folders, and compares the bytes.
 func TestBuildIsReproducible(t *testing.T) {
 	if testing.Short() {
 		t.Skip("builds the program twice")
@@ -69,8 +69,11 @@ func TestBuildIsReproducible(t *testing.T) {
 		for line := range strings.Lines(string(out)) {
 			sums[i] += strings.Fields(line)[0] + "\n"
 		}
+		if i == 0 {
+			checkSBOM(t, filepath.Join(dir, "linux_amd64", "nearmargin"))
+		}
 	}
-	if sums[0] != sums[1] || strings.Count(sums[0], "\n") != 1 {
+	if sums[0] != sums[1] || strings.Count(sums[0], "\n") != 2 {
 		t.Errorf("two builds, two results:\n%s\n%s", sums[0], sums[1])
 	}
 }

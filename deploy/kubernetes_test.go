@@ -321,8 +321,8 @@ func TestServiceManifests(t *testing.T) {
 		}
 		stop += x
 	}
-	if grace := time.Duration(pod.Spec.TerminationGracePeriodSeconds) * time.Second; grace <= stop+time.Second {
-		t.Errorf("pods are killed after %v and need %v to stop", grace, stop+time.Second)
+	if grace := time.Duration(pod.Spec.TerminationGracePeriodSeconds) * time.Second; grace < stop+4*time.Second { // what is cut short, and the last traces
+		t.Errorf("pods are killed after %v and need %v to stop", grace, stop+4*time.Second)
 	}
 	if period := c.ReadinessProbe.PeriodSeconds * c.ReadinessProbe.FailureThreshold; env["NEARMARGIN_DRAIN_TIME"] != "10s" || period >= 10 {
 		t.Errorf("a drain of %s is shorter than the %d s after which readiness counts as off", env["NEARMARGIN_DRAIN_TIME"], period)

@@ -2,6 +2,7 @@ package setting
 
 import (
 	"cmp"
+	"context"
 	"math"
 	"slices"
 
@@ -17,17 +18,25 @@ const (
 	areaSettingPoints = 500
 )
 
-// Area answers for an area into out, which is overwritten.
+// Area answers for an area into out, which is overwritten. It stops with the
+// context's error where that ends; an area of many positions may take seconds.
 //
 // Accuracy: area to 1e-12, lengths of boundaries to a millimetre; shares of
 // plates, settings and slabs as out.Sampling says.
-func (l *Lookup) Area(a *Area, out *AreaAnswer) {
+func (l *Lookup) Area(ctx context.Context, a *Area, out *AreaAnswer) error {
 	*out = AreaAnswer{AreaKm2: a.km2, Model: l.m, MotionModel: l.motion.Name()}
-	l.areaBoundaries(a, out)
-	l.areaPlates(a, out)
+	l.areaBoundaries(ctx, a, out)
+	l.areaPlates(ctx, a, out)
+	if err := ctx.Err(); err != nil {
+		return err
+	}
 	l.areaNearest(a, out)
-	l.areaSettings(a, out)
+	l.areaSettings(ctx, a, out)
+	if err := ctx.Err(); err != nil {
+		return err
+	}
 	l.areaNotes(out)
+	return nil
 }
 
 // tally gives a number to each of the classes met, and adds up their weights.
@@ -43,7 +52,7 @@ func (t *tally[K]) add(k K, weight float64) uint16 {
 		if t.number == nil {
 			t.number = map[K]uint16{}
 		}
-		n = uint16(len(t.keys))
+		n = uint16(len(t.keys)) // #nosec G115 -- a class has a place, of which there are 4,000 to 5,000
 		t.number[k] = n
 		t.keys, t.weight = append(t.keys, k), append(t.weight, 0)
 	}
@@ -64,7 +73,9 @@ func (t *tally[K]) each(f func(k K, weight float64)) {
 	}
 }
 
-func (l *Lookup) areaPlates(a *Area, out *AreaAnswer) {
+// areaPlates finds the shares of plates; of what it leaves where the context ends
+// nothing is to be used.
+func (l *Lookup) areaPlates(ctx context.Context, a *Area, out *AreaAnswer) {
 	points := areaPlatePoints
 	if len(out.Boundaries) == 0 { // all of one plate, or the network has faults
 		points = areaSettingPoints
@@ -76,6 +87,9 @@ func (l *Lookup) areaPlates(a *Area, out *AreaAnswer) {
 	for _, p := range g.parts {
 		steps := p.steps()
 		for i := p.from; i < p.to; i++ {
+			if ctx.Err() != nil {
+				return
+			}
 			// a neighbour already looked up, if nearer than its nearest boundary, has the same plate
 			for _, step := range steps {
 				j := i - step
@@ -102,12 +116,15 @@ func (l *Lookup) areaPlates(a *Area, out *AreaAnswer) {
 	out.Sampling.PlateStandardError = g.standardError(class, len(t.keys))
 }
 
-// areaBoundaries clips the boundaries to the area.
-func (l *Lookup) areaBoundaries(a *Area, out *AreaAnswer) {
+// areaBoundaries clips the boundaries to the area, some of them where the context ends.
+func (l *Lookup) areaBoundaries(ctx context.Context, a *Area, out *AreaAnswer) {
 	index := map[*boundary.Boundary]int{}
 	var motions []motionRange
 	for _, s := range a.shapes {
-		l.m.network.Inside(s, func(p boundary.Piece) {
+		for p := range l.m.network.Inside(s) {
+			if ctx.Err() != nil {
+				return
+			}
 			i, ok := index[p.Boundary]
 			if !ok {
 				i = len(motions)
@@ -121,7 +138,7 @@ func (l *Lookup) areaBoundaries(a *Area, out *AreaAnswer) {
 				b.longest = p
 			}
 			motions[i].add(l, &p)
-		})
+		}
 	}
 	for i := range motions {
 		out.Boundaries[i].Motion = motions[i].r
@@ -160,8 +177,9 @@ type labelled struct {
 	family Family
 }
 
-// areaSettings labels the places of a lattice and reads the slabs below them.
-func (l *Lookup) areaSettings(a *Area, out *AreaAnswer) {
+// areaSettings labels the places of a lattice and reads the slabs below them, some of
+// them where the context ends.
+func (l *Lookup) areaSettings(ctx context.Context, a *Area, out *AreaAnswer) {
 	near := l.nearArea(a)
 	g := a.sample(areaSettingPoints)
 	class := make([]uint16, len(g.at))
@@ -170,6 +188,9 @@ func (l *Lookup) areaSettings(a *Area, out *AreaAnswer) {
 	var site Answer
 	var e evidence
 	for i, s := range g.at {
+		if ctx.Err() != nil {
+			return
+		}
 		place := boundary.PlaceAt(s.At.LonLat())
 		plate, _ := l.m.network.PlateAt(s.At)
 		site.Plate, site.Zone = l.m.plates[plate], near.m.zoneAt(s.At)

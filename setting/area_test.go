@@ -1,6 +1,7 @@
 package setting_test
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"math"
@@ -76,16 +77,56 @@ func underArc(a sphere.Arc) float64 {
 	return sum
 }
 
+// areaOf answers for an area.
+func areaOf(l *setting.Lookup, a *setting.Area, out *setting.AreaAnswer) {
+	if err := l.Area(context.Background(), a, out); err != nil {
+		panic(err) // the context does not end
+	}
+}
+
+// ending is a context that ends after it has been asked a number of times.
+type ending struct {
+	context.Context
+	left int
+}
+
+func (e *ending) Err() error {
+	if e.left--; e.left < 0 {
+		return context.Canceled
+	}
+	return nil
+}
+
+// TestAreaStops: wherever the context ends, the work stops there, and is not taken
+// for an answer.
+func TestAreaStops(t *testing.T) {
+	m := octants()
+	l := must(m.Lookup(setting.Options{}))
+	a := must(setting.NewBoxArea(boundary.Box{West: -30, South: -30, East: 40, North: 30}))
+	var out setting.AreaAnswer
+	all := &ending{context.Background(), 1 << 30}
+	if err := l.Area(all, a, &out); err != nil || len(out.Notes.All()) == 0 {
+		t.Fatal(err)
+	}
+	asked := 1<<30 - all.left
+	for _, at := range []int{0, 1, 2, asked / 2, asked - 2, asked - 1} {
+		e := &ending{context.Background(), at}
+		if err := l.Area(e, a, &out); err != context.Canceled || e.left < -4 {
+			t.Errorf("ends at question %d of %d: %v, asked %d times more", at+1, asked, err, -e.left-1)
+		}
+	}
+}
+
 // exactPlates returns the area in km² of each plate within a ring that is written
 // anticlockwise and holds no pole: what is bounded by the parts of the network
 // inside the ring and by the parts of the ring on the plate.
 func exactPlates(n *boundary.Network, p sphere.Shape, ring []sphere.LonLat) map[string]float64 {
 	out := map[string]float64{}
-	n.Inside(p, func(x boundary.Piece) {
+	for x := range n.Inside(p) {
 		km2 := underArc(x.Arc)
 		out[x.Boundary.Left()] += km2
 		out[x.Boundary.Right()] -= km2
-	})
+	}
 	var legs []sphere.Arc
 	for _, b := range n.Boundaries() {
 		path := b.Path()
@@ -127,7 +168,7 @@ func TestPlateFractionsAgainstTheExactClip(t *testing.T) {
 			shape := must(sphere.NewPolygon(ring))
 			exact := exactPlates(m.Network(), shape, ring)
 			var out setting.AreaAnswer
-			l.Area(must(setting.NewArea([][]sphere.LonLat{ring})), &out)
+			areaOf(l, must(setting.NewArea([][]sphere.LonLat{ring})), &out)
 			sum := 0.0
 			for _, p := range out.Plates {
 				want := exact[p.Plate.Code] / out.AreaKm2
@@ -174,7 +215,7 @@ func TestOctantsByBox(t *testing.T) {
 		{"across ±180°", boundary.Box{West: 170, South: 10, East: -160, North: 20}, 0, map[string]float64{"NB": 1. / 3, "NC": 2. / 3}, 1106.5},
 	} {
 		var out setting.AreaAnswer
-		l.Area(must(setting.NewBoxArea(c.box)), &out)
+		areaOf(l, must(setting.NewBoxArea(c.box)), &out)
 		if c.km2 != 0 && math.Abs(out.AreaKm2-c.km2) > 1e-3 {
 			t.Errorf("%s: %.4f km², want %.4f", c.name, out.AreaKm2, c.km2)
 		}
@@ -210,10 +251,10 @@ func TestAreaPartsAddUp(t *testing.T) {
 		halves := [2][]sphere.LonLat{append(slices.Clone(ring[:11]), mid, ring[0]), append(slices.Clone(ring[10:]), mid, ring[10])}
 		var whole, both setting.AreaAnswer
 		var part [2]setting.AreaAnswer
-		l.Area(must(setting.NewArea([][]sphere.LonLat{ring})), &whole)
-		l.Area(must(setting.NewArea([][]sphere.LonLat{halves[0]}, [][]sphere.LonLat{halves[1]})), &both)
+		areaOf(l, must(setting.NewArea([][]sphere.LonLat{ring})), &whole)
+		areaOf(l, must(setting.NewArea([][]sphere.LonLat{halves[0]}, [][]sphere.LonLat{halves[1]})), &both)
 		for i, h := range halves {
-			l.Area(must(setting.NewArea([][]sphere.LonLat{h})), &part[i])
+			areaOf(l, must(setting.NewArea([][]sphere.LonLat{h})), &part[i])
 		}
 		if sum := part[0].AreaKm2 + part[1].AreaKm2; math.Abs(sum-whole.AreaKm2) > 1e-6*sum || math.Abs(both.AreaKm2-sum) > 1e-9*sum {
 			t.Errorf("%g and %g km² make %g, as one area %g", part[0].AreaKm2, part[1].AreaKm2, whole.AreaKm2, both.AreaKm2)
@@ -275,7 +316,7 @@ func TestAreaAgreesWithSites(t *testing.T) {
 		ring := ringAround(r, sphere.FromLonLat(c), 30, 0.08)
 		shape := must(sphere.NewPolygon(ring))
 		var out setting.AreaAnswer
-		l.Area(must(setting.NewArea([][]sphere.LonLat{ring})), &out)
+		areaOf(l, must(setting.NewArea([][]sphere.LonLat{ring})), &out)
 		got := map[string]float64{}
 		sum := 0.0
 		for _, s := range out.Settings {
@@ -355,7 +396,7 @@ func TestAreaNearestBoundary(t *testing.T) {
 		{"across ±180°, from the west", []sphere.LonLat{{Lon: 170, Lat: 45}, {Lon: 178, Lat: 50}, {Lon: 170, Lat: 55}, {Lon: 170, Lat: 45}}, sphere.LonLat{Lon: 178, Lat: 50}, sphere.LonLat{Lon: 180, Lat: 50}},
 	} {
 		var out setting.AreaAnswer
-		l.Area(must(setting.NewArea([][]sphere.LonLat{c.ring})), &out)
+		areaOf(l, must(setting.NewArea([][]sphere.LonLat{c.ring})), &out)
 		km, _ := sphere.Inverse(c.at, c.to)
 		if math.Abs(out.Nearest.DistanceKm-km) > 0.01*km || len(out.Boundaries) != 0 {
 			t.Errorf("%s: %.3f km, want about %.3f; %d boundaries inside", c.name, out.Nearest.DistanceKm, km, len(out.Boundaries))
@@ -371,7 +412,7 @@ func TestAreaNearestBoundary(t *testing.T) {
 func TestAreaMotionRange(t *testing.T) {
 	l := must(octants().Lookup(setting.Options{}))
 	var out setting.AreaAnswer
-	l.Area(must(setting.NewBoxArea(boundary.Box{West: 80, South: 20, East: 100, North: 60})), &out)
+	areaOf(l, must(setting.NewBoxArea(boundary.Box{West: 80, South: 20, East: 100, North: 60})), &out)
 	if len(out.Boundaries) != 1 {
 		t.Fatalf("%d boundaries inside, want 1", len(out.Boundaries))
 	}

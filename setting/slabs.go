@@ -165,7 +165,7 @@ func (l *Lookup) addSlabs(p boundary.Place, a *Answer, e *evidence, first int) {
 		if next < 0 {
 			return
 		}
-		done[next] = true
+		done[next] = true // #nosec G602 -- next is the index of a slab, or negative and returned on
 		s := &e.slabs[next]
 		x := SlabAnswer{Slab: s.slab, Reading: s.reading, ClearanceKm: math.NaN(), Distance3DKm: math.NaN()}
 		if d := a.Site.DepthKm; !math.IsNaN(d) {

@@ -104,7 +104,7 @@ func (c *copyRows) next() (*EnrichRow, error) {
 	if _, err := io.ReadFull(c.in, n[:2]); err != nil {
 		return nil, err
 	}
-	count := int16(binary.BigEndian.Uint16(n[:2]))
+	count := int16(binary.BigEndian.Uint16(n[:2])) // #nosec G115 -- the format has a signed number here
 	if count == -1 {
 		_, err := c.in.ReadByte() // the end, or what went wrong after the last row
 		if err == io.EOF {
@@ -119,7 +119,7 @@ func (c *copyRows) next() (*EnrichRow, error) {
 		if _, err := io.ReadFull(c.in, n[:]); err != nil {
 			return nil, err
 		}
-		size := int32(binary.BigEndian.Uint32(n[:]))
+		size := int32(binary.BigEndian.Uint32(n[:])) // #nosec G115 -- the format has a signed number here
 		if size < 0 {
 			c.fields[i] = nil
 			continue

@@ -41,6 +41,9 @@ type Config struct {
 	// DefaultBackoffMin, DefaultBackoffMax.
 	BackoffMin, BackoffMax time.Duration
 	Log                    *slog.Logger // needed
+	// Now tells the time for what is reported; waits run on timers, which do not see a
+	// clock that is set. Default: time.Now.
+	Now func() time.Time
 }
 
 func (c Config) withDefaults() (Config, error) {
@@ -61,6 +64,9 @@ func (c Config) withDefaults() (Config, error) {
 	}
 	if c.BackoffMax < c.BackoffMin {
 		c.BackoffMax = max(DefaultBackoffMax, c.BackoffMin)
+	}
+	if c.Now == nil {
+		c.Now = time.Now
 	}
 	return c, nil
 }
@@ -95,14 +101,17 @@ func Open(ctx context.Context, cfg Config) (*Library, error) {
 	}
 	l := &Library{cfg: cfg, again: make(chan struct{}, 1)}
 	l.condition.Store(&condition{})
-	for end, pause := time.Now().Add(cfg.Wait), cfg.BackoffMin; ; pause = l.longer(pause) {
+	patience, cancel := context.WithTimeout(ctx, cfg.Wait)
+	defer cancel()
+	for pause := cfg.BackoffMin; ; pause = l.longer(pause) {
 		err := l.first(ctx)
-		if err == nil || !errors.Is(err, ErrUnavailable) || time.Now().Add(pause).After(end) {
+		if err == nil || !errors.Is(err, ErrUnavailable) || patience.Err() != nil {
 			return l, err
 		}
 		cfg.Log.Warn("waiting for the database", "error", err, "again_in", pause.String())
-		if err := sleep(ctx, pause); err != nil {
-			return nil, err
+		// where the patience ends first, one more attempt is the last
+		if sleep(patience, pause) != nil && ctx.Err() != nil {
+			return nil, ctx.Err()
 		}
 	}
 }
@@ -139,7 +148,24 @@ func (s *shelf) find(ref string) (*setting.Model, bool) {
 // time is zero where it can. What is loaded keeps answering.
 func (l *Library) Degraded() (since time.Time, reason string) {
 	c := l.condition.Load()
-	return c.since, c.reason
+	if c.since.IsZero() {
+		return c.since, c.reason
+	}
+	now := l.cfg.Now()
+	return onClock(c.since, now, now.Sub(c.since)), c.reason
+}
+
+// stepped is by how much a clock must differ from the time that passed to count as
+// set. What is less is the jitter of two readings.
+const stepped = time.Second
+
+// onClock returns what a clock that shows now would have shown at since, passed ago.
+// That is since itself, unless the clock was set meanwhile; it is never after now.
+func onClock(since, now time.Time, passed time.Duration) time.Time {
+	if shown := now.Round(0).Sub(since.Round(0)); passed >= 0 && (shown-passed).Abs() < stepped {
+		return since
+	}
+	return now.Round(0).Add(-max(0, passed))
 }
 
 // Refresh has Run look again at once for what is active.
@@ -155,12 +181,12 @@ func (l *Library) Refresh() {
 func (l *Library) Run(ctx context.Context) {
 	pause := l.cfg.BackoffMin
 	for ctx.Err() == nil {
-		healthy := time.Now()
+		healthy := l.cfg.Now()
 		err := l.follow(ctx)
 		if ctx.Err() != nil {
 			return
 		}
-		if time.Since(healthy) > l.cfg.BackoffMax {
+		if l.cfg.Now().Sub(healthy) > l.cfg.BackoffMax {
 			pause = l.cfg.BackoffMin
 		}
 		reason := ErrUnavailable.Error()
@@ -196,7 +222,7 @@ func (l *Library) follow(ctx context.Context) error {
 			l.cfg.Log.Error("what is active cannot be loaded; answering from what was", "error", err)
 		} else if since, _ := l.Degraded(); !since.IsZero() {
 			l.condition.Store(&condition{})
-			l.cfg.Log.Info("following the database again", "degraded_for", time.Since(since).Round(time.Millisecond).String())
+			l.cfg.Log.Info("following the database again", "degraded_for", max(0, l.cfg.Now().Sub(since)).Round(time.Millisecond).String())
 		}
 		if err := l.await(ctx, s); err != nil {
 			return err
@@ -306,7 +332,7 @@ func keep(list []Edition, n int) []Edition {
 
 // degrade notes that something fails, from the first time on.
 func (l *Library) degrade(reason string) {
-	since := time.Now()
+	since := l.cfg.Now()
 	if c := l.condition.Load(); !c.since.IsZero() {
 		since = c.since
 	}
@@ -325,7 +351,7 @@ func publicReason(err error) string {
 
 func (l *Library) longer(pause time.Duration) time.Duration {
 	next := min(2*pause, l.cfg.BackoffMax)
-	return next - time.Duration(rand.Int64N(int64(next)/4+1)) // so that many services do not come back at once
+	return next - time.Duration(rand.Int64N(int64(next)/4+1)) // #nosec G404 -- spreads attempts in time, and guards nothing; so that many services do not come back at once
 }
 
 func sleep(ctx context.Context, d time.Duration) error {

@@ -4,9 +4,12 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"fmt"
+	"math"
 	"strings"
 	"testing"
 	"time"
+
+	"pgregory.net/rapid"
 )
 
 func sumOf(token string) string {
@@ -90,10 +93,52 @@ func TestLimiter(t *testing.T) {
 	if _, ok := l.Allow("a"); !ok {
 		t.Error("refused after the wait it was told")
 	}
-	now = now.Add(-time.Hour) // the clock jumps back
-	if wait, ok := l.Allow("a"); ok || wait > time.Hour+4*time.Second {
-		t.Errorf("after the clock jumped back: allowed %v, wait %v", ok, wait)
+	now = now.Add(-time.Hour) // the clock is set back
+	if wait, ok := l.Allow("a"); ok || wait != 2*time.Second {
+		t.Errorf("after the clock was set back: allowed %v, wait %v, want 2s", ok, wait)
 	}
+	now = now.Add(2 * time.Second)
+	if _, ok := l.Allow("a"); !ok {
+		t.Error("refused after the wait it was told, because the clock was set back before")
+	}
+}
+
+// TestLimiterWhenTheClockIsSet: however the clock is set between requests, a client
+// that waits as long as it is told is let in, no wait is longer than one token takes,
+// and no more are let in than the burst and the time that passed forward allow.
+func TestLimiterWhenTheClockIsSet(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		perSecond := rapid.SampledFrom([]float64{0.1, 0.5, 1, 20, 1000}).Draw(t, "requests a second")
+		burst := rapid.IntRange(1, 5).Draw(t, "burst")
+		now := time.Unix(1_700_000_000, 0)
+		l := NewLimiter(perSecond, burst, func() time.Time { return now })
+		longest := time.Duration(max(1, math.Ceil(1/perSecond))) * time.Second
+		admitted, forward := 0, time.Duration(0)
+		set := func(d time.Duration) {
+			now = now.Add(d)
+			forward += max(0, d)
+		}
+		for range rapid.IntRange(1, 60).Draw(t, "requests") {
+			step := rapid.OneOf(rapid.Int64Range(0, 2000), rapid.Int64Range(-48*3600_000, 48*3600_000)).Draw(t, "clock moves by, ms")
+			set(time.Duration(step) * time.Millisecond)
+			wait, ok := l.Allow("a")
+			if ok {
+				admitted++
+				continue
+			}
+			if wait < time.Second || wait > longest {
+				t.Fatalf("told to wait %v, want 1s to %v", wait, longest)
+			}
+			set(wait)
+			if _, ok := l.Allow("a"); !ok {
+				t.Fatalf("refused after a wait of %v", wait)
+			}
+			admitted++
+		}
+		if most := float64(burst) + forward.Seconds()*perSecond + 1e-6; float64(admitted) > most {
+			t.Fatalf("%d requests let in, want at most %g", admitted, most)
+		}
+	})
 }
 
 // TestLimiterMemory: made-up addresses take bounded memory, share one allowance

@@ -18,6 +18,5 @@ func (k *asker) askArea(f gjson.Result) error {
 	if err != nil {
 		return err
 	}
-	k.o.Lookup.Area(a, &k.area)
-	return nil
+	return k.o.Lookup.Area(k.ctx, a, &k.area)
 }

@@ -2,7 +2,10 @@ package annotate
 
 import (
 	"context"
+	"errors"
+	"fmt"
 	"runtime"
+	"runtime/debug"
 	"sync"
 )
 
@@ -28,7 +31,9 @@ const (
 //
 // read fills a chunk and reports whether there may be more; what it put in before
 // an error is still worked on and written. Each worker has a function of its own
-// from newWorker. After a failure of write nothing more is read than is under way.
+// from newWorker. After a failure of write nothing more is read than is under way;
+// after the end of the context nothing more is worked on or written. A panic of a
+// worker becomes one of the caller.
 func inOrder[R any](ctx context.Context, o *Options,
 	read func(c *chunk[R]) (more bool, err error),
 	newWorker func() func(c *chunk[R]),
@@ -48,9 +53,10 @@ func inOrder[R any](ctx context.Context, o *Options,
 			for c := range todo {
 				c.out, c.errors = c.out[:0], 0
 				if c.err = turn.take(ctx); c.err == nil {
-					work(c)
+					if c.err = guarded(work, c); c.err == nil {
+						c.err = ctx.Err() // the worker may have left off there
+					}
 					turn.give()
-					c.err = ctx.Err() // the worker may have left off there
 				}
 				c.done <- struct{}{}
 			}
@@ -103,8 +109,28 @@ func inOrder[R any](ctx context.Context, o *Options,
 	close(todo)
 	close(order)
 	wg.Wait()
+	var p *workerPanic
+	if errors.As(writeErr, &p) {
+		panic(p.text)
+	}
 	if writeErr != nil {
 		return st, writeErr
 	}
 	return st, readErr
+}
+
+// workerPanic is a panic on its way from a worker to the caller.
+type workerPanic struct{ text string }
+
+func (p *workerPanic) Error() string { return p.text }
+
+// guarded does a worker's work. A panic becomes an error that holds its stack.
+func guarded[R any](work func(c *chunk[R]), c *chunk[R]) (err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = &workerPanic{fmt.Sprintf("%v\n%s", p, debug.Stack())}
+		}
+	}()
+	work(c)
+	return nil
 }

@@ -104,3 +104,47 @@ func TestInOrderStops(t *testing.T) {
 		t.Errorf("%v after %d chunks; want the context's error after 20", err, reads.Load())
 	}
 }
+
+// TestInOrderLeavesOff: once the context ends, what waits for a turn is not worked
+// on, and nothing that comes after a gap is written.
+func TestInOrderLeavesOff(t *testing.T) {
+	o := &Options{Slots: make(chan struct{}, 1)}
+	ctx, cancel := context.WithCancel(context.Background())
+	var reads, worked atomic.Int64
+	written := 0
+	st, err := inOrder(ctx, o, numbered(1e9, nil, &reads), func() func(c *chunk[int]) {
+		return func(c *chunk[int]) {
+			if worked.Add(1) == 5 {
+				cancel()
+			}
+			c.out = append(c.out, 'x')
+		}
+	}, func(b []byte) error {
+		written++
+		return nil
+	})
+	if !errors.Is(err, context.Canceled) || worked.Load() != 5 || written >= 5 || st.Rows > 5 || len(o.Slots) != 0 {
+		t.Errorf("%v, %d worked on, %d written, %+v, %d turns taken; want 5 worked on, fewer written", err, worked.Load(), written, st, len(o.Slots))
+	}
+}
+
+// TestInOrderPanics: a panic of a worker reaches the caller with the worker's stack,
+// and gives its turn back.
+func TestInOrderPanics(t *testing.T) {
+	o := &Options{Slots: make(chan struct{}, 1)}
+	var reads atomic.Int64
+	defer func() {
+		text := fmt.Sprint(recover())
+		if !strings.HasPrefix(text, "a defect\n") || !strings.Contains(text, "inorder_test.go") || len(o.Slots) != 0 {
+			t.Errorf("recovered %.300q, %d turns taken", text, len(o.Slots))
+		}
+	}()
+	_, err := inOrder(context.Background(), o, numbered(100, nil, &reads), func() func(c *chunk[int]) {
+		return func(c *chunk[int]) {
+			if c.rows == 7 {
+				panic("a defect")
+			}
+		}
+	}, func([]byte) error { return nil })
+	t.Errorf("no panic, but %v", err)
+}

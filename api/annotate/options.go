@@ -41,7 +41,7 @@ type Options struct {
 	Progress                               func(Stats) // called now and then; may be nil
 	// Slots bounds how many goroutines read rows and work on them at once, of all runs
 	// that share it: a place in it is taken for each chunk, and given back while the
-	// input or the output is waited for. No bound where nil.
+	// input is waited for. No bound where nil.
 	Slots      chan struct{}
 	RowBytes   int   // most bytes of a row, line or feature; MaxRowBytes where 0
 	ArrayBytes int64 // most bytes of a JSON array; MaxArrayBytes where 0

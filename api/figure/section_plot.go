@@ -11,7 +11,7 @@ import (
 
 // class returns the name of a class for one slab of a section.
 func class(name string, profile int) string {
-	return name + string(rune('0'+min(profile, numSlabLooks-1)))
+	return name + string(rune('0'+min(profile, numSlabLooks-1))) // #nosec G115 -- a digit
 }
 
 func (f *sectionFigure) at(km, depthKm float64) point {

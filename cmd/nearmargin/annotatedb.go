@@ -54,7 +54,7 @@ func annotateTable(p *program, ctx context.Context, f *flags) error {
 	if err != nil {
 		return usageError("%v", err)
 	}
-	a, err := newTableAnswerer(f, l)
+	a, err := newTableAnswerer(ctx, f, l)
 	if err != nil {
 		return usageError("%v", err)
 	}

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"fmt"
 	"math"
 	"slices"
@@ -42,6 +43,7 @@ var areaPaths = map[string]string{
 
 // tableAnswerer answers for the rows of a table.
 type tableAnswerer struct {
+	ctx                           context.Context // of the run
 	look                          *setting.Lookup
 	options                       annotate.Options
 	extra                         []string
@@ -52,8 +54,8 @@ type tableAnswerer struct {
 	json                          []byte
 }
 
-func newTableAnswerer(f *flags, l *setting.Lookup) (*tableAnswerer, error) {
-	a := &tableAnswerer{look: l, options: annotate.Options{
+func newTableAnswerer(ctx context.Context, f *flags, l *setting.Lookup) (*tableAnswerer, error) {
+	a := &tableAnswerer{ctx: ctx, look: l, options: annotate.Options{
 		Lookup: l, DepthColumn: f.depthColumn, UncertaintyColumn: f.uncertaintyCol, Prefix: f.prefix,
 		DepthUnit: f.depthUnit, DepthDatum: f.depthDatum, ElevationColumn: f.elevationColumn,
 	}}
@@ -159,7 +161,9 @@ func (a *tableAnswerer) polygons(list orb.MultiPolygon) error {
 	if err != nil {
 		return err
 	}
-	a.look.Area(area, &a.area)
+	if err := a.look.Area(a.ctx, area, &a.area); err != nil {
+		return err
+	}
 	a.json = wire.AppendArea(a.json[:0], &a.area)
 	return nil
 }

@@ -5,6 +5,7 @@ import (
 	"flag"
 	"fmt"
 	"io"
+	"log/slog"
 	"math"
 	"net"
 	"os"
@@ -23,10 +24,9 @@ type serveConfig struct {
 	basePath      string
 	checkOnly     bool
 
-	headerTime, readTime, writeTime, idleTime time.Duration
-	drainTime, shutdownTime                   time.Duration
-	headerBytes                               int
-	limits                                    api.Limits
+	headerTime, writeTime, idleTime time.Duration
+	drainTime, shutdownTime         time.Duration
+	limits                          api.Limits
 
 	tokens, tokensFile      string
 	rate                    float64
@@ -39,17 +39,18 @@ func (f *flags) operationFlags() {
 	c, s := &f.serving, f.set
 	d := api.DefaultLimits
 	s.DurationVar(&c.headerTime, "header-timeout", 10*time.Second, "`time` for a request's header to arrive")
-	s.DurationVar(&c.readTime, "read-timeout", time.Minute, "`time` for a whole request to arrive that is not a batch")
+	s.DurationVar(&c.limits.ReadTime, "read-timeout", d.ReadTime, "`time` for a whole request to arrive that is not a batch")
 	s.DurationVar(&c.writeTime, "write-timeout", time.Minute, "`time` for an answer that is not a batch's, from the end of the request's header")
 	s.DurationVar(&c.idleTime, "idle-timeout", 2*time.Minute, "`time` that a connection may lie idle between requests")
 	s.DurationVar(&c.limits.StallTime, "stall-timeout", d.StallTime, "`time` that a batch waits for its client to send 1 KiB or to take what was written")
 	s.DurationVar(&c.limits.BatchTime, "batch-timeout", d.BatchTime, "`time` for a whole batch")
 	s.DurationVar(&c.drainTime, "drain-time", 0, "`time` from SIGTERM, with readiness off, until no connection is taken any more")
 	s.DurationVar(&c.shutdownTime, "shutdown-timeout", 15*time.Second, "`time` after that for running batches to finish; then they are cut short")
-	s.IntVar(&c.headerBytes, "max-header-bytes", 64<<10, "`bytes` of a request's line and header")
+	s.IntVar(&c.limits.HeaderBytes, "max-header-bytes", d.HeaderBytes, "`bytes` of a request's line and header")
 	s.Int64Var(&c.limits.BodyBytes, "max-body-bytes", d.BodyBytes, "`bytes` of an area or a JSON array")
 	s.IntVar(&c.limits.RowBytes, "max-row-bytes", d.RowBytes, "`bytes` of a row, line or feature of a batch")
 	s.IntVar(&c.limits.Batches, "max-batches", d.Batches, "`number` of batches at once; those beyond get 503")
+	s.IntVar(&c.limits.Areas, "max-areas", d.Areas, "`number` of areas that are worked on or wait; those beyond get 503")
 	s.StringVar(&c.privateListen, "private-listen", "", "private `address` for metrics, health and pprof; metrics are on the public one where empty")
 	s.BoolVar(&c.pprof, "pprof", false, "serve profiles on the private address")
 	s.StringVar(&c.basePath, "base-path", "", "`path` below which a proxy shows the service, such as /tectonics")
@@ -78,7 +79,6 @@ func (c *serveConfig) validate() (api.Access, error) {
 		low, high time.Duration
 	}{
 		{"header-timeout", c.headerTime, time.Second, 10 * time.Minute},
-		{"read-timeout", c.readTime, time.Second, time.Hour},
 		{"write-timeout", c.writeTime, time.Second, time.Hour},
 		{"idle-timeout", c.idleTime, time.Second, time.Hour},
 		{"drain-time", c.drainTime, 0, 10 * time.Minute},
@@ -88,11 +88,8 @@ func (c *serveConfig) validate() (api.Access, error) {
 			fail(fmt.Errorf("--%s is %v; want %v to %v", x.name, x.d, x.low, x.high))
 		}
 	}
-	if c.headerTime > c.readTime {
-		fail(fmt.Errorf("--header-timeout is %v and --read-timeout %v; the header is a part of the request, so it must not be the longer", c.headerTime, c.readTime))
-	}
-	if c.headerBytes < 4<<10 || c.headerBytes > 1<<20 {
-		fail(fmt.Errorf("--max-header-bytes is %d; want %d to %d", c.headerBytes, 4<<10, 1<<20))
+	if c.headerTime > c.limits.ReadTime {
+		fail(fmt.Errorf("--header-timeout is %v and --read-timeout %v; the header is a part of the request, so it must not be the longer", c.headerTime, c.limits.ReadTime))
 	}
 	if err := c.limits.Validate(); err != nil {
 		for _, e := range strings.Split(err.Error(), "\n") {
@@ -114,9 +111,9 @@ func (c *serveConfig) validate() (api.Access, error) {
 	if c.burst < 1 || c.burst > 1e6 {
 		fail(fmt.Errorf("--rate-burst is %d; want 1 to 1000000 requests", c.burst))
 	}
-	var err error
-	a.Tokens, err = c.readTokens()
+	tokens, err := c.readTokens()
 	fail(err)
+	a.Tokens = access.NewRing(tokens)
 	a.Origins, err = access.ParseOrigins(c.origins)
 	fail(err)
 	a.Proxies, err = access.ParseProxies(c.trustedProxies)
@@ -135,7 +132,7 @@ func (c *serveConfig) validate() (api.Access, error) {
 func (c *serveConfig) readTokens() (*access.Tokens, error) {
 	text := c.tokens
 	if c.tokensFile != "" {
-		raw, err := os.ReadFile(c.tokensFile)
+		raw, err := os.ReadFile(c.tokensFile) // #nosec G703 -- the operator's own path
 		if err != nil {
 			return nil, fmt.Errorf("--tokens-file: %w", err)
 		}
@@ -149,6 +146,22 @@ func (c *serveConfig) readTokens() (*access.Tokens, error) {
 		return nil, errors.New("tokens: there is none in what was given, which would let everybody in; leave --tokens and --tokens-file out for that")
 	}
 	return t, nil
+}
+
+// reloadTokens reads the tokens again. A file that is at fault leaves the old ones
+// valid: neither is everybody let in, nor everybody shut out.
+func (c *serveConfig) reloadTokens(ring *access.Ring, log *slog.Logger) {
+	if c.tokensFile == "" {
+		return // those of the flag cannot have changed
+	}
+	t, err := c.readTokens()
+	if err != nil {
+		log.Error("the tokens were not reloaded; the old ones stay", "error", err, "tokens", ring.Tokens().Len())
+		return
+	}
+	before := ring.Tokens().Len()
+	ring.Replace(t)
+	log.Info("the tokens were reloaded", "tokens", t.Len(), "before", before)
 }
 
 // secretFlags are not shown: what stands in them opens something, or helps to.

@@ -227,12 +227,54 @@ func TestRunningBatchKeepsItsEdition(t *testing.T) {
 		"/v1/point?lon=1&lat=2&model=builtin@other":   `"edition":"other"`,
 		"/v1/models/" + first:                         `"active":false`,
 		"/v1/point?lon=1&lat=2&model=builtin@unheard": `no-such-model`,
-		"/metrics": `nearmargin_active_model_info{model="builtin@other"`,
+		"/metrics": `nearmargin_model_info{active="true",edition="other",id="builtin"`,
 	} {
 		if _, body := get(t, address, path); !strings.Contains(body, want) {
 			t.Errorf("%s: %.300s, want %s in it", path, body, want)
 		}
 	}
+}
+
+// TestServingNeedsSelectOnly serves as a role that may read the tables and nothing
+// else: from the start, through an activation that it is told of, one that it looks
+// for itself, and after its connection is cut.
+func TestServingNeedsSelectOnly(t *testing.T) {
+	url, ref := seeded(t)
+	for _, edition := range []string{"second", "third", "fourth"} {
+		must(t, url, "model", "import", exported(t, edition))
+	}
+	storetest.Exec(t, url, `CREATE ROLE serves_only LOGIN PASSWORD 'x'`)
+	t.Cleanup(func() {
+		storetest.Exec(t, url, `DROP OWNED BY serves_only`)
+		storetest.Exec(t, url, `DROP ROLE serves_only`)
+	})
+	storetest.Exec(t, url, `GRANT USAGE ON SCHEMA nearmargin TO serves_only`)
+	storetest.Exec(t, url, `GRANT SELECT ON ALL TABLES IN SCHEMA nearmargin TO serves_only`)
+	as := storetest.As(t, url, "serves_only", "x")
+	if got := invoke(t, map[string]string{"NEARMARGIN_DATABASE": as}, "", "model", "activate", ref); got.status != exitFailed {
+		t.Fatalf("the role may activate: status %d, %s", got.status, got.stdout)
+	}
+	address := startServer(t, "--database", as, "--database-poll", "1s")
+	follows := func(what, edition string) {
+		t.Helper()
+		waitFor(t, what, func() bool {
+			status, body := get(t, address, "/v1/point?lon=-72.4&lat=-36.1")
+			if status != http.StatusOK {
+				t.Fatalf("status %d: %s", status, body)
+			}
+			_, ready := get(t, address, "/readyz")
+			return strings.Contains(body, `"edition":"`+edition+`"`) && strings.Contains(ready, `"status":"ready"`)
+		})
+	}
+	follows("the start", strings.TrimPrefix(ref, "builtin@"))
+	must(t, url, "model", "activate", "builtin@second")
+	follows("an activation", "second")
+	storetest.Exec(t, url, `ALTER TABLE nearmargin.activations DISABLE TRIGGER tell`)
+	must(t, url, "model", "activate", "builtin@third")
+	follows("a poll", "third")
+	storetest.Exec(t, url, `SELECT pg_terminate_backend(pid) FROM pg_stat_activity WHERE usename = 'serves_only'`)
+	must(t, url, "model", "activate", "builtin@fourth")
+	follows("a new connection", "fourth")
 }
 
 // TestServiceLivesThroughAnOutage stops the database under a service.

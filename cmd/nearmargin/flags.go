@@ -15,6 +15,7 @@ type flags struct {
 	set  *flag.FlagSet
 	env  func(string) string
 	args []string
+	more string // what the usage text says besides the flags
 
 	model, motion, fallback       string
 	listen, out, format, dir      string
@@ -162,6 +163,9 @@ func (f *flags) usage() {
 		}
 		fmt.Fprintf(w, "  --%s %s\n        %s%s; %s\n", fl.Name, name, text, def, envName(fl.Name))
 	})
+	if f.more != "" {
+		fmt.Fprintln(w, f.more)
+	}
 }
 
 // wantArgs checks the number of arguments.

@@ -37,10 +37,10 @@ func (c *serveConfig) listenAndServe(ctx context.Context, log *slog.Logger, publ
 		}
 		defer private.Close() // last: metrics are to be seen while batches finish
 		log.Info("listening on the private address", "address", pl.Addr().String(), "pprof", c.pprof)
-		go func() { done <- private.Serve(api.Listener(pl)) }()
+		go func() { done <- private.Serve(api.Listener(pl, c.limits.HeaderBytes)) }()
 	}
 	ready(l.Addr().String())
-	go func() { done <- srv.Serve(api.Listener(l)) }()
+	go func() { done <- srv.Serve(api.Listener(l, c.limits.HeaderBytes)) }()
 	select {
 	case err := <-done:
 		return errors.Join(err, srv.Close())
@@ -54,10 +54,10 @@ func (c *serveConfig) server(h http.Handler, log *slog.Logger) *http.Server {
 	return &http.Server{
 		Handler:                      h,
 		ReadHeaderTimeout:            c.headerTime,
-		ReadTimeout:                  c.readTime,
+		ReadTimeout:                  c.limits.ReadTime,
 		WriteTimeout:                 c.writeTime,
 		IdleTimeout:                  c.idleTime,
-		MaxHeaderBytes:               c.headerBytes,
+		MaxHeaderBytes:               c.limits.HeaderBytes,
 		DisableGeneralOptionsHandler: true,
 		ErrorLog:                     slog.NewLogLogger(log.Handler(), slog.LevelWarn),
 	}
@@ -100,7 +100,7 @@ func (c *serveConfig) shutDown(log *slog.Logger, srv *http.Server, h *api.Server
 	ctx, cancel = context.WithTimeout(context.Background(), cutTime)
 	defer cancel()
 	if srv.Shutdown(ctx) != nil { // some wait for their clients
-		srv.Close()
+		_ = srv.Close() // nothing is left to be done about it
 	}
 	return fmt.Errorf("after %v still %d batches ran and were cut short", c.shutdownTime, left)
 }

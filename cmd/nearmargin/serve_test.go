@@ -24,13 +24,18 @@ type running struct {
 
 func startWith(t *testing.T, args ...string) *running {
 	t.Helper()
+	return startIn(t, func(string) string { return "" }, args...)
+}
+
+func startIn(t *testing.T, env func(string) string, args ...string) *running {
+	t.Helper()
 	ctx, cancel := context.WithCancel(context.Background())
 	t.Cleanup(cancel)
 	r := &running{stop: cancel, status: make(chan int, 1), log: &strings.Builder{}}
 	logs, w := io.Pipe()
 	ended := make(chan int, 1)
 	go func() {
-		p := &program{env: func(string) string { return "" }, stdin: strings.NewReader(""), stdout: io.Discard, stderr: w}
+		p := &program{env: env, stdin: strings.NewReader(""), stdout: io.Discard, stderr: w}
 		ended <- p.run(ctx, append([]string{"serve", "--listen", "127.0.0.1:0"}, args...))
 		w.Close()
 	}()

@@ -3,37 +3,38 @@ package main
 import (
 	"context"
 	"log/slog"
-	"os"
 
 	"nearmargin/api"
 	"nearmargin/setting/bundle"
 	"nearmargin/store"
 )
 
-// open loads what is to be served. The function that it returns follows changes
-// until its context ends: of a database's active edition, or, at the signal, of a
-// directory.
-func open(ctx context.Context, f *flags, log *slog.Logger, hup <-chan os.Signal) (api.Models, api.Source, func(context.Context), error) {
+// place is where models come from while the service runs.
+type place struct {
+	models api.Models
+	source api.Source                // nil where the place cannot fail
+	follow func(ctx context.Context) // follows changes until the context ends
+	reload func()                    // looks again at once
+}
+
+// open loads what is to be served, from a database or from a directory. A
+// database's active edition is followed; a directory is read again when told.
+func open(ctx context.Context, f *flags, log *slog.Logger) (*place, error) {
 	if f.database != "" {
-		return openDatabase(ctx, f, log, hup)
+		l, err := store.Open(ctx, store.Config{URL: f.database, Keep: f.editions, Poll: f.databasePoll, Wait: f.databaseWait, Log: log})
+		if err != nil {
+			return nil, err
+		}
+		return &place{models: l, source: l, follow: l.Run, reload: l.Refresh}, nil
 	}
 	b, err := load(f.model)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, err
 	}
 	warn(log, b)
 	s := &single{}
 	s.m.Store(b.Model)
-	return s, nil, func(ctx context.Context) {
-		for {
-			select {
-			case <-ctx.Done():
-				return
-			case <-hup:
-				s.reload(f.model, log)
-			}
-		}
-	}, nil
+	return &place{models: s, follow: func(context.Context) {}, reload: func() { s.reload(f.model, log) }}, nil
 }
 
 // warn logs the faults of a model's boundary network.
@@ -53,24 +54,4 @@ func (s *single) reload(name string, log *slog.Logger) {
 	warn(log, b)
 	s.m.Store(b.Model)
 	log.Info("the model was reloaded", "model", b.Model.Ref(), "sha256", b.Model.SHA256())
-}
-
-func openDatabase(ctx context.Context, f *flags, log *slog.Logger, hup <-chan os.Signal) (api.Models, api.Source, func(context.Context), error) {
-	l, err := store.Open(ctx, store.Config{URL: f.database, Keep: f.editions, Poll: f.databasePoll, Wait: f.databaseWait, Log: log})
-	if err != nil {
-		return nil, nil, nil, err
-	}
-	return l, l, func(ctx context.Context) {
-		go func() {
-			for {
-				select {
-				case <-ctx.Done():
-					return
-				case <-hup:
-					l.Refresh()
-				}
-			}
-		}()
-		l.Run(ctx)
-	}, nil
 }

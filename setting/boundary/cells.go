@@ -57,7 +57,7 @@ func (n *Network) newCells(t *tree) *cells {
 					return cmp.Or(cmp.Compare(a.chord, b.chord), cmp.Compare(a.branch, b.branch))
 				})
 				c.entries = append(c.entries, list...)
-				c.starts = append(c.starts, int32(len(c.entries)))
+				c.starts = append(c.starts, int32(len(c.entries))) // #nosec G115 -- indices of legs, fewer than 2^31 in any memory
 			}
 		}
 	}

@@ -1,6 +1,7 @@
 package boundary
 
 import (
+	"iter"
 	"math"
 
 	"nearmargin/setting/sphere"
@@ -13,8 +14,8 @@ type Piece struct {
 	LengthKm float64    // along WGS84
 }
 
-// Inside calls visit with each part of the network's legs that lies inside a
-// shape, in the order of the boundaries' ids and along their paths.
+// Inside gives each part of the network's legs that lies inside a shape, in the
+// order of the boundaries' ids and along their paths.
 //
 // Method: the legs that reach into the cap around the shape are cut where they
 // may meet its outline; each part is inside or not as its middle is.
@@ -24,16 +25,21 @@ type Piece struct {
 //
 // Accuracy: the cuts are good to 1 mm; lengths are those of geodesics between the
 // ends of each part, as in [Boundary.LengthKm].
-func (n *Network) Inside(s sphere.Shape, visit func(Piece)) {
-	centre, rad := s.Cap()
-	var cuts []float64
-	for _, i := range n.legsWithin(centre, rad) {
-		l := &n.legs[i]
-		cuts = s.Cuts(&l.arc, cuts[:0])
-		for part := range l.arc.Between(cuts) {
-			if s.Contains(part.Midpoint()) {
+func (n *Network) Inside(s sphere.Shape) iter.Seq[Piece] {
+	return func(yield func(Piece) bool) {
+		centre, rad := s.Cap()
+		var cuts []float64
+		for _, i := range n.legsWithin(centre, rad) {
+			l := &n.legs[i]
+			cuts = s.Cuts(&l.arc, cuts[:0])
+			for part := range l.arc.Between(cuts) {
+				if !s.Contains(part.Midpoint()) {
+					continue
+				}
 				km, _ := sphere.Inverse(part.A.LonLat(), part.B.LonLat())
-				visit(Piece{n.boundaries[l.boundary], *part, km})
+				if !yield(Piece{n.boundaries[l.boundary], *part, km}) {
+					return
+				}
 			}
 		}
 	}

@@ -49,7 +49,10 @@ func TestInsideAgreesWithWalking(t *testing.T) {
 		s := anyArea(t, r, n)
 		got, want := map[string]float64{}, map[string]float64{}
 		pieces := 0
-		n.Inside(s, func(p Piece) { got[p.Boundary.ID()] += p.LengthKm; pieces++ })
+		for p := range n.Inside(s) {
+			got[p.Boundary.ID()] += p.LengthKm
+			pieces++
+		}
 		const steps = 400
 		for i := range n.legs {
 			l := &n.legs[i]
@@ -120,7 +123,9 @@ func TestInsideKnownLengths(t *testing.T) {
 		{"in through a corner", ring(at(10, 20), at(11, 25), at(10, 30), at(9, 25)), map[string]float64{"meridian": between(at(10, 20), at(10, 30))}},
 	} {
 		got := map[string]float64{}
-		n.Inside(c.shape, func(p Piece) { got[p.Boundary.ID()] += p.LengthKm })
+		for p := range n.Inside(c.shape) {
+			got[p.Boundary.ID()] += p.LengthKm
+		}
 		for _, id := range []string{"meridian", "equator"} {
 			if math.Abs(got[id]-c.want[id]) > 1e-6 {
 				t.Errorf("%s: %.9f km of %s inside, want %.9f", c.name, got[id], id, c.want[id])
@@ -153,7 +158,10 @@ func TestNearestToOutline(t *testing.T) {
 	for range 400 {
 		s := anyArea(t, r, n)
 		crossed := false
-		n.Inside(s, func(Piece) { crossed = true })
+		for range n.Inside(s) {
+			crossed = true
+			break
+		}
 		if crossed {
 			continue
 		}

@@ -112,7 +112,7 @@ func (n *Network) plateIndex(code string) uint8 {
 	if !ok {
 		return noPlate
 	}
-	return uint8(i)
+	return uint8(i) // #nosec G115 -- NewNetwork takes no more than 250 plates
 }
 
 // Boundaries returns the boundaries, sorted by id. The slice is the caller's.

@@ -31,7 +31,7 @@ func (n *Network) linkNodes() {
 		k := nodeKey(p)
 		i, ok := at[k]
 		if !ok {
-			i = int32(len(n.nodes))
+			i = int32(len(n.nodes)) // #nosec G115 -- indices of nodes, fewer than 2^31 in any memory
 			at[k] = i
 			n.nodes = append(n.nodes, node{at: k, vec: sphere.FromLonLat(k)})
 		}

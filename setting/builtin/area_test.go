@@ -1,6 +1,7 @@
 package builtin
 
 import (
+	"context"
 	"math"
 	"testing"
 
@@ -51,7 +52,9 @@ func BenchmarkArea(b *testing.B) {
 				if err != nil {
 					b.Fatal(err)
 				}
-				l.Area(a, &out)
+				if err := l.Area(context.Background(), a, &out); err != nil {
+					b.Fatal(err)
+				}
 			}
 			if out.AreaKm2 < 0.9*c.km2 || out.AreaKm2 > 1.1*c.km2 || len(out.Plates) == 0 {
 				b.Fatalf("%g km² on %d plates", out.AreaKm2, len(out.Plates))

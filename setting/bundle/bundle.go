@@ -276,10 +276,10 @@ func (b *Bundle) Write(dir string) error {
 	}
 	for _, name := range b.Files() {
 		path := filepath.Join(dir, filepath.FromSlash(name))
-		if err := os.MkdirAll(filepath.Dir(path), 0o755); err != nil {
+		if err := os.MkdirAll(filepath.Dir(path), 0o755); err != nil { // #nosec G301 -- a model is for everybody to read
 			return err
 		}
-		if err := os.WriteFile(path, b.files[name], 0o644); err != nil {
+		if err := os.WriteFile(path, b.files[name], 0o644); err != nil { // #nosec G306 -- a model is for everybody to read
 			return err
 		}
 	}

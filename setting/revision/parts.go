@@ -298,7 +298,7 @@ func ringsMove(a, b [][]sphere.LonLat, d *details) (km float64) {
 		*d = append(*d, fmt.Sprintf("%d rings to %d", len(a), len(b)))
 	}
 	for i := range min(len(a), len(b)) {
-		km = max(km, lineMove(a[i], b[i]))
+		km = max(km, lineMove(a[i], b[i])) // #nosec G602 -- i is below the length of both
 	}
 	*d = append(*d, fmt.Sprintf("outline moved by up to %.2f km", km))
 	return km

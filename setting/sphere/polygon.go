@@ -130,7 +130,7 @@ func ringVecs(i int, ring []LonLat) ([]Vec, []int32, error) {
 	if len(vecs) < 3 {
 		return nil, nil, shapeError(i, -1, "the ring has %d distinct positions and encloses no area; at least 3 are needed", len(vecs))
 	}
-	return append(vecs, vecs[0]), append(at, int32(len(ring)-1)), nil
+	return append(vecs, vecs[0]), append(at, int32(len(ring)-1)), nil // #nosec G115 -- a ring in memory has fewer than 2^31 positions
 }
 
 // samePlace reports whether two positions mean one place, such as 180 and -180.

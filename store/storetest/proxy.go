@@ -62,7 +62,7 @@ func (p *proxy) keep(c net.Conn) bool {
 	p.mu.Lock()
 	defer p.mu.Unlock()
 	if p.down {
-		c.Close()
+		_ = c.Close()
 		return false
 	}
 	p.open[c] = true
@@ -75,7 +75,7 @@ func (p *proxy) pass(c net.Conn) {
 	}
 	s, err := net.Dial("tcp", p.target)
 	if err != nil || !p.keep(s) {
-		c.Close()
+		_ = c.Close()
 		return
 	}
 	done := make(chan struct{}, 2)
@@ -86,8 +86,8 @@ func (p *proxy) pass(c net.Conn) {
 		}()
 	}
 	<-done
-	c.Close()
-	s.Close()
+	_ = c.Close()
+	_ = s.Close()
 	p.mu.Lock()
 	delete(p.open, c)
 	delete(p.open, s)
@@ -99,7 +99,7 @@ func (p *proxy) cut() {
 	defer p.mu.Unlock()
 	p.down = true
 	for c := range p.open {
-		c.Close()
+		_ = c.Close()
 	}
 }
 
