@@ -17,6 +17,7 @@ import (
 	"strconv"
 	"strings"
 	"testing"
+	"time"
 
 	"github.com/labstack/echo/v4"
 
@@ -338,12 +339,28 @@ func TestProblemsAreTheExamples(t *testing.T) {
 		case "NoSuchModel", "NeedsToken", "TooMany":
 			o = point
 			o.required = map[string][]string{"lon": {"-72.4"}, "lat": {"-36.1"}}
+			if p.name == "TooMany" {
+				now := time.Now()
+				p.config = func(c *Config) { c.Access.Rate = access.NewLimiter(10, 50, func() time.Time { return now }) }
+				p.before = func(_ *testing.T, r *rig) {
+					for range 50 {
+						r.get("/v1/plates")
+					}
+				}
+			}
 		case "Impossible":
 			o, p.pairs = box, nil
 		case "TooLarge":
 			o, p.config, p.change = box, nil, body("application/geo+json", func() io.Reader { return strings.NewReader(strings.Repeat(" ", 4<<20+1)) })
 		case "NoSlab":
 			o = section
+		case "BusyAreas":
+			o, p.config = box, nil
+			p.before = func(_ *testing.T, r *rig) {
+				for range DefaultLimits.Areas {
+					r.areas <- struct{}{}
+				}
+			}
 		case "Busy":
 			p.config = nil
 			p.before = func(t *testing.T, r *rig) {
