@@ -37,13 +37,17 @@ func (o only) Find(ref string) (*setting.Model, bool) {
 }
 
 // newHandler returns the whole service on the built-in model.
-func newHandler(t *testing.T) http.Handler {
+func newHandler(t *testing.T, with ...func(*api.Config)) http.Handler {
 	t.Helper()
 	b, err := builtin.Load()
 	if err != nil {
 		t.Fatal(err)
 	}
-	return api.New(api.Config{Models: only{b.Model}, Log: slog.New(slog.NewTextHandler(io.Discard, nil)), Registry: prometheus.NewRegistry(), Version: "0", Commit: "0"})
+	c := api.Config{Models: only{b.Model}, Log: slog.New(slog.NewTextHandler(io.Discard, nil)), Registry: prometheus.NewRegistry(), Version: "0", Commit: "0"}
+	for _, f := range with {
+		f(&c)
+	}
+	return api.New(c)
 }
 
 // host is a service that can go away and come back at the same address.
@@ -51,11 +55,12 @@ type host struct {
 	t       *testing.T
 	handler http.Handler
 	addr    string
+	path    string // of the page, with a slash at the end
 	srv     *http.Server
 }
 
-func newHost(t *testing.T) *host {
-	h := &host{t: t, handler: newHandler(t), addr: "127.0.0.1:0"}
+func newHost(t *testing.T, with ...func(*api.Config)) *host {
+	h := &host{t: t, handler: newHandler(t, with...), addr: "127.0.0.1:0", path: "/"}
 	h.start()
 	t.Cleanup(h.stop)
 	return h
@@ -76,9 +81,10 @@ func (h *host) stop() { _ = h.srv.Close() }
 
 // tab is one tab of a browser, with what its console said.
 type tab struct {
-	t   *testing.T
-	ctx context.Context
-	url string
+	t    *testing.T
+	ctx  context.Context
+	url  string // of the host
+	path string
 
 	mu      sync.Mutex
 	console []string
@@ -115,7 +121,7 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	t.Cleanup(closeTab)
 	ctx, cancel := context.WithTimeout(ctx, 2*time.Minute)
 	t.Cleanup(cancel)
-	b := &tab{t: t, ctx: ctx, url: "http://" + h.addr}
+	b := &tab{t: t, ctx: ctx, url: "http://" + h.addr, path: h.path}
 	chromedp.ListenTarget(ctx, b.listen)
 	scheme := "light"
 	if dark {
@@ -126,7 +132,7 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	}
 	b.run(log.Enable(), emulation.SetDeviceMetricsOverride(int64(width), int64(height), 1, width < 500),
 		emulation.SetEmulatedMedia().WithFeatures([]*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: scheme}}),
-		chromedp.Navigate(b.url+"/"+fragment))
+		chromedp.Navigate(b.url+b.path+fragment))
 	if !strings.HasPrefix(fragment, noScript) {
 		b.wait("the page is ready", `document.documentElement.dataset.ready === "yes"`)
 	}
