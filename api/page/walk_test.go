@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -261,61 +262,82 @@ func inOrder(nodes []*axNode) (out []*axNode) {
 	return out
 }
 
+// controls reads the accessibility tree that Chromium gives to assistive technology,
+// fails where a control has no role or no name, and returns the names in reading order
+// and how many there are of each role.
+func controls(b *tab) (names []string, seen map[string]int) {
+	b.t.Helper()
+	var tree struct {
+		Nodes []*axNode `json:"nodes"`
+	}
+	b.run(chromedp.ActionFunc(func(ctx context.Context) error {
+		return cdp.Execute(ctx, "Accessibility.getFullAXTree", nil, &tree) // without cdproto's types, which know fewer properties than the browser
+	}))
+	roles := map[string]bool{"button": true, "textbox": true, "combobox": true, "checkbox": true, "link": true, "application": true,
+		"region": true, "toolbar": true, "search": true, "form": true, "navigation": true, "image": true, "DisclosureTriangle": true}
+	text := func(v axValue) string {
+		s, _ := v.Value.(string)
+		return s
+	}
+	seen = map[string]int{}
+	for _, n := range inOrder(tree.Nodes) {
+		role, focusable := text(n.Role), false
+		for _, p := range n.Properties {
+			if p.Name == "focusable" && role != "RootWebArea" && !n.Ignored {
+				focusable = true
+				seen["focusable"]++
+				if role == "" || role == "generic" || role == "none" {
+					b.t.Errorf("a control (node %d, %q) has the role %q", n.BackendDOMNodeID, text(n.Name), role)
+				}
+			}
+		}
+		if n.Ignored || !roles[role] && !focusable {
+			continue
+		}
+		seen[role]++
+		if strings.TrimSpace(text(n.Name)) == "" {
+			b.t.Errorf("a %s (node %d) has no name", role, n.BackendDOMNodeID)
+		}
+		names = append(names, text(n.Name))
+	}
+	return names, seen
+}
+
 // TestAccessibilityTree: every control that Chromium gives to assistive technology
 // has a role and a name, and they come in reading order.
 func TestAccessibilityTree(t *testing.T) {
 	h := newHost(t)
 	b := newTab(t, h, 1280, 800, false, "#site=-71.6,-33.5")
 	b.heading("Forearc")
-	var tree struct {
-		Nodes []*axNode `json:"nodes"`
+	b.wait("the section", sectionShown)
+	b.run(chromedp.Click("#legend summary"))
+	names, seen := controls(b)
+	if seen["button"] < 9 || seen["textbox"] < 2 || seen["checkbox"] != 5 || seen["image"] < 1 || seen["focusable"] < 19 {
+		t.Errorf("the tree holds %v", seen)
 	}
-	b.run(chromedp.Click("#legend summary"), chromedp.ActionFunc(func(ctx context.Context) error {
-		return cdp.Execute(ctx, "Accessibility.getFullAXTree", nil, &tree) // without cdproto's types, which know fewer properties than the browser
-	}))
-	controls := map[string]bool{"button": true, "textbox": true, "combobox": true, "checkbox": true, "link": true, "application": true,
-		"region": true, "toolbar": true, "search": true, "navigation": true, "image": true, "DisclosureTriangle": true}
-	text := func(v axValue) string {
-		s, _ := v.Value.(string)
-		return s
-	}
-	seen := map[string]int{}
-	var names []string
-	focusable := map[int]bool{}
-	for _, n := range inOrder(tree.Nodes) {
-		role := text(n.Role)
-		for _, p := range n.Properties {
-			if p.Name == "focusable" && role != "RootWebArea" && !n.Ignored {
-				focusable[n.BackendDOMNodeID] = true
-				if role == "" || role == "generic" || role == "none" {
-					t.Errorf("a control (node %d, %q) has the role %q", n.BackendDOMNodeID, text(n.Name), role)
-				}
-			}
-		}
-		if n.Ignored || !controls[role] && !focusable[n.BackendDOMNodeID] {
+	last := -1
+	for _, name := range []string{"Skip to", "nearmargin", "API reference", "Coordinates", "Depth", "Motion model", "Look up", "Map", "Map tools", "Zoom in", "Clear", "Map of plate", "Legend", "Plates", "Hotspots", "Answer", "Slab section", "Cross-section", "Save the figure", "curl command", "Copy the curl"} {
+		at := slices.IndexFunc(names[last+1:], func(n string) bool { return strings.HasPrefix(n, name) })
+		if at < 0 {
+			t.Errorf("%q does not follow in %q", name, names)
 			continue
 		}
-		seen[role]++
-		if strings.TrimSpace(text(n.Name)) == "" {
-			t.Errorf("a %s (node %d) has no name", role, n.BackendDOMNodeID)
-		}
-		names = append(names, text(n.Name))
+		last += 1 + at
 	}
-	if seen["button"] < 8 || seen["textbox"] < 2 || seen["checkbox"] != 5 || seen["image"] < 1 || len(focusable) < 18 {
-		t.Errorf("the tree holds %v, %d of them focusable", seen, len(focusable))
+	// the order in which Tab goes is that in which the page is read
+	if got := eval[[]string](b, `[...document.querySelectorAll("[tabindex]")].filter((e) => e.tabIndex > 0).map((e) => e.id)`); len(got) > 0 {
+		t.Errorf("%q jump the queue", got)
 	}
-	at := func(name string) int {
-		for i, n := range names {
-			if strings.HasPrefix(n, name) {
-				return i
-			}
-		}
-		t.Errorf("there is no %q among %q", name, names)
-		return -1
-	}
-	if !(at("Coordinates") < at("Look up") && at("Look up") < at("Zoom in") && at("Zoom in") < at("Map of plate") && at("Map of plate") < at("Answer") && at("Answer") < at("Copy the curl")) {
-		t.Errorf("the order is %q", names)
-	}
+
+	drop(b, "two.csv", []byte("name,lon,lat\na,1,2\nb,-71.6,-33.5\n"))
+	b.heading("two.csv")
+	controls(b)
+	drop(b, "columns.csv", []byte("name,x,y\nGorkha,85.3,27.7\n"))
+	b.wait("the columns are asked for", `document.querySelector("#lon-column")`)
+	controls(b)
+	drop(b, "box.json", []byte(`{"type":"Polygon","coordinates":[[[-75,-40],[-65,-40],[-65,-30],[-75,-30],[-75,-40]]]}`))
+	b.heading("Area")
+	controls(b)
 }
 
 // TestServiceGoesAway: what is shown stays, the page says what is the matter, and

@@ -172,6 +172,7 @@ export class Globe {
       const across = Math.sqrt(sr) * scale, xy = at && across > 70 * this.k && this.project(at);
       if (!xy) continue;
       const half = name.length * 4.2 * this.k;
+      if (xy[0] < half || xy[0] > this.w - half) continue; // it would be cut off
       if (boxes.some((b) => Math.abs(b.x - xy[0]) < b.half + half && Math.abs(b.y - xy[1]) < 16 * this.k)) continue;
       boxes.push({ x: xy[0], y: xy[1], half });
       this.text(name.toUpperCase(), xy[0], xy[1], 10.5, this.p.soft, "600");
