@@ -4,10 +4,12 @@ import (
 	"context"
 	"encoding/base64"
 	"fmt"
+	"net/http"
 	"os"
 	"path/filepath"
 	"slices"
 	"strings"
+	"sync/atomic"
 	"testing"
 
 	"github.com/chromedp/cdproto/cdp"
@@ -353,7 +355,42 @@ func TestServiceGoesAway(t *testing.T) {
 	h.start()
 	b.heading("Collision zone")
 	b.wait("the note is gone", `document.querySelector("#offline").hidden`)
+
+	// a file and a layer that were asked for meanwhile come too
+	h.stop()
+	drop(b, "two.csv", []byte("name,lon,lat\na,1,2\nb,-71.6,-33.5\n"))
+	b.run(chromedp.Click("#legend summary"), chromedp.Click("#legend input[name=zones]"))
+	b.wait("the page says so", `!document.querySelector("#offline").hidden`)
+	h.start()
+	b.heading("two.csv")
+	b.wait("the zones", `performance.getEntriesByType("resource").some((e) => e.name.endsWith("/v1/zones") && e.responseStatus === 200)`)
 	b.quiet("ERR_CONNECTION_REFUSED", "ERR_CONNECTION_RESET", "ERR_EMPTY_RESPONSE", "ERR_CONNECTION_CLOSED")
+}
+
+// TestServiceIsBusy: a service that refuses for the moment is not called unreachable, and
+// the question is asked again.
+func TestServiceIsBusy(t *testing.T) {
+	var refused atomic.Int32
+	ready := newHandler(t)
+	h := &host{t: t, addr: "127.0.0.1:0", path: "/"}
+	h.handler = http.HandlerFunc(func(w http.ResponseWriter, r *http.Request) {
+		if r.URL.Path != "/v1/point" || refused.Add(1) > 1 {
+			ready.ServeHTTP(w, r)
+			return
+		}
+		w.Header().Set("Content-Type", "application/problem+json")
+		w.WriteHeader(http.StatusServiceUnavailable)
+		_, _ = w.Write([]byte(`{"type":"about:blank","title":"Too much is asked","status":503,"errors":[{"parameter":"path","detail":"later"}]}`))
+	})
+	h.start()
+	t.Cleanup(h.stop)
+	b := newTab(t, h, 1280, 800, false, "#site=-71.6,-33.5")
+	b.wait("the page says why", `document.querySelector("#offline").textContent.startsWith("Too much is asked.") || document.querySelector("#panel h2").textContent === "Forearc"`)
+	b.heading("Forearc")
+	if refused.Load() < 2 {
+		t.Error("nothing was refused")
+	}
+	b.quiet("status of 503")
 }
 
 // TestEditionChanges: when answers come from another edition, the map follows.

@@ -125,6 +125,20 @@ function takeArea(polygon, name) {
   return askArea(polygon, name);
 }
 
+// withoutSeam returns the lines of a polygon without those along ±180°, where it was cut.
+function withoutSeam(g) {
+  const lines = [];
+  for (const ring of g.type === "Polygon" ? g.coordinates : g.coordinates.flat()) {
+    let line = [];
+    ring.forEach((p, i) => {
+      if (i && Math.abs(p[0]) === 180 && Math.abs(ring[i - 1][0]) === 180) line = [];
+      line.push(p);
+      if (line.length === 2) lines.push(line);
+    });
+  }
+  return { type: "MultiLineString", coordinates: lines };
+}
+
 // drawing an area
 function setDrawing(on) {
   drawing = on;
@@ -247,7 +261,7 @@ function fit(sites) {
   if (!c.every(Number.isFinite)) return;
   const reach = Math.max(...sites.map((s) => d3.geoDistance(c, [s.lon, s.lat])));
   if (reach > 1.3 && !globe.flat) setFlat(true);
-  globe.look({ lon: c[0], lat: c[1], zoom: globe.flat ? 1 : Math.min(12, 0.9 / Math.max(Math.sin(Math.min(reach, 1.5)), 0.05)) });
+  globe.look({ lon: c[0], lat: c[1], zoom: Math.max(1, Math.min(12, 0.9 * globe.zoomFor(reach))) });
 }
 
 // columnForm asks which columns of the table are meant.
@@ -317,7 +331,7 @@ async function needLayer(name) {
   if (!layerPaths[name] || globe.data[name]) return;
   try {
     const got = (await askJSON(layerPaths[name])).features;
-    globe.data[name] = name === "zones" ? got.map((f) => ({ ...f, geometry: smallSide(f.geometry) })) : got;
+    globe.data[name] = name === "zones" ? got.map((f) => ({ ...f, geometry: smallSide(f.geometry), outline: withoutSeam(f.geometry) })) : got;
     globe.redraw();
   } catch (e) {
     if (e instanceof HeldError) later(name, () => needLayer(name));

@@ -44,6 +44,13 @@ export class Globe {
     return p.precision(0.5).clipExtent([[-20, -20], [w + 20, h + 20]]);
   }
 
+  // zoomFor returns the zoom at which places within a distance of the middle, in radians,
+  // fill the map.
+  zoomFor(reach) {
+    if (!this.flat) return 1 / Math.max(Math.sin(Math.min(reach, Math.PI / 2)), 0.01);
+    return (0.46 * Math.min(this.w, this.h)) / Math.min(this.w / 5.5, this.h / 2.7) / Math.max(reach, 0.01);
+  }
+
   project(at) {
     const p = this.projection();
     if (!this.flat && d3.geoDistance(at, [this.view.lon, this.view.lat]) > Math.PI / 2) return null;
@@ -98,7 +105,7 @@ export class Globe {
     if (layers.has("plates")) this.drawPlates(fill);
     if (layers.has("zones") && data.zones) {
       const hatch = this.hatch();
-      for (const f of data.zones) { fill(f, hatch, 0.55); stroke(f, p.zone, 0.9 * k, [2 * k, 2 * k]); }
+      for (const f of data.zones) { fill(f, hatch, 0.55); stroke(f.outline, p.zone, 0.9 * k, [2 * k, 2 * k]); }
     }
     if (layers.has("slabs") && data.slabs) for (const f of data.slabs) stroke(f, p.slab, (f.properties.depth_km % 100 === 0 ? 1.3 : 0.7) * k);
     if (layers.has("boundaries")) this.drawBoundaries(projection);
