@@ -119,7 +119,7 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	t.Cleanup(stopBrowser)
 	ctx, closeTab := chromedp.NewContext(actx)
 	t.Cleanup(closeTab)
-	ctx, cancel := context.WithTimeout(ctx, 2*time.Minute)
+	ctx, cancel := context.WithTimeout(ctx, 5*time.Minute)
 	t.Cleanup(cancel)
 	b := &tab{t: t, ctx: ctx, url: "http://" + h.addr, path: h.path}
 	chromedp.ListenTarget(ctx, b.listen)
@@ -184,16 +184,26 @@ func (b *tab) run(actions ...chromedp.Action) {
 	}
 }
 
-// wait waits until an expression is true in the page.
+// wait waits until an expression is true in the page, across navigations too.
 func (b *tab) wait(what, expression string) {
 	b.t.Helper()
-	var ok bool
-	err := chromedp.Run(b.ctx, chromedp.Poll("Boolean("+expression+")", &ok, chromedp.WithPollingTimeout(30*time.Second), chromedp.WithPollingInterval(50*time.Millisecond)))
-	if err != nil {
-		b.mu.Lock()
-		defer b.mu.Unlock()
-		b.t.Fatalf("%s: %v; the panel says %.200q; console %q", what, err, textOf(b, "#panel"), b.console)
+	var err error
+	for end := time.Now().Add(time.Minute); time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
+		ctx, cancel := context.WithTimeout(b.ctx, 10*time.Second)
+		var ok bool
+		err = chromedp.Run(ctx, chromedp.Evaluate("Boolean("+expression+")", &ok)) // fails while a page is left for another
+		cancel()
+		if ok && err == nil {
+			return
+		}
 	}
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	var seen string
+	ctx, cancel := context.WithTimeout(b.ctx, 10*time.Second)
+	defer cancel()
+	seenErr := chromedp.Run(ctx, chromedp.Evaluate("location.pathname + ', ' + document.readyState + ', the panel says ' + document.querySelector('#panel')?.innerText", &seen))
+	b.t.Fatalf("%s: not so (%v); the page: %.300q (%v); console %q", what, err, seen, seenErr, b.console)
 }
 
 // eval evaluates an expression that gives a T; a promise is awaited.

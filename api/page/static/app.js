@@ -70,10 +70,12 @@ function pointQuery() {
 
 function askPoint() {
   const query = pointQuery();
+  globe.shown.wanted = [state.site.lon, state.site.lat];
+  globe.redraw();
   return attempt(words(state.site.lon, state.site.lat), async (signal) => {
     const a = await askJSON(`v1/point?${query}`, { signal });
     globe.shown.answer = a;
-    globe.shown.area = null;
+    globe.shown.area = globe.shown.wanted = null;
     showAnswer(panel, a, query, backToSites());
     document.title = `${labelName(a.setting.label)}, ${words(a.site.lon, a.site.lat, 2)} · nearmargin`;
     say(`${labelName(a.setting.label)} on the ${a.plate.name} plate, confidence ${a.setting.confidence}`);
@@ -103,7 +105,7 @@ function askArea(polygon, name) {
   return attempt(name || "Area", async (signal) => {
     const a = await askJSON("v1/area", { method: "POST", headers: { "Content-Type": "application/geo+json" }, body: JSON.stringify(polygon), signal });
     showArea(panel, a, polygon, name, [write(state).lacks]);
-    globe.shown.answer = null;
+    globe.shown.answer = globe.shown.wanted = null;
     globe.shown.area = smallSide(polygon);
     document.title = "Area · nearmargin";
     say(`Area answered: ${Math.round(a.area_km2)} square kilometres`);
@@ -237,7 +239,7 @@ async function take(file, columns) {
 
 // listSites shows the sites of the file, on the map and in the panel.
 function listSites() {
-  globe.shown.answer = globe.shown.area = null;
+  globe.shown.answer = globe.shown.wanted = globe.shown.area = null;
   globe.shown.sites = drawn(shownFile.got);
   showSites(panel, shownFile.name, shownFile.got, globe.p.dark, [...shownFile.notes, write(state).lacks], (s) => goTo(s.lon, s.lat, true));
   document.title = `${shownFile.name} · nearmargin`;
@@ -399,7 +401,7 @@ function show(s) {
   byId("depth").value = s.depth;
   byId("motion").value = s.motion;
   setLayers(s.layers);
-  globe.shown.answer = globe.shown.area = null;
+  globe.shown.answer = globe.shown.wanted = globe.shown.area = null;
   if (!s.sites) {
     shownFile = null;
     globe.shown.sites = [];

@@ -13,7 +13,7 @@ export class Globe {
     this.flat = false;
     this.layers = new Set();
     this.data = { land: null, fine: null, boundaries: [], plates: [], slabs: null, zones: null, hotspots: null };
-    this.shown = { answer: null, area: null, draft: [], sites: [] };
+    this.shown = { answer: null, wanted: null, area: null, draft: [], sites: [] };
     this.cross = false;
     this.onmove = () => {};
     this.p = palette();

@@ -39,6 +39,7 @@ export function drawAnswer(globe, projection, path) {
     for (const at of shown.draft) dot(globe, at, 4, p.mark);
   }
   drawSites(globe);
+  if (shown.wanted) dot(globe, shown.wanted, 7, p.halo, p.soft, 2);
   const a = shown.answer;
   if (!a) return;
   const site = [a.site.lon, a.site.lat];
