@@ -1,6 +1,10 @@
 package api
 
 import (
+	"net/http"
+	"path"
+	"strings"
+
 	"github.com/labstack/echo/v4"
 
 	"nearmargin/api/wire"
@@ -38,8 +42,17 @@ func (s *Server) hotspots(c echo.Context) error {
 	return s.layer(c, func(m *setting.Model) []byte { return wire.AppendHotspots(nil, m.Hotspots()) })
 }
 
-// page sends a page or a file that one loads. Its query is the page's own affair.
+// page sends a page or a file that one loads. Its query is the page's own affair. At the
+// base path itself, without a slash, it leads to that with one, from where the addresses
+// within the page are counted.
 func (s *Server) page(c echo.Context) error {
+	if at, query, asked := strings.Cut(c.Request().RequestURI, "?"); s.cfg.BasePath != "" && at == s.cfg.BasePath {
+		to := path.Base(at) + "/"
+		if asked {
+			to += "?" + query
+		}
+		return c.Redirect(http.StatusPermanentRedirect, to)
+	}
 	f, ok := s.site.Find(c.Request().URL.Path)
 	if !ok {
 		return echo.ErrNotFound

@@ -3,8 +3,11 @@ package api
 import (
 	"compress/gzip"
 	"io"
+	"math"
 	"net/http"
 	"net/http/httptest"
+	"regexp"
+	"strconv"
 	"testing"
 
 	"nearmargin/setting/builtin"
@@ -37,6 +40,34 @@ func TestLayersMatchTheirSchema(t *testing.T) {
 		}
 		if w := made.get(c.path + "?model=none"); w.Code != http.StatusNotFound {
 			t.Errorf("%s of a model that is not loaded: status %d", c.path, w.Code)
+		}
+	}
+}
+
+// TestLayersStayOnTheirSide: nothing of the built-in model is drawn around the globe the
+// wrong way (RFC 7946, section 3.1.9).
+func TestLayersStayOnTheirSide(t *testing.T) {
+	b, err := builtin.Load()
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := newRig(t, b.Model)
+	for _, path := range []string{"/v1/boundaries", "/v1/slabs", "/v1/zones", "/v1/boundaries?bbox=170,-50,-170,0"} {
+		positions := regexp.MustCompile(`\[(-?[\d.]+),(-?[\d.]+)\](,)?`).FindAllStringSubmatch(r.get(path).Body.String(), -1)
+		if len(positions) < 100 {
+			t.Errorf("%s: %d positions", path, len(positions))
+		}
+		var before float64
+		within := false // a line that goes on
+		for _, p := range positions {
+			lon, err := strconv.ParseFloat(p[1], 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if within && math.Abs(lon-before) > 180 {
+				t.Errorf("%s: from longitude %g to %g, %s", path, before, lon, p[2])
+			}
+			before, within = lon, p[3] != ""
 		}
 	}
 }

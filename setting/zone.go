@@ -69,6 +69,10 @@ func NewZone(z Zone) (*Zone, error) {
 	return &z, nil
 }
 
+// Parts returns the outline as polygons cut at ±180°; see
+// [sphere.CutRingsAtAntimeridian].
+func (z *Zone) Parts() [][][]sphere.LonLat { return sphere.CutRingsAtAntimeridian(z.Rings) }
+
 // Hotspot is a place of volcanism within a plate that no boundary explains.
 type Hotspot struct {
 	Name   string

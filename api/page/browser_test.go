@@ -37,13 +37,17 @@ func (o only) Find(ref string) (*setting.Model, bool) {
 }
 
 // newHandler returns the whole service on the built-in model.
-func newHandler(t *testing.T) http.Handler {
+func newHandler(t *testing.T, with ...func(*api.Config)) http.Handler {
 	t.Helper()
 	b, err := builtin.Load()
 	if err != nil {
 		t.Fatal(err)
 	}
-	return api.New(api.Config{Models: only{b.Model}, Log: slog.New(slog.NewTextHandler(io.Discard, nil)), Registry: prometheus.NewRegistry(), Version: "0", Commit: "0"})
+	c := api.Config{Models: only{b.Model}, Log: slog.New(slog.NewTextHandler(io.Discard, nil)), Registry: prometheus.NewRegistry(), Version: "0", Commit: "0"}
+	for _, f := range with {
+		f(&c)
+	}
+	return api.New(c)
 }
 
 // host is a service that can go away and come back at the same address.
@@ -51,11 +55,12 @@ type host struct {
 	t       *testing.T
 	handler http.Handler
 	addr    string
+	path    string // of the page, with a slash at the end
 	srv     *http.Server
 }
 
-func newHost(t *testing.T) *host {
-	h := &host{t: t, handler: newHandler(t), addr: "127.0.0.1:0"}
+func newHost(t *testing.T, with ...func(*api.Config)) *host {
+	h := &host{t: t, handler: newHandler(t, with...), addr: "127.0.0.1:0", path: "/"}
 	h.start()
 	t.Cleanup(h.stop)
 	return h
@@ -76,9 +81,10 @@ func (h *host) stop() { _ = h.srv.Close() }
 
 // tab is one tab of a browser, with what its console said.
 type tab struct {
-	t   *testing.T
-	ctx context.Context
-	url string
+	t    *testing.T
+	ctx  context.Context
+	url  string // of the host
+	path string
 
 	mu      sync.Mutex
 	console []string
@@ -113,9 +119,9 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	t.Cleanup(stopBrowser)
 	ctx, closeTab := chromedp.NewContext(actx)
 	t.Cleanup(closeTab)
-	ctx, cancel := context.WithTimeout(ctx, 2*time.Minute)
+	ctx, cancel := context.WithTimeout(ctx, 5*time.Minute)
 	t.Cleanup(cancel)
-	b := &tab{t: t, ctx: ctx, url: "http://" + h.addr}
+	b := &tab{t: t, ctx: ctx, url: "http://" + h.addr, path: h.path}
 	chromedp.ListenTarget(ctx, b.listen)
 	scheme := "light"
 	if dark {
@@ -126,7 +132,7 @@ func newTab(t *testing.T, h *host, width, height int, dark bool, fragment string
 	}
 	b.run(log.Enable(), emulation.SetDeviceMetricsOverride(int64(width), int64(height), 1, width < 500),
 		emulation.SetEmulatedMedia().WithFeatures([]*emulation.MediaFeature{{Name: "prefers-color-scheme", Value: scheme}}),
-		chromedp.Navigate(b.url+"/"+fragment))
+		chromedp.Navigate(b.url+b.path+fragment))
 	if !strings.HasPrefix(fragment, noScript) && fragment != referencePage {
 		b.wait("the page is ready", `document.documentElement.dataset.ready === "yes"`)
 	}
@@ -181,16 +187,26 @@ func (b *tab) run(actions ...chromedp.Action) {
 	}
 }
 
-// wait waits until an expression is true in the page.
+// wait waits until an expression is true in the page, across navigations too.
 func (b *tab) wait(what, expression string) {
 	b.t.Helper()
-	var ok bool
-	err := chromedp.Run(b.ctx, chromedp.Poll("Boolean("+expression+")", &ok, chromedp.WithPollingTimeout(30*time.Second), chromedp.WithPollingInterval(50*time.Millisecond)))
-	if err != nil {
-		b.mu.Lock()
-		defer b.mu.Unlock()
-		b.t.Fatalf("%s: %v; the panel says %.200q; console %q", what, err, textOf(b, "#panel"), b.console)
+	var err error
+	for end := time.Now().Add(time.Minute); time.Now().Before(end); time.Sleep(50 * time.Millisecond) {
+		ctx, cancel := context.WithTimeout(b.ctx, 10*time.Second)
+		var ok bool
+		err = chromedp.Run(ctx, chromedp.Evaluate("Boolean("+expression+")", &ok)) // fails while a page is left for another
+		cancel()
+		if ok && err == nil {
+			return
+		}
 	}
+	b.mu.Lock()
+	defer b.mu.Unlock()
+	var seen string
+	ctx, cancel := context.WithTimeout(b.ctx, 10*time.Second)
+	defer cancel()
+	seenErr := chromedp.Run(ctx, chromedp.Evaluate("location.pathname + ', ' + document.readyState + ', the panel says ' + document.querySelector('#panel')?.innerText", &seen))
+	b.t.Fatalf("%s: not so (%v); the page: %.300q (%v); console %q", what, err, seen, seenErr, b.console)
 }
 
 // eval evaluates an expression that gives a T; a promise is awaited.

@@ -49,6 +49,29 @@ func TestCoordinatesAsPasted(t *testing.T) {
 		{"s1\t142.5\t39.3\tgranite", 142.5, 39.3, true},
 		{"s1;142,5;39,3", 142.5, 39.3, true},
 		{"0, 359.5", -0.5, 0, true},
+		{"33°27'S, 70°40'W", -70.666667, -33.45, true},
+		{"33°27’S 70°40’W", -70.666667, -33.45, true},
+		{"33°27'36''S 70°40'12''W", -70.67, -33.46, true},
+		{"33:27:36 S, 70:40:12 W", -70.67, -33.46, true},
+		{"-33:27:36 -70:40:12", -70.67, -33.46, false},
+		{"-33.45,-70.66", -70.66, -33.45, false},
+		{"-33.45, -70.66, 520", -70.66, -33.45, false},
+		{"Well A-1;35.2;139.5;12", 139.5, 35.2, true},
+		{"SE-3;35.2;139.5", 139.5, 35.2, true},
+		{"NW-1,35.2,139.5", 139.5, 35.2, true},
+		{"E12;35.2;39.5", 39.5, 35.2, false},
+		{"Well A-1;33°27'S;70°40'W;12", -70.666667, -33.45, true},
+		{"Well A-1\t70.67 W\t33.45 S\t12.5", -70.67, -33.45, true},
+		{"Lat 33.5S Long 71.6W", -71.6, -33.5, true},
+		{"lat: 33°30'S, lon: 71°36'W, depth 10", -71.6, -33.5, true},
+		{"33.5 S, -71.6", -71.6, -33.5, true},
+		{"-33.5 71.6W", -71.6, -33.5, true},
+		{"90 N 0 E", 0, 90, true},
+		{"90 S, 0 W", 0, -90, true},
+		{"-90, 12", 12, -90, false},
+		{"0 N 180 W", -180, 0, true},
+		{"0, 180", 180, 0, true},
+		{"-16.5, -179.99", -179.99, -16.5, true},
 	} {
 		got := eval[read](b, fmt.Sprintf(`import("/assets/coords.js").then((m) => m.parse(%q))`, c.text))
 		if got.Error != "" || math.Abs(got.Lon-c.lon) > 1e-6 || math.Abs(got.Lat-c.lat) > 1e-6 || got.Sure != c.sure {
@@ -58,7 +81,8 @@ func TestCoordinatesAsPasted(t *testing.T) {
 			t.Errorf("%q: the other reading is %+v", c.text, *got.Swapped)
 		}
 	}
-	for _, text := range []string{"", "here", "12", "1 2 3", "91 N 10 E", "10 N 20 S", "33°75' S 71° W", "100, 200"} {
+	for _, text := range []string{"", "here", "12", "1 2 3", "91 N 10 E", "10 N 20 S", "33°75' S 71° W", "100, 200", "33.5 S, 71.6", "33.5, 71.6 W", "33.5 S 71.6 O", "lat 33.5 W lon 71.6 S",
+		"Easting 345678 Northing 6298765"} {
 		if got := eval[read](b, fmt.Sprintf(`import("/assets/coords.js").then((m) => m.parse(%q))`, text)); got.Error == "" {
 			t.Errorf("%q: read as %+v, want an error", text, got)
 		}

@@ -58,7 +58,7 @@ func TestPolicyHasNoExceptions(t *testing.T) {
 		html := w.Body.String()
 		for what, re := range map[string]string{
 			"a script within": `<script(?:\s[^>]*)?>[^<]`, "a style within": `<style`, "a style attribute": `\sstyle=`,
-			"a handler attribute": `\son[a-z]+=`, "another host": `(?:src|href)="(?:https?:)?//`,
+			"a handler attribute": `\son[a-z]+=`, "another host": `(?:src|href)="(?:https?:)?//`, "an address that no base path suits": `(?:src|href)="/`,
 		} {
 			if m := regexp.MustCompile(re).FindString(html); m != "" {
 				t.Errorf("%s holds %s: %q", path, what, m)
@@ -105,8 +105,8 @@ func TestEntityTags(t *testing.T) {
 
 // firstPaint are the files that the page needs before it gives an answer.
 var firstPaint = []string{"/", "/assets/style.css", "/assets/vendor/d3.min.js", "/assets/vendor/topojson-client.min.js", "/assets/app.js", "/assets/answer.js",
-	"/assets/area.js", "/assets/coords.js", "/assets/dom.js", "/assets/files.js", "/assets/globe.js", "/assets/input.js", "/assets/overlay.js",
-	"/assets/plates.js", "/assets/service.js", "/assets/state.js", "/assets/symbols.js", "/assets/vendor/land-110m.json"}
+	"/assets/area.js", "/assets/codec.js", "/assets/coords.js", "/assets/dom.js", "/assets/files.js", "/assets/globe.js", "/assets/input.js", "/assets/legend.js", "/assets/overlay.js",
+	"/assets/paste.js", "/assets/plates.js", "/assets/service.js", "/assets/state.js", "/assets/symbols.js", "/assets/token.js", "/assets/vendor/land-110m.json"}
 
 // TestPageWeight keeps the README's statement of the page's weight true.
 func TestPageWeight(t *testing.T) {

@@ -37,25 +37,7 @@ func appendFeature(b []byte, bd *boundary.Boundary) []byte {
 	p.str("source_status", string(bd.SourceStatus()))
 	f.b = p.close()
 	f.key("geometry")
-	parts := bd.Parts()
-	g := open(f.b)
-	if len(parts) == 1 {
-		g.str("type", "LineString")
-		g.key("coordinates")
-		g.b = appendLine(g.b, parts[0])
-	} else {
-		g.str("type", "MultiLineString")
-		g.key("coordinates")
-		g.b = append(g.b, '[')
-		for i, part := range parts {
-			if i > 0 {
-				g.b = append(g.b, ',')
-			}
-			g.b = appendLine(g.b, part)
-		}
-		g.b = append(g.b, ']')
-	}
-	f.b = g.close()
+	f.b = appendLines(f.b, bd.Parts())
 	return f.close()
 }
 

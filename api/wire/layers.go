@@ -7,11 +7,11 @@ import (
 )
 
 // AppendSlabContours appends a GeoJSON FeatureCollection of the depth contours of
-// slabs, one feature a contour. Slabs that are not built from contours give none.
+// slabs, one feature a line. Those of gridded slabs are worked out; see [slab.Isolines].
 func AppendSlabContours(b []byte, slabs []*slab.Slab) []byte {
 	c := openCollection(b)
 	for _, s := range slabs {
-		for _, k := range slab.Contours(s.Surface) {
+		for _, k := range slab.Isolines(s.Surface) {
 			c.next()
 			f := open(c.b)
 			f.str("type", "Feature")
@@ -34,7 +34,7 @@ func AppendSlabContours(b []byte, slabs []*slab.Slab) []byte {
 }
 
 // AppendZones appends a GeoJSON FeatureCollection of zones of diffuse deformation.
-// A ring that crosses the antimeridian is not cut there.
+// They are cut at the antimeridian.
 func AppendZones(b []byte, zones []*setting.Zone) []byte {
 	c := openCollection(b)
 	for _, z := range zones {
@@ -48,11 +48,7 @@ func AppendZones(b []byte, zones []*setting.Zone) []byte {
 		p.str("source", z.Source)
 		f.b = p.close()
 		f.key("geometry")
-		g := open(f.b)
-		g.str("type", "Polygon")
-		g.key("coordinates")
-		g.b = appendEach(g.b, z.Rings)
-		f.b = g.close()
+		f.b = appendPolygons(f.b, z.Parts())
 		c.b = f.close()
 	}
 	return c.close()
@@ -113,6 +109,28 @@ func appendLines(b []byte, parts [][]sphere.LonLat) []byte {
 		g.key("coordinates")
 		g.b = appendEach(g.b, parts)
 	}
+	return g.close()
+}
+
+// appendPolygons appends a Polygon of one part, or a MultiPolygon.
+func appendPolygons(b []byte, parts [][][]sphere.LonLat) []byte {
+	g := open(b)
+	if len(parts) == 1 {
+		g.str("type", "Polygon")
+		g.key("coordinates")
+		g.b = appendEach(g.b, parts[0])
+		return g.close()
+	}
+	g.str("type", "MultiPolygon")
+	g.key("coordinates")
+	g.b = append(g.b, '[')
+	for i, rings := range parts {
+		if i > 0 {
+			g.b = append(g.b, ',')
+		}
+		g.b = appendEach(g.b, rings)
+	}
+	g.b = append(g.b, ']')
 	return g.close()
 }
 

@@ -3,6 +3,7 @@ package slab
 import (
 	"fmt"
 	"math"
+	"sync"
 
 	"nearmargin/setting/sphere"
 )
@@ -58,6 +59,9 @@ type gridSurface struct {
 	centre sphere.Vec
 	cosCap float64
 	capRad float64
+
+	isoOnce sync.Once
+	iso     []Contour // of Isolines
 }
 
 type rimNode struct {

@@ -1,6 +1,7 @@
 // The answer for a place, in plain language and in numbers.
 import { el, fill, copyButton } from "./dom.js";
 import { words } from "./coords.js";
+import { ask, curl, HeldError, later } from "./service.js";
 import { labelWords, typeWords } from "./symbols.js";
 
 const compass = ["north", "north-northeast", "northeast", "east-northeast", "east", "east-southeast", "southeast", "south-southeast",
@@ -18,6 +19,9 @@ export function num(x, sigma, unit, decimals = 1) {
 }
 
 export const km = (x) => (x >= 100 ? Math.round(x).toLocaleString("en") : x.toFixed(1));
+
+// kmSigma writes a distance with its σ, both to the same decimals.
+const kmSigma = (x, sigma) => `${km(x)} ± ${x >= 100 ? Math.max(1, Math.round(sigma)) : sigma.toFixed(1)} km`;
 
 export const labelName = (label) => (labelWords[label] || [label])[0];
 
@@ -51,7 +55,7 @@ const kind = (type) => `${/^[aeiou]/.test(typeWords[type]) ? "an" : "a"} ${typeW
 
 function nearestSentence(b, lead) {
   if (b.distance_km === 0 || b.azimuth_deg === null) return `${lead} ${the(b.name)}, ${kind(b.type)}, on which it lies.`;
-  return `${lead} ${the(b.name)}, ${kind(b.type)}, ${km(b.distance_km)} ± ${km(b.distance_sigma_km)} km to the ${direction(b.azimuth_deg)} (${Math.round(b.azimuth_deg)}°).`;
+  return `${lead} ${the(b.name)}, ${kind(b.type)}, ${kmSigma(b.distance_km, b.distance_sigma_km)} to the ${direction(b.azimuth_deg)} (${Math.round(b.azimuth_deg)}°).`;
 }
 
 const confidence = {
@@ -107,9 +111,9 @@ function slabSentence(s) {
   return parts.join(" ");
 }
 
-// showAnswer fills the panel. query is that of /v1/point, sectionQuery that of the
-// figure.
-export function showAnswer(panel, a, query, sectionQuery) {
+// showAnswer fills the panel. query is that of /v1/point and of the figure; back leads
+// to where the site was chosen, null for none.
+export function showAnswer(panel, a, query, back) {
   const [name, gloss] = labelWords[a.setting.label] || [a.setting.label, ""];
   const near = a.nearest_boundary, control = a.controlling_boundary;
   const same = control && control.id === near.id;
@@ -118,6 +122,7 @@ export function showAnswer(panel, a, query, sectionQuery) {
   fill(
     panel,
     el("h2", {}, name),
+    back,
     el("p", { class: "place" }, words(a.site.lon, a.site.lat) + depth),
     el("p", { class: "lead" }, `On the ${a.plate.name} plate${side}, ${gloss}.`),
     el("p", {}, nearestSentence(near, "The nearest plate boundary is"), " ", motionSentence(near.relative_motion)),
@@ -129,7 +134,7 @@ export function showAnswer(panel, a, query, sectionQuery) {
     ...list("It could also be", a.setting.alternatives.map((x) => `${labelName(x.label)} (${x.family}): ${x.reason}`)),
     ...list("Cautions", a.notes.map((n) => n.detail)),
     ...list("Slabs below", a.slabs.map(slabSentence)),
-    ...section(a, sectionQuery),
+    ...section(a, query),
     el("h3", {}, `Nearest boundary: ${near.name}`), table("Nearest boundary", boundaryRows(near)),
     ...(control && !same ? [el("h3", {}, `Controlling boundary: ${control.name}`), table("Controlling boundary", boundaryRows(control))] : []),
     ...list("Also near", [
@@ -138,19 +143,48 @@ export function showAnswer(panel, a, query, sectionQuery) {
       a.diffuse_zone && `Inside the zone ${a.diffuse_zone.name} (${a.diffuse_zone.kind})`,
       a.hotspot && `Hotspot ${a.hotspot.name}, ${km(a.hotspot.distance_km)} km`,
     ].filter(Boolean)),
-    ...command(`curl -s '${location.origin}/v1/point?${query}'`),
+    ...command(curl(`v1/point?${query}`)),
     edition(a.model),
   );
   panel.scrollTop = 0;
 }
 
+let saved = ""; // the address of the figure that can be saved
+
+// section shows the figure of the slab below. It is fetched, so that it comes with the
+// token, and stands in a tree of its own, so that its styles need no exception from the
+// page's policy and touch nothing else.
 function section(a, query) {
   if (!a.slabs.length) return [];
-  const url = `/v1/section.svg?${query}`, figure = el("figure", { tabindex: "0", role: "region", "aria-label": "Slab section" });
-  const img = el("img", { src: url, alt: `Cross-section of ${a.slabs[0].name} through the site: its top lies at ${num(a.slabs[0].depth_km, a.slabs[0].sigma_km, "km")} below the site.` });
-  const title = el("h3", {}, "Slab section");
-  const open = el("p", {}, el("a", { href: url }, "Open the figure by itself"));
-  img.addEventListener("error", () => { title.remove(); figure.remove(); open.remove(); });
-  figure.append(img);
-  return [title, figure, open];
+  const s = a.slabs[0];
+  const drawing = el("div", { role: "img", "aria-label": `Cross-section of ${s.name} through the site: its top lies at ${num(s.depth_km, s.sigma_km, "km")} below the site.` });
+  const figure = el("figure", { tabindex: "0", role: "region", "aria-label": "Slab section" }, drawing);
+  const parts = [el("h3", {}, "Slab section"), figure, el("p", {}, el("a", { download: "section.svg" }, "Save the figure"))];
+  const path = `v1/section.svg?${query}`;
+  const load = async () => {
+    try {
+      const svg = await ask(path);
+      if (!figure.isConnected) return;
+      draw(drawing, svg);
+      URL.revokeObjectURL(saved);
+      saved = URL.createObjectURL(new Blob([svg], { type: "image/svg+xml" }));
+      parts[2].firstChild.href = saved;
+    } catch (e) {
+      if (e instanceof HeldError) later("section", load);
+      else for (const p of parts) p.remove();
+    }
+  };
+  load();
+  return parts;
+}
+
+// draw puts a figure into a tree of its own. Its styles are taken out of the text, since
+// a browser refuses them where it parses them.
+function draw(host, text) {
+  const sheet = new CSSStyleSheet(), tree = host.shadowRoot || host.attachShadow({ mode: "open" });
+  let rules = "svg { display: block; width: 100%; min-width: 34rem; height: auto; } ";
+  const bare = text.replace(/<style[^>]*>([^<]*)<\/style>/g, (_, css) => { rules += css; return ""; });
+  sheet.replaceSync(rules);
+  tree.adoptedStyleSheets = [sheet];
+  tree.replaceChildren(document.importNode(new DOMParser().parseFromString(bare, "image/svg+xml").documentElement, true));
 }

@@ -1,30 +1,35 @@
 // The map page: what happens when.
 import { parse, words } from "./coords.js";
 import { byId, el, say } from "./dom.js";
-import { askJSON, AwayError, ProblemError, whenBack } from "./service.js";
+import { askJSON, HeldError, later, ProblemError } from "./service.js";
 import { Globe } from "./globe.js";
 import { attach } from "./input.js";
+import { drawLegend } from "./legend.js";
 import { platePolygons } from "./plates.js";
-import { palette, strokeLines, types } from "./symbols.js";
 import { labelName, setPlateNames, showAnswer } from "./answer.js";
 import { showArea } from "./area.js";
-import { readFile, showSites } from "./files.js";
-import { read, write } from "./state.js";
+import { drawn, headerOf, readFile, ringsOf, showSites } from "./files.js";
+import { areaOf, defaults, read, sitesOf, write } from "./state.js";
+import { table } from "./paste.js";
+import { attachToken } from "./token.js";
 
 const globe = new Globe(byId("globe"));
-const panel = byId("panel");
-let state = read(location.hash);
+const panel = byId("panel"), note = byId("read");
+const welcome = [...panel.childNodes];
+const title = document.title;
+let state = read(location.hash, history.state);
 let drawing = false;
 let running = null; // the request for the answer that is wanted last
-let lastFile = null;
+let lastFile = null; // {name, text} of the file taken last
+let shownFile = null; // {name, got, packed, notes} of the file whose sites the map shows
 
 // settle writes the state into the address.
 let settleTimer = 0;
 function settle(push) {
   clearTimeout(settleTimer);
-  const hash = write(state);
-  if (hash === location.hash) return;
-  history[push ? "pushState" : "replaceState"](null, "", hash);
+  const { hash, kept } = write(state);
+  if (push && hash !== location.hash) history.pushState(kept, "", hash);
+  else history.replaceState(kept, "", hash);
 }
 
 globe.onmove = () => {
@@ -42,7 +47,7 @@ async function attempt(name, f) {
     await f(mine.signal);
   } catch (e) {
     if (e.name === "AbortError" || running !== mine) return;
-    if (e instanceof AwayError) whenBack("answer", () => attempt(name, f));
+    if (e instanceof HeldError) later("answer", () => attempt(name, f));
     else fault(name, e);
   } finally {
     if (running === mine) panel.removeAttribute("aria-busy");
@@ -65,11 +70,13 @@ function pointQuery() {
 
 function askPoint() {
   const query = pointQuery();
+  globe.shown.wanted = [state.site.lon, state.site.lat];
+  globe.redraw();
   return attempt(words(state.site.lon, state.site.lat), async (signal) => {
-    const a = await askJSON(`/v1/point?${query}`, { signal });
+    const a = await askJSON(`v1/point?${query}`, { signal });
     globe.shown.answer = a;
-    globe.shown.area = null;
-    showAnswer(panel, a, query, query);
+    globe.shown.area = globe.shown.wanted = null;
+    showAnswer(panel, a, query, backToSites());
     document.title = `${labelName(a.setting.label)}, ${words(a.site.lon, a.site.lat, 2)} · nearmargin`;
     say(`${labelName(a.setting.label)} on the ${a.plate.name} plate, confidence ${a.setting.confidence}`);
     globe.redraw();
@@ -86,15 +93,24 @@ function goTo(lon, lat, travel) {
   return askPoint();
 }
 
-function askArea(polygon) {
-  return attempt("Area", async (signal) => {
-    const a = await askJSON("/v1/area", { method: "POST", headers: { "Content-Type": "application/geo+json" }, body: JSON.stringify(polygon), signal });
-    showArea(panel, a, polygon);
-    globe.shown.answer = null;
+// backToSites leads from the answer for one site to the list it was chosen from.
+function backToSites() {
+  if (!shownFile) return null;
+  const n = shownFile.got.sites.length;
+  return el("p", {}, el("button", { type: "button", onclick: () => { state.site = null; settle(true); listSites(); } }, `All ${n} sites of ${shownFile.name}`));
+}
+
+// askArea answers for an area; name is that of the file it came from, "" if drawn.
+function askArea(polygon, name) {
+  return attempt(name || "Area", async (signal) => {
+    const a = await askJSON("v1/area", { method: "POST", headers: { "Content-Type": "application/geo+json" }, body: JSON.stringify(polygon), signal });
+    showArea(panel, a, polygon, name, [write(state).lacks]);
+    globe.shown.answer = globe.shown.wanted = null;
     globe.shown.area = smallSide(polygon);
     document.title = "Area · nearmargin";
     say(`Area answered: ${Math.round(a.area_km2)} square kilometres`);
     globe.redraw();
+    follow(a);
   });
 }
 
@@ -104,12 +120,25 @@ function smallSide(g) {
   return g.type === "Polygon" ? { type: g.type, coordinates: turn(g.coordinates) } : { type: g.type, coordinates: g.coordinates.map(turn) };
 }
 
-function areaOf(ring) {
-  const polygon = { type: "Polygon", coordinates: [[...ring, ring[0]]] };
+function takeArea(polygon, name) {
   state.site = null;
-  state.area = ring;
+  state.area = ringsOf(polygon) && areaOf(polygon);
   settle(true);
-  return askArea(polygon);
+  return askArea(polygon, name);
+}
+
+// withoutSeam returns the lines of a polygon without those along ±180°, where it was cut.
+function withoutSeam(g) {
+  const lines = [];
+  for (const ring of g.type === "Polygon" ? g.coordinates : g.coordinates.flat()) {
+    let line = [];
+    ring.forEach((p, i) => {
+      if (i && Math.abs(p[0]) === 180 && Math.abs(ring[i - 1][0]) === 180) line = [];
+      line.push(p);
+      if (line.length === 2) lines.push(line);
+    });
+  }
+  return { type: "MultiLineString", coordinates: lines };
 }
 
 // drawing an area
@@ -119,7 +148,7 @@ function setDrawing(on) {
   byId("draw").setAttribute("aria-pressed", String(on));
   byId("finish").hidden = true;
   say(on ? "Drawing: choose the corners of the area on the map, then finish" : "");
-  byId("read").textContent = on ? "Choose the corners on the map; Finish area, or F, closes it. Backspace takes the last corner back." : "";
+  note.textContent = on ? "Choose the corners on the map; Finish area, or F, closes it. Backspace takes the last corner back." : "";
   globe.redraw();
 }
 
@@ -134,7 +163,7 @@ function finish() {
   if (!drawing || globe.shown.draft.length < 3) return;
   const ring = globe.shown.draft.filter((p, i, all) => !i || p.join() !== all[i - 1].join());
   setDrawing(false);
-  if (ring.length >= 3) areaOf(ring);
+  if (ring.length >= 3) takeArea({ type: "Polygon", coordinates: [[...ring, ring[0]]] }, "");
 }
 
 attach(globe, {
@@ -143,7 +172,7 @@ attach(globe, {
     if (!at) return say("That is beyond the edge of the map");
     if (drawing) return corner(at);
     const hit = globe.shown.sites.findLast((s) => s.xy && Math.hypot(s.xy[0] - x, s.xy[1] - y) < 9 * globe.k);
-    byId("read").textContent = "";
+    note.textContent = "";
     if (hit) goTo(hit.lon, hit.lat);
     else goTo(at[0], at[1]);
   },
@@ -154,7 +183,6 @@ attach(globe, {
 
 // the form
 function lookUp(from) {
-  const note = byId("read");
   if (from.error) { note.textContent = `Not understood: ${from.error}.`; byId("where").setAttribute("aria-invalid", "true"); return; }
   byId("where").removeAttribute("aria-invalid");
   note.textContent = `Read as ${words(from.lon, from.lat)}${from.sure ? "." : " (latitude first)."}`;
@@ -168,7 +196,7 @@ byId("search").addEventListener("submit", (e) => {
   e.preventDefault();
   const depth = byId("depth").value.trim().replace(",", ".").replace(/\s*km$/, "");
   if (depth !== "" && !Number.isFinite(Number(depth))) {
-    byId("read").textContent = `Depth: "${depth}" is not a number of kilometres, such as 25.`;
+    note.textContent = `Depth: "${depth}" is not a number of kilometres, such as 25.`;
     return;
   }
   state.depth = depth;
@@ -177,26 +205,54 @@ byId("search").addEventListener("submit", (e) => {
   lookUp(parse(byId("where").value));
 });
 
+byId("where").addEventListener("paste", (e) => {
+  const rows = table(e.clipboardData?.getData("text/plain") || "");
+  if (!rows) return;
+  e.preventDefault();
+  note.textContent = "";
+  take({ name: "pasted.csv", text: rows.text, note: rows.note });
+});
+
 // files
 async function take(file, columns) {
   const text = file.text ?? (await file.blob.text());
   lastFile = { name: file.name, text };
-  return attempt(file.name, async () => {
+  return attempt(file.name, async (signal) => {
     say(`Reading ${file.name}`);
     const got = await readFile(file.name, text, columns);
+    if (signal.aborted) return;
     if (got.polygon) {
-      const ring = got.polygon.type === "Polygon" && got.polygon.coordinates.length === 1 ? got.polygon.coordinates[0] : null;
-      fit(got.polygon.coordinates.flat(got.polygon.type === "Polygon" ? 1 : 2).map(([lon, lat]) => ({ lon, lat })));
-      if (ring && ring.length <= 60) return areaOf(ring.slice(0, -1).map((p) => p.slice(0, 2)));
-      return askArea(got.polygon);
+      const rings = ringsOf(got.polygon);
+      if (rings) fit(rings.flat().map(([lon, lat]) => ({ lon, lat })));
+      takeArea(got.polygon, file.name);
+      return;
     }
-    globe.shown.answer = globe.shown.area = null;
-    globe.shown.sites = showSites(panel, file.name, got, globe.p.dark, (s) => goTo(s.lon, s.lat, true));
     state.site = state.area = null;
-    fit(globe.shown.sites);
+    state.sites = got.sites.length ? sitesOf(file.name, got.sites) : null;
+    shownFile = { name: file.name, got, packed: state.sites?.packed, notes: [file.note] };
     settle(true);
+    listSites();
+    fit(globe.shown.sites);
     say(`${got.sites.length} sites answered`);
   });
+}
+
+// listSites shows the sites of the file, on the map and in the panel.
+function listSites() {
+  globe.shown.answer = globe.shown.wanted = globe.shown.area = null;
+  globe.shown.sites = drawn(shownFile.got);
+  showSites(panel, shownFile.name, shownFile.got, globe.p.dark, [...shownFile.notes, write(state).lacks], (s) => goTo(s.lon, s.lat, true));
+  document.title = `${shownFile.name} · nearmargin`;
+  globe.redraw();
+}
+
+// bringSites asks again for the sites of a link, or takes those that are here.
+async function bringSites(sites) {
+  if (shownFile?.packed === sites.packed) return;
+  const cell = (s) => `"${s.replace(/"/g, '""')}"`;
+  const text = "name,lon,lat\n" + sites.list.map((s) => `${cell(s.name)},${s.lon},${s.lat}\n`).join("");
+  const got = await readFile(sites.name, text);
+  shownFile = { name: sites.name, got, packed: sites.packed, notes: ["Read from the link: its places, to a metre, and names; other columns are in the file alone."] };
 }
 
 // fit turns the map to where the sites are.
@@ -207,12 +263,15 @@ function fit(sites) {
   if (!c.every(Number.isFinite)) return;
   const reach = Math.max(...sites.map((s) => d3.geoDistance(c, [s.lon, s.lat])));
   if (reach > 1.3 && !globe.flat) setFlat(true);
-  globe.look({ lon: c[0], lat: c[1], zoom: globe.flat ? 1 : Math.min(12, 0.9 / Math.max(Math.sin(Math.min(reach, 1.5)), 0.05)) });
+  globe.look({ lon: c[0], lat: c[1], zoom: Math.max(1, Math.min(12, 0.9 * globe.zoomFor(reach))) });
 }
 
+// columnForm asks which columns of the table are meant.
 function columnForm() {
-  const lon = el("input", { type: "text", id: "lon-column" }), lat = el("input", { type: "text", id: "lat-column" });
-  return el("form", { onsubmit: (e) => { e.preventDefault(); take(lastFile, { lon: lon.value, lat: lat.value }); } },
+  const names = headerOf(lastFile.text);
+  const choice = (id) => el("select", { id }, names.map((n) => el("option", { value: n }, n)));
+  const lon = choice("lon-column"), lat = choice("lat-column");
+  return el("form", { "aria-label": "Columns", onsubmit: (e) => { e.preventDefault(); take(lastFile, { lon: lon.value, lat: lat.value }); } },
     el("p", {}, el("label", { for: "lon-column" }, "Column of longitudes "), lon), el("p", {}, el("label", { for: "lat-column" }, "Column of latitudes "), lat),
     el("button", { type: "submit" }, "Try again"));
 }
@@ -250,25 +309,35 @@ byId("draw").addEventListener("click", () => setDrawing(!drawing));
 byId("finish").addEventListener("click", finish);
 byId("share").addEventListener("click", async () => {
   settle(false);
+  const holds = write(state).lacks || "It shows what you see.";
   try {
     await navigator.clipboard.writeText(location.href);
-    byId("read").textContent = "The link is copied; it shows what you see.";
+    note.textContent = `The link is copied. ${holds}`;
   } catch {
-    byId("read").textContent = "Copy the link from the address bar; it shows what you see.";
+    note.textContent = `Copy the link from the address bar. ${holds}`;
   }
 });
 
+byId("clear").addEventListener("click", () => {
+  setDrawing(false);
+  byId("where").value = "";
+  show({ ...defaults(), view: state.view, flat: state.flat, layers: state.layers, motion: state.motion });
+  settle(true);
+  note.textContent = "";
+  say("Cleared");
+});
+
 // layers
-const layerPaths = { slabs: "/v1/slabs", zones: "/v1/zones", hotspots: "/v1/hotspots" };
+const layerPaths = { slabs: "v1/slabs", zones: "v1/zones", hotspots: "v1/hotspots" };
 async function needLayer(name) {
   if (!layerPaths[name] || globe.data[name]) return;
   try {
     const got = (await askJSON(layerPaths[name])).features;
-    globe.data[name] = name === "zones" ? got.map((f) => ({ ...f, geometry: smallSide(f.geometry) })) : got;
+    globe.data[name] = name === "zones" ? got.map((f) => ({ ...f, geometry: smallSide(f.geometry), outline: withoutSeam(f.geometry) })) : got;
     globe.redraw();
   } catch (e) {
-    if (e instanceof AwayError) whenBack(name, () => needLayer(name));
-    else throw e;
+    if (e instanceof HeldError) later(name, () => needLayer(name));
+    else note.textContent = `The layer ${name} could not be read: ${e.message}.`;
   }
 }
 function setLayers(layers) {
@@ -282,43 +351,7 @@ byId("legend").addEventListener("change", () => {
   settle(false);
 });
 
-// key draws the legend's samples.
-function key() {
-  const p = palette();
-  byId("key").replaceChildren(...Object.values(types).map((look) => {
-    const c = el("canvas", { width: 104, height: 36, "aria-hidden": "true" }), ctx = c.getContext("2d");
-    ctx.scale(2, 2);
-    strokeLines(ctx, [[[2, 11], [50, 11]]], look, p, 1, 1);
-    return el("li", {}, c, look.name);
-  }), ...otherKeys(p));
-}
-
-// otherKeys draws the samples of what is not a boundary.
-function otherKeys(p) {
-  const line = (ctx, colour, width, dash = []) => {
-    ctx.strokeStyle = colour;
-    ctx.lineWidth = width;
-    ctx.setLineDash(dash);
-    ctx.beginPath();
-    ctx.moveTo(2, 9);
-    ctx.lineTo(50, 9);
-    ctx.stroke();
-  };
-  return [
-    ["Slab contour, km", (ctx) => line(ctx, p.slab, 1)],
-    ["Diffuse zone (hatched)", (ctx) => line(ctx, p.zone, 1, [2, 2])],
-    ["Hotspot", (ctx) => { ctx.fillStyle = p.hot; ctx.beginPath(); ctx.arc(26, 9, 3.2, 0, 7); ctx.fill(); }],
-    ["To the nearest boundary", (ctx) => line(ctx, p.mark, 1.8)],
-    ["To the controlling one", (ctx) => line(ctx, p.mark, 1.8, [7, 4])],
-    ["Motion of the plate across, 1σ at its tip", (ctx) => { line(ctx, p.ink, 2); ctx.fillStyle = p.ink; ctx.beginPath(); ctx.moveTo(51, 9); ctx.lineTo(43, 5); ctx.lineTo(43, 13); ctx.fill(); }],
-  ].map(([name, draw]) => {
-    const c = el("canvas", { width: 104, height: 36, "aria-hidden": "true" }), ctx = c.getContext("2d");
-    ctx.scale(2, 2);
-    draw(ctx);
-    return el("li", {}, c, name);
-  });
-}
-matchMedia("(prefers-color-scheme: dark)").addEventListener("change", key);
+matchMedia("(prefers-color-scheme: dark)").addEventListener("change", drawLegend);
 
 // loading: each part by itself, so that one which is slow or lost holds up no other
 async function load(name, f) {
@@ -326,19 +359,19 @@ async function load(name, f) {
     await f();
     globe.redraw();
   } catch (e) {
-    if (e instanceof AwayError) whenBack(name, () => load(name, f));
-    else throw e;
+    if (e instanceof HeldError) later(name, () => load(name, f));
+    else note.textContent = `The ${name} could not be read: ${e.message}.`;
   }
 }
 const landOf = async (file) => {
-  const t = await askJSON(`/assets/vendor/${file}`);
+  const t = await askJSON(`assets/vendor/${file}`);
   return topojson.feature(t, t.objects.land);
 };
 
 // loadModel fetches what the map shows of the active model.
 let shownModel = "";
 async function loadModel() {
-  const [lines, plates, models] = await Promise.all([askJSON("/v1/boundaries"), askJSON("/v1/plates"), askJSON("/v1/models")]);
+  const [lines, plates, models] = await Promise.all([askJSON("v1/boundaries"), askJSON("v1/plates"), askJSON("v1/models")]);
   const names = new Map(plates.plates.map((p) => [p.code, p.name]));
   setPlateNames(names);
   shownModel = plates.model.sha256;
@@ -347,7 +380,7 @@ async function loadModel() {
   const active = models.models.find((m) => m.active);
   byId("motion").replaceChildren(el("option", { value: "" }, active.default_motion), ...active.motion_models.filter((m) => m.name !== active.default_motion).map((m) => el("option", { value: m.name }, m.name)));
   byId("motion").value = state.motion;
-  if (globe.shown.answer && state.site) showAnswer(panel, globe.shown.answer, pointQuery(), pointQuery()); // with the plates' names
+  if (globe.shown.answer && state.site) showAnswer(panel, globe.shown.answer, pointQuery(), backToSites()); // with the plates' names
 }
 
 // follow fetches the model again where an answer comes from another edition than the
@@ -368,17 +401,41 @@ function show(s) {
   byId("depth").value = s.depth;
   byId("motion").value = s.motion;
   setLayers(s.layers);
-  if (s.site) askPoint();
-  else if (s.area) askArea({ type: "Polygon", coordinates: [[...s.area, s.area[0]]] });
-  else { globe.shown.answer = globe.shown.area = null; globe.redraw(); }
+  globe.shown.answer = globe.shown.wanted = globe.shown.area = null;
+  if (!s.sites) {
+    shownFile = null;
+    globe.shown.sites = [];
+  }
+  globe.redraw();
+  if (s.sites) return attempt(s.sites.name, () => bring(s));
+  return answer(s);
+}
+
+// bring shows the sites of a state, then the answer that is asked for beside them.
+async function bring(s) {
+  await bringSites(s.sites);
+  if (state !== s) return;
+  listSites();
+  answer(s);
+}
+
+function answer(s) {
+  if (s.site) return askPoint();
+  if (s.area) return askArea(s.area.geometry, "");
+  if (s.sites) return null;
+  running?.abort();
+  panel.removeAttribute("aria-busy");
+  panel.replaceChildren(...welcome);
+  document.title = title;
+  return null;
 }
 
 async function start() {
-  key();
+  attachToken();
+  drawLegend();
   byId("legend").open = matchMedia("(min-width: 1700px)").matches;
   show(state);
-  addEventListener("popstate", () => show(read(location.hash)));
-  addEventListener("hashchange", () => { if (location.hash !== write(state)) show(read(location.hash)); });
+  addEventListener("popstate", (e) => show(read(location.hash, e.state)));
   await Promise.all([
     load("land", async () => { globe.data.land = await landOf("land-110m.json"); }),
     load("model", loadModel),

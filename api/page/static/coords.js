@@ -38,30 +38,61 @@ function decimalCommas(text) {
   return m && !/\d\.\d/.test(text) ? text.replace(/(\d),(\d)/g, "$1.$2") : text;
 }
 
+const hemisphere = /[NSEW]/g;
+const otherLetters = /[A-DF-MO-RT-VX-Z]/;
+const isLat = (c) => c === "N" || c === "S";
+
+// signed gives an angle the sign of its hemisphere.
+const signed = (v, c) => (v >= 0 && (c === "S" || c === "W") ? -v : v);
+
+// angle reads one angle: {deg, letter, decimal}, or null. letter is that of its
+// hemisphere, "" where it has none; the sign is in deg.
+function angle(text) {
+  const t = text.trim().toUpperCase().replace(/\b(NORTH|SOUTH|EAST|WEST)\b/g, (w) => w[0]);
+  const letters = t.match(hemisphere) || [];
+  if (letters.length > 1 || otherLetters.test(t) || !/^[NSEW]?[^NSEW]*\d[^NSEW]*[NSEW]?$/.test(t)) return null;
+  const deg = degrees((t.match(numberForm) || []).map(toNumber));
+  const letter = letters[0] || "";
+  return Number.isNaN(deg) ? null : { deg: signed(deg, letter), letter, decimal: t.includes(".") };
+}
+
 function withHemispheres(text) {
   const t = text.toUpperCase().replace(/\b(NORTH|SOUTH|EAST|WEST)\b/g, (w) => w[0]);
-  const letters = t.match(/[NSEW]/g) || [];
-  if (letters.length !== 2 || /[A-DF-MO-RT-VX-Z]/.test(t)) return null;
-  const isLat = (c) => c === "N" || c === "S";
+  if (/\d[\s°º'"]*O\b/.test(t)) return { error: "O may be west (oeste, ouest) or east (Ost); write W or E" };
+  const letters = t.match(hemisphere) || [];
+  if (otherLetters.test(t)) return null;
+  if (letters.length === 1) return oneHemisphere(t);
+  if (letters.length !== 2) return null;
   if (isLat(letters[0]) === isLat(letters[1])) return { error: `both are ${isLat(letters[0]) ? "latitudes" : "longitudes"}; write 33.5 S 71.6 W` };
   const first = t.search(/[NSEW0-9]/);
   const before = /[NSEW]/.test(t[first]); // S33.5 W71.6 rather than 33.5S 71.6W
   const cut = before ? t.slice(first + 1).search(/[NSEW]/) + first + 1 : t.search(/[NSEW]/) + 1;
   const values = [t.slice(0, cut), t.slice(cut)].map((s) => degrees((s.match(numberForm) || []).map(toNumber)));
   if (values.some(Number.isNaN)) return { error: "degrees, minutes and seconds do not fit: minutes and seconds lie within 0 and 60" };
-  const signed = values.map((v, i) => {
-    const c = letters[i];
-    return v < 0 ? v : c === "S" || c === "W" ? -v : v;
-  });
-  return isLat(letters[0]) ? found(signed[1], signed[0], true) : found(signed[0], signed[1], true);
+  const [a, b] = values.map((v, i) => signed(v, letters[i]));
+  return isLat(letters[0]) ? found(b, a, true) : found(a, b, true);
 }
 
+// oneHemisphere reads two angles of which one has a letter; the other must have a
+// sign, since nothing else says its hemisphere.
+function oneHemisphere(t) {
+  const parts = (t.match(new RegExp(angleForm, "g")) || []).map(angle);
+  if (parts.length !== 2 || parts.includes(null)) return null;
+  const [a, b] = parts[0].letter ? parts : [parts[1], parts[0]];
+  if (!/[-+\u2212]/.test(t)) return { error: `the hemisphere of ${b.deg} is missing; write 33.5 S 71.6 W` };
+  return isLat(a.letter) ? found(b.deg, a.deg, true) : found(a.deg, b.deg, true);
+}
+
+// angleForm is an angle after its name.
+const angleForm = "[NSEW]?\\s*[-+\\u2212]?\\d*\\.?\\d+(?:\\s*[°º:]\\s*(?:\\d+(?:\\.\\d+)?\\s*['\\u2032:]?\\s*(?:\\d+(?:\\.\\d+)?\\s*[\"\\u2033]?\\s*)?)?)?\\s*(?:[NSEW]\\b)?";
+
 function named(text) {
-  const get = (names) => {
-    const m = text.match(new RegExp(`\\b(?:${names})\\b["']?\\s*[:=]?\\s*([-+\u2212]?\\d*\\.?\\d+)`, "i"));
-    return m ? toNumber(m[1]) : null;
+  const get = (names, letters) => {
+    const m = text.match(new RegExp(`\\b(?:${names})\\b["']?\\s*[:=]?\\s*(${angleForm})`, "i"));
+    const a = m && angle(m[1]);
+    return a && (!a.letter || letters.includes(a.letter)) ? a.deg : null;
   };
-  const lat = get("latitude|lat|y"), lon = get("longitude|long|lon|lng|x");
+  const lat = get("latitude|lat|y", "NS"), lon = get("longitude|long|lon|lng|x", "EW");
   return lat === null || lon === null ? null : found(lon, lat, true);
 }
 
@@ -75,20 +106,19 @@ function ordered(text) {
   return m ? found(toNumber(m[2]), toNumber(m[1]), true) : null;
 }
 
-// row reads a row of a table: the first two neighbouring cells that can be a
-// position, of which at least one has a decimal.
+// row reads a row of a table: the first two neighbouring cells with the letters of
+// hemispheres, else the first two numbers that can be a position, of which at least one
+// has a decimal.
 function row(text) {
   const sep = ["\t", ";", "|", ","].find((s) => text.split(s).length > 2);
   if (!sep) return null;
-  const cells = text.split(sep).map((c) => c.trim().replace(/^"(.*)"$/, "$1"));
-  const whole = cells.map((c) => (sep !== "," ? c.replace(/^([-+]?\d+),(\d+)$/, "$1.$2") : c));
-  const is = (c) => /^[-+\u2212]?(\d+\.?\d*|\.\d+)$/.test(c);
-  for (let i = 0; i + 1 < whole.length; i++) {
-    const a = toNumber(whole[i]), b = toNumber(whole[i + 1]);
-    if (!is(whole[i]) || !is(whole[i + 1]) || !(whole[i] + whole[i + 1]).includes(".")) continue;
-    if (inRange(b, a) || inRange(a, b)) return pair(a, b);
-  }
-  return null;
+  const cells = text.split(sep).map((c) => c.trim().replace(/^"(.*)"$/, "$1"))
+    .map((c) => angle(sep !== "," ? c.replace(/^([-+]?\d+),(\d+)/, "$1.$2") : c));
+  const pairs = cells.slice(1).map((b, i) => [cells[i], b]).filter(([a, b]) => a && b);
+  const sure = pairs.find(([a, b]) => a.letter && b.letter && isLat(a.letter) !== isLat(b.letter));
+  if (sure) return isLat(sure[0].letter) ? found(sure[1].deg, sure[0].deg, true) : found(sure[0].deg, sure[1].deg, true);
+  const bare = pairs.find(([a, b]) => !a.letter && !b.letter && (a.decimal || b.decimal) && (inRange(b.deg, a.deg) || inRange(a.deg, b.deg)));
+  return bare ? pair(bare[0].deg, bare[1].deg) : null;
 }
 
 function pair(a, b) {
@@ -97,12 +127,14 @@ function pair(a, b) {
 }
 
 export function parse(input) {
-  const text = decimalCommas(input.trim().replace(/[\u00a0\u2009\u202f]/g, " "));
+  const text = decimalCommas(input.trim().replace(/[\u00a0\u2009\u202f]/g, " ").replace(/''|\u201d/g, '"').replace(/\u2019/g, "'"));
   if (!/\d/.test(text)) return { error: "there is no number in it; write latitude and longitude, such as 33.5 S 71.6 W" };
-  const direct = ordered(text) || named(text) || withHemispheres(text) || row(text);
+  const letters = withHemispheres(text);
+  const direct = ordered(text) || named(text) || (letters?.error && row(text)) || letters || row(text);
   if (direct) return direct;
+  if (/\d[\s°º'\u2032"\u2033]*[NSEW]\b/.test(text)) return { error: "the letters of the hemispheres do not fit the numbers; write 33.5 S 71.6 W" };
   const n = (text.match(numberForm) || []).map(toNumber);
-  if (/[°º'\u2032"\u2033]/.test(text) && n.length % 2 === 0 && n.length > 2) {
+  if (/[°º'\u2032"\u2033:]/.test(text) && n.length % 2 === 0 && n.length > 2) {
     const half = n.length / 2;
     const a = degrees(n.slice(0, half)), b = degrees(n.slice(half));
     if (!Number.isNaN(a) && !Number.isNaN(b)) return pair(a, b);

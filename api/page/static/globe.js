@@ -13,7 +13,7 @@ export class Globe {
     this.flat = false;
     this.layers = new Set();
     this.data = { land: null, fine: null, boundaries: [], plates: [], slabs: null, zones: null, hotspots: null };
-    this.shown = { answer: null, area: null, draft: [], sites: [] };
+    this.shown = { answer: null, wanted: null, area: null, draft: [], sites: [] };
     this.cross = false;
     this.onmove = () => {};
     this.p = palette();
@@ -42,6 +42,13 @@ export class Globe {
     p.translate([w / 2, h / 2]);
     if (this.flat) p.center([0, zoom <= 1 ? 0 : lat]);
     return p.precision(0.5).clipExtent([[-20, -20], [w + 20, h + 20]]);
+  }
+
+  // zoomFor returns the zoom at which places within a distance of the middle, in radians,
+  // fill the map.
+  zoomFor(reach) {
+    if (!this.flat) return 1 / Math.max(Math.sin(Math.min(reach, Math.PI / 2)), 0.01);
+    return (0.46 * Math.min(this.w, this.h)) / Math.min(this.w / 5.5, this.h / 2.7) / Math.max(reach, 0.01);
   }
 
   project(at) {
@@ -98,7 +105,7 @@ export class Globe {
     if (layers.has("plates")) this.drawPlates(fill);
     if (layers.has("zones") && data.zones) {
       const hatch = this.hatch();
-      for (const f of data.zones) { fill(f, hatch, 0.55); stroke(f, p.zone, 0.9 * k, [2 * k, 2 * k]); }
+      for (const f of data.zones) { fill(f, hatch, 0.55); stroke(f.outline, p.zone, 0.9 * k, [2 * k, 2 * k]); }
     }
     if (layers.has("slabs") && data.slabs) for (const f of data.slabs) stroke(f, p.slab, (f.properties.depth_km % 100 === 0 ? 1.3 : 0.7) * k);
     if (layers.has("boundaries")) this.drawBoundaries(projection);
@@ -172,6 +179,7 @@ export class Globe {
       const across = Math.sqrt(sr) * scale, xy = at && across > 70 * this.k && this.project(at);
       if (!xy) continue;
       const half = name.length * 4.2 * this.k;
+      if (xy[0] < half || xy[0] > this.w - half) continue; // it would be cut off
       if (boxes.some((b) => Math.abs(b.x - xy[0]) < b.half + half && Math.abs(b.y - xy[1]) < 16 * this.k)) continue;
       boxes.push({ x: xy[0], y: xy[1], half });
       this.text(name.toUpperCase(), xy[0], xy[1], 10.5, this.p.soft, "600");

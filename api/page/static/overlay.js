@@ -39,6 +39,7 @@ export function drawAnswer(globe, projection, path) {
     for (const at of shown.draft) dot(globe, at, 4, p.mark);
   }
   drawSites(globe);
+  if (shown.wanted) dot(globe, shown.wanted, 7, p.halo, p.soft, 2);
   const a = shown.answer;
   if (!a) return;
   const site = [a.site.lon, a.site.lat];
@@ -66,14 +67,15 @@ function dot(globe, at, r, fill, ring, width) {
 
 // velocity draws the motion of the plate across a boundary, seen from the site's
 // plate: an arrow, and at its tip 1σ: the half-axis along it is σ of the rate, that
-// across it σ of the azimuth; a bar where the latter is not known.
+// across it σ of the azimuth; a bar where the latter is not known. Where they would be too
+// small to see they are drawn larger, and the label says by how much.
 function velocity(globe, b) {
   const m = b.relative_motion, { ctx, p, k } = globe;
   if (!m) return;
   const from = globe.project(b.nearest_point), ahead = globe.project(toward(b.nearest_point, m.azimuth_deg, 0.2));
   if (!from || !ahead) return;
   const angle = Math.atan2(ahead[1] - from[1], ahead[0] - from[0]);
-  const px = 0.9 * k, len = m.rate_mm_yr * px; // px to the mm/yr
+  const px = 1.3 * k, len = m.rate_mm_yr * px; // px to the mm/yr
   const shaft = new Path2D(), head = new Path2D(), size = Math.min(9 * k, len * 0.6);
   shaft.moveTo(0, 0);
   shaft.lineTo(Math.max(len - size * 0.7, 0), 0);
@@ -81,11 +83,18 @@ function velocity(globe, b) {
   head.lineTo(len - size, -size * 0.5);
   head.lineTo(len - size, size * 0.5);
   head.closePath();
-  const error = new Path2D(), along = (m.rate_sigma_mm_yr || 0) * px;
-  const across = m.azimuth_sigma_deg === null ? null : Math.max(m.rate_mm_yr * m.azimuth_sigma_deg * rad * px, 0.5);
-  if (across !== null) error.ellipse(len, 0, Math.max(along, 0.5), across, 0, 0, 7);
-  else if (along) for (const x of [len - along, len + along]) { error.moveTo(x, -4 * k); error.lineTo(x, 4 * k); }
-  if (across === null && along) { error.moveTo(len - along, 0); error.lineTo(len + along, 0); }
+  const error = new Path2D();
+  let along = (m.rate_sigma_mm_yr || 0) * px, across = m.azimuth_sigma_deg === null ? null : m.rate_mm_yr * m.azimuth_sigma_deg * rad * px;
+  const most = Math.max(along, across || 0), larger = most > 0 ? [1, 2, 5, 10, 20].find((f) => f * most >= 3 * k) || 50 : 1;
+  along *= larger;
+  if (across !== null) {
+    across *= larger;
+    error.ellipse(len, 0, along, across, 0, 0, 2 * Math.PI);
+  } else if (along) {
+    for (const x of [len - along, len + along]) { error.moveTo(x, -4 * k); error.lineTo(x, 4 * k); }
+    error.moveTo(len - along, 0);
+    error.lineTo(len + along, 0);
+  }
   ctx.save();
   ctx.translate(from[0], from[1]);
   ctx.rotate(angle);
@@ -99,7 +108,7 @@ function velocity(globe, b) {
     ctx.stroke(error);
   }
   ctx.restore();
-  const words = `${m.rate_mm_yr.toFixed(0)}${m.rate_sigma_mm_yr === null ? "" : " ± " + m.rate_sigma_mm_yr.toFixed(1)} mm/yr`;
+  const words = `${m.rate_mm_yr.toFixed(m.rate_sigma_mm_yr === null ? 0 : 1)}${m.rate_sigma_mm_yr === null ? "" : " ± " + m.rate_sigma_mm_yr.toFixed(1)} mm/yr${larger > 1 ? `, σ drawn ×${larger}` : ""}`;
   const half = words.length * 3.6 * k, off = len + along + 8 * k; // from the tip, so that the words stand clear of it
   globe.text(words, from[0] + Math.cos(angle) * (off + half * Math.abs(Math.cos(angle))), from[1] + Math.sin(angle) * (off + half * Math.abs(Math.cos(angle)) + 4 * k), 12, p.ink, "600");
 }
