@@ -87,7 +87,7 @@ func (b *builder) addRun(which []int32) {
 	r := rodAround(rods[:len(which)])
 	b.rods = append(b.rods, r)
 	b.middles = append(b.middles, r.a.Add(r.b))
-	b.runs = append(b.runs, run{which[0], int32(len(which))})
+	b.runs = append(b.runs, run{which[0], int32(len(which))}) // #nosec G115 -- no more than runLegs
 }
 
 func (b *builder) build(at int, from, to int) {
@@ -106,7 +106,7 @@ func (b *builder) build(at int, from, to int) {
 	}
 	divide(part, b.middles, widestAxis(b.middles, part))
 	child := len(b.branches)
-	out.at = int32(child)
+	out.at = int32(child) // #nosec G115 -- indices of legs, fewer than 2^31 in any memory
 	b.branches = append(b.branches, branch{}, branch{})
 	mid := from + len(part)/2
 	b.build(child, from, mid)

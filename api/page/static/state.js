@@ -55,6 +55,7 @@ export function read(fragment, kept) {
   if (Number.isFinite(Number(q.get("depth_km") || NaN))) s.depth = q.get("depth_km");
   s.motion = q.get("motion") || "";
   const view = numbers(q.get("view") || "", 3);
+  if (s.site) s.view = { ...s.site, zoom: 6 }; // for links written by hand
   if (place(view)) s.view = { lon: view[0], lat: view[1], zoom: Math.min(Math.max(view[2], 0.6), 80) };
   s.flat = q.get("projection") === "flat";
   if (q.has("layers")) s.layers = new Set(q.get("layers").split(",").filter((l) => layerNames.includes(l)));
