@@ -1,8 +1,10 @@
 package api
 
 import (
+	"context"
 	"errors"
 	"fmt"
+	"log/slog"
 	"net/http"
 	"runtime/debug"
 	"strconv"
@@ -89,16 +91,18 @@ func (s *Server) record(c echo.Context, whole bool, took time.Duration) {
 		status = statusAborted
 	}
 	s.metrics.request(route, c.Request().Method, status, took)
-	attrs := []any{"request_id", c.Get(keyRequestID), "method", c.Request().Method, "route", route, "status", status,
-		"client", c.RealIP(), "bytes", c.Response().Size, "ms", float64(took.Microseconds()) / 1000}
+	id, _ := c.Get(keyRequestID).(string)
+	attrs := append(make([]slog.Attr, 0, 12), slog.String("request_id", id), slog.String("method", c.Request().Method),
+		slog.String("route", route), slog.String("status", status), slog.String("client", c.RealIP()),
+		slog.Int64("bytes", c.Response().Size), slog.Float64("ms", float64(took.Microseconds())/1000))
 	if id := s.traceID(c); id != "" {
-		attrs = append(attrs, "trace_id", id)
+		attrs = append(attrs, slog.String("trace_id", id))
 	}
 	if holder, ok := c.Get(keyHolder).(string); ok {
-		attrs = append(attrs, "token", holder)
+		attrs = append(attrs, slog.String("token", holder))
 	}
 	if st, ok := c.Get(keyRows).(annotate.Stats); ok {
-		attrs = append(attrs, "rows", st.Rows, "row_errors", st.Errors)
+		attrs = append(attrs, slog.Int64("rows", st.Rows), slog.Int64("row_errors", st.Errors))
 	}
-	s.cfg.Log.Info("request", attrs...)
+	s.cfg.Log.LogAttrs(context.Background(), slog.LevelInfo, "request", attrs...)
 }
