@@ -184,7 +184,7 @@ func BenchmarkIndexRatio(b *testing.B) {
 			for b.Loop() {
 				ns := rounds.Medians(11, rounds.Slice, func(int) {
 					t := newTree(n.legs, every)
-					if t.cells = n.newCells(t); len(t.cells.entries) == 0 {
+					if t.cells = n.newCells(t, t.runs()); len(t.cells.entries) == 0 {
 						b.Fatal("no entries")
 					}
 				}, func(int) {

@@ -31,12 +31,13 @@ type cellEntry struct {
 	chord  float32 // least from the cell's middle to a leg of the branch, rounded down
 }
 
-// cellsPerLeg trades the time of a search against that of building the index.
-const cellsPerLeg = 0.06
+// cellsPerRun trades the time of a search against that of building the index.
+const cellsPerRun = 0.72
 
-// newCells builds the lists over a tree that is not empty.
-func (n *Network) newCells(t *tree) *cells {
-	c := &cells{side: max(1, int(math.Sqrt(cellsPerLeg*float64(len(n.legs))/6)))}
+// newCells builds the lists over a tree that is not empty, with as many cells as
+// suit a tree of that many runs.
+func (n *Network) newCells(t *tree, runs int) *cells {
+	c := &cells{side: max(1, int(math.Sqrt(cellsPerRun*float64(runs)/6)))}
 	c.starts = append(c.starts, 0)
 	var list []cellEntry
 	last := found{leg: -1}
@@ -73,7 +74,7 @@ const branchPerCell = 1
 func (t *tree) branchesWithin(p sphere.Vec, chord, size float64, out []cellEntry) []cellEntry {
 	q, within := round32(p), float32(chord)
 	lengthSq := float32(4 * size * size)
-	var stack [64]int32
+	var stack [maxDepth]int32
 	depth := 1
 	for depth > 0 {
 		depth--

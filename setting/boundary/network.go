@@ -79,11 +79,11 @@ func (n *Network) index() {
 		of[n.legs[i].kind] = append(of[n.legs[i].kind], int32(i))
 	}
 	n.all = newTree(n.legs, every)
-	n.all.cells = n.newCells(n.all)
+	n.all.cells = n.newCells(n.all, n.all.runs())
 	for t := range of {
 		n.byType[t] = newTree(n.legs, of[t])
 		if len(of[t]) > 0 {
-			n.byType[t].cells = n.newCells(n.byType[t])
+			n.byType[t].cells = n.newCells(n.byType[t], n.all.runs())
 		}
 	}
 	n.byPlate = make([][NumTypes]*tree, len(n.plates))

@@ -131,6 +131,9 @@ func (n *Network) search(t *tree, p sphere.Vec, f filter, within reach, best *fo
 	}
 }
 
+// maxDepth is more than a tree of 2^31 legs is deep, its two halves being equal.
+const maxDepth = 32
+
 // searchFrom is search from a branch on that is not left out. It replaces the best
 // found, shortens the reach and adds to the list.
 func (n *Network) searchFrom(t *tree, at int32, p sphere.Vec, f filter, within *reach, best *found, r *rivals) {
@@ -138,7 +141,7 @@ func (n *Network) searchFrom(t *tree, at int32, p sphere.Vec, f filter, within *
 		at     int32
 		axisSq float32
 	}
-	var stack [64]pending
+	var stack [maxDepth]pending
 	q := round32(p)
 	depth := 0
 	b := &t.branches[at]
@@ -206,7 +209,7 @@ func (n *Network) searchFrom(t *tree, at int32, p sphere.Vec, f filter, within *
 // each calls visit with every leg of the tree that passes and lies in a branch or
 // strip that is not left out.
 func (n *Network) each(t *tree, f filter, leaveOut func(*capsule) bool, visit func(leg int32)) {
-	var stack [64]int32
+	var stack [maxDepth]int32
 	depth := 1
 	if len(t.branches) == 0 {
 		return

@@ -62,6 +62,9 @@ func newTree(legs []leg, which []int32) *tree {
 	return t
 }
 
+// runs is the number of leaves.
+func (t *tree) runs() int { return (len(t.branches) + 1) / 2 }
+
 // builder is a tree under construction.
 type builder struct {
 	legs     []leg
