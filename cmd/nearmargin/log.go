@@ -9,11 +9,13 @@ import (
 )
 
 const (
-	logRoom  = 1000        // lines that may wait to be written
-	logFlush = time.Second // that the last lines have at the end
+	logRoom   = 1000                  // lines that may wait to be written
+	logGather = 10 * time.Millisecond // how long a line may wait for others to be written with
+	logFlush  = time.Second           // that the last lines have at the end
 )
 
-// logWriter writes the log, a line a call, without holding up whoever logs. A full
+// logWriter writes the log, a line a call, without holding up whoever logs: lines that
+// come close together are written at once. A full
 // disk, and a reader of the log that stands still or is gone, stop no answer: lines that
 // cannot be written are counted, and their number is told when it can be.
 type logWriter struct {
@@ -52,45 +54,57 @@ func (l *logWriter) close() {
 
 func (l *logWriter) run() {
 	defer close(l.ended)
+	var text []byte
 	for {
 		select {
 		case line := <-l.lines:
-			l.put(line)
+			time.Sleep(logGather) // a send meanwhile wakes nobody
+			text = l.waiting(append(text[:0], line...))
+			l.put(text)
 		case <-l.end:
-			for range len(l.lines) {
-				l.put(<-l.lines)
-			}
+			l.put(l.waiting(text[:0]))
 			return
 		}
 	}
 }
 
-// put writes a line, and before it how many are missing.
-func (l *logWriter) put(line []byte) {
+// waiting appends the lines that wait.
+func (l *logWriter) waiting(text []byte) []byte {
+	for range len(l.lines) {
+		text = append(text, <-l.lines...)
+	}
+	return text
+}
+
+// put writes lines, and before them how many are missing.
+func (l *logWriter) put(text []byte) {
 	if n := l.lost.Load(); n > 0 {
 		var told []byte
 		if l.torn {
 			told = append(told, '\n')
 		}
 		told = fmt.Appendf(told, `{"time":%q,"level":"WARN","msg":"lines of the log were lost","lines":%d}`+"\n", time.Now().Format(time.RFC3339Nano), n)
-		if !l.whole(told) {
-			l.lost.Add(1)
+		if l.write(told) < len(told) {
+			l.lost.Add(int64(bytes.Count(text, newline)))
 			return
 		}
 		l.lost.Add(-n)
 	}
-	if !l.whole(line) {
-		l.lost.Add(1)
+	if n := l.write(text); n < len(text) {
+		l.lost.Add(int64(bytes.Count(text[n:], newline))) // the line that stands there in part as well
 	}
 }
 
-// whole writes and reports whether all of it is there.
-func (l *logWriter) whole(p []byte) bool {
+var newline = []byte("\n")
+
+// write writes what it can and returns how much that is.
+func (l *logWriter) write(p []byte) int {
 	n, err := l.w.Write(p)
-	if err != nil {
-		l.torn = l.torn || n > 0
-		return false
+	if err == nil {
+		n = len(p)
 	}
-	l.torn = false
-	return true
+	if n > 0 {
+		l.torn = p[n-1] != '\n'
+	}
+	return n
 }
