@@ -54,6 +54,9 @@ func openBatch(t *testing.T, url string) (res *http.Response, end func(error)) {
 	t.Helper()
 	in, out := io.Pipe()
 	go func() { forms[1].write(out, 3000) }()
+	// a client whose request is refused waits for the end of its body
+	late := time.AfterFunc(time.Minute, func() { out.CloseWithError(io.ErrUnexpectedEOF) })
+	defer late.Stop()
 	res = post(t.Context(), t, url, forms[1].contentType, in)
 	t.Cleanup(func() { out.CloseWithError(io.ErrUnexpectedEOF) })
 	return res, func(err error) { out.CloseWithError(err) }
@@ -191,7 +194,8 @@ func TestSlowClients(t *testing.T) {
 		}
 	})
 	t.Run("batch that lasts", func(t *testing.T) {
-		r := newLimitedRig(t, func(c *Config) { c.Limits.BatchTime = stall })
+		// long enough for the header to be out on a busy machine
+		r := newLimitedRig(t, func(c *Config) { c.Limits.BatchTime = 10 * stall })
 		srv, _ := serveRig(t, r)
 		res, _ := openBatch(t, srv.URL)
 		if _, err := io.Copy(io.Discard, res.Body); err == nil {
