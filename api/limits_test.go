@@ -183,7 +183,7 @@ func TestSlowClients(t *testing.T) {
 		}
 	})
 	t.Run("sender half way", func(t *testing.T) {
-		r := newLimitedRig(t, func(c *Config) { c.Limits.StallTime = stall })
+		r := newLimitedRig(t, func(c *Config) { c.Limits.StallTime = 10 * stall }) // the header must be out before
 		srv, _ := serveRig(t, r)
 		res, _ := openBatch(t, srv.URL)
 		if _, err := io.Copy(io.Discard, res.Body); err == nil {
