@@ -38,10 +38,10 @@ func LayOut(nodes []Node) (*Layer, error) {
 	}
 	// the step over the whole width is better known than between two rounded nodes
 	cols := math.Round((hi.Lon-lo.Lon)/step) + 1
-	rows := math.Round((hi.Lat-lo.Lat)/step) + 1
 	if mean := (hi.Lon - lo.Lon) / (cols - 1); math.Abs(mean-step) <= 0.02*step { // false where cols is 1
 		step = mean
 	}
+	rows := math.Round((hi.Lat-lo.Lat)/step) + 1
 	if !(cols >= 2) || !(rows >= 2) || cols*rows > MaxNodes {
 		return nil, fmt.Errorf("the nodes make a grid of %g by %g; want at least 2 by 2 and at most %d nodes", cols, rows, MaxNodes)
 	}
