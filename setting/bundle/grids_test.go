@@ -190,6 +190,9 @@ func FuzzGrid(f *testing.F) {
 		if len(l.Values) > 10_000 {
 			return
 		}
+		if float64(l.Cols-1)*l.Step >= 180-1e-6 {
+			return // which way round it goes is not to be told from longitudes within ±180°
+		}
 		var b strings.Builder
 		nodes := 0
 		for i, v := range l.Values {
