@@ -86,6 +86,10 @@ func TestLogOnAFullDisk(t *testing.T) {
 			}
 		}
 	}
+	waitFor(t, "the lines so far are written", func() bool {
+		raw, err := os.ReadFile(log.Name())
+		return err == nil && strings.Contains(string(raw), "/readyz")
+	})
 	ballast := fill(t, dir)
 	const unheard = 300 // more than what is left of the last page takes
 	ask(unheard)
