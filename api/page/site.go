@@ -43,7 +43,9 @@ type File struct {
 	ContentType string
 	ETag        string
 	Plain       []byte
-	Gzip        []byte // nil where compression gains nothing
+	// Gzip returns the packed form, nil where that gains nothing. It is made when it is
+	// first asked for: packing all files would take half of the program's start.
+	Gzip func() []byte
 }
 
 // newFile prepares a file. The name's ending gives its type.
@@ -54,28 +56,26 @@ func newFile(name string, body []byte) (*File, error) {
 	}
 	sum := sha256.Sum256(body)
 	f := &File{ContentType: kind, ETag: `"` + hex.EncodeToString(sum[:12]) + `"`, Plain: body}
-	var b bytes.Buffer
-	z, err := gzip.NewWriterLevel(&b, gzip.BestCompression)
-	if err != nil {
-		return nil, err
-	}
-	if _, err := z.Write(body); err != nil {
-		return nil, err
-	}
-	if err := z.Close(); err != nil {
-		return nil, err
-	}
-	if b.Len() < len(body)*9/10 {
-		f.Gzip = b.Bytes()
-	}
+	f.Gzip = sync.OnceValue(func() []byte { return packed(body) })
 	return f, nil
+}
+
+// packed returns a text in gzip's form, nil where that gains nothing.
+func packed(body []byte) []byte {
+	var b bytes.Buffer
+	z, _ := gzip.NewWriterLevel(&b, gzip.BestCompression) // the level is a constant and valid
+	_, _ = z.Write(body)                                  // a buffer takes everything
+	_ = z.Close()                                         // as above
+	if b.Len() >= len(body)*9/10 {
+		return nil
+	}
+	return b.Bytes()
 }
 
 // Site is all pages and the files that they load. It is immutable.
 type Site struct{ files map[string]*File }
 
-// staticFiles are the files of the program's own by their paths. Preparing them takes
-// half a second, so it is done once.
+// staticFiles are the files of the program's own by their paths, prepared once.
 var staticFiles = sync.OnceValues(func() (map[string]*File, error) {
 	files := map[string]*File{}
 	err := fs.WalkDir(static, "static", func(name string, d fs.DirEntry, err error) error {
@@ -125,8 +125,8 @@ func (s *Site) Weight(paths ...string) (plain, sent int) {
 		f := s.files[p]
 		plain += len(f.Plain)
 		sent += len(f.Plain)
-		if f.Gzip != nil {
-			sent += len(f.Gzip) - len(f.Plain)
+		if z := f.Gzip(); z != nil {
+			sent += len(z) - len(f.Plain)
 		}
 	}
 	return plain, sent
@@ -146,9 +146,11 @@ func (f *File) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 		return
 	}
 	body := f.Plain
-	if f.Gzip != nil && TakesGzip(r.Header.Get("Accept-Encoding")) {
-		body = f.Gzip
-		h.Set("Content-Encoding", "gzip")
+	if TakesGzip(r.Header.Get("Accept-Encoding")) {
+		if z := f.Gzip(); z != nil {
+			body = z
+			h.Set("Content-Encoding", "gzip")
+		}
 	}
 	h.Set("Content-Type", f.ContentType)
 	h.Set("Content-Length", strconv.Itoa(len(body)))
