@@ -27,6 +27,9 @@ func TestPointsBesideTenBatches(t *testing.T) {
 				_, err = io.WriteString(out, rows)
 			}
 		}()
+		// a client whose request is refused waits for the end of its body
+		late := time.AfterFunc(time.Minute, func() { out.CloseWithError(io.ErrUnexpectedEOF) })
+		defer late.Stop()
 		req, err := http.NewRequestWithContext(ctx, http.MethodPost, p.url("/v1/annotate"), in)
 		if err != nil {
 			t.Fatal(err)

@@ -124,6 +124,9 @@ var soakKinds = []soakKind{
 		in, out := io.Pipe()
 		go io.WriteString(out, s.bodies[f.name+" long"]) // never closed: only leaving ends it
 		defer in.Close()
+		// a client whose request is refused waits for the end of its body
+		late := time.AfterFunc(20*time.Second, func() { out.CloseWithError(io.ErrUnexpectedEOF) })
+		defer late.Stop()
 		res, err := s.begin(ctx, f, in)
 		if err != nil {
 			return err.Error()
@@ -302,7 +305,7 @@ func TestSoak(t *testing.T) {
 		}
 		span = max(span, min(time.Minute, length/4))
 	}
-	s := &soak{p: startProcess(t), client: &http.Client{Transport: &http.Transport{MaxIdleConnsPerHost: soakOpen}}, bodies: map[string]string{}}
+	s := &soak{p: startProcess(t, "--max-batches", "500"), client: &http.Client{Transport: &http.Transport{MaxIdleConnsPerHost: soakOpen}}, bodies: map[string]string{}}
 	for _, f := range tables {
 		s.bodies[f.name], s.bodies[f.name+" long"] = f.whole(300), f.whole(4000)
 	}
