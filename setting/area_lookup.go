@@ -251,7 +251,7 @@ func slabShare(s *slab.Slab, ds []weighted) SlabShare {
 // are nowhere near the area: the answers are the same, and found faster.
 func (l *Lookup) nearArea(a *Area) *Lookup {
 	m := *l.m
-	m.c.Slabs, m.slabGroups, m.slabCollides, m.c.Zones, m.c.Land = nil, nil, nil, nil, nil
+	m.c.Slabs, m.slabTies, m.c.Zones, m.c.Land = nil, nil, nil, nil
 	const reachKm = 200 // farther than a slab past whose rim a site lies has a say
 	for i, s := range l.m.c.Slabs {
 		if slices.ContainsFunc(a.shapes, func(shape sphere.Shape) bool {
@@ -262,8 +262,7 @@ func (l *Lookup) nearArea(a *Area) *Lookup {
 			_, within := s.Surface.Outside(centre, sphere.RadToKm(rad)+reachKm)
 			return within
 		}) {
-			m.c.Slabs, m.slabGroups = append(m.c.Slabs, s), append(m.slabGroups, l.m.slabGroups[i])
-			m.slabCollides = append(m.slabCollides, l.m.slabCollides[i])
+			m.c.Slabs, m.slabTies = append(m.c.Slabs, s), append(m.slabTies, l.m.slabTies[i])
 		}
 	}
 	for _, z := range l.m.c.Zones {

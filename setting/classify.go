@@ -55,7 +55,7 @@ type Cause struct {
 func (l *Lookup) classify(p boundary.Place, a *Answer) {
 	e := &a.scratch[0]
 	l.gather(p, a.Plate.Code, a, e)
-	e.watch = watch{on: true, siteKm: a.Site.sigmaKm()}
+	e.watch.on = true
 	v, rule := e.decide()
 	e.watch.on = false
 	a.Label, a.Family = v.label, v.label.family(e.zone)

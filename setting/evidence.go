@@ -73,8 +73,8 @@ const (
 	sideLower   side = 2
 )
 
-// gather starts the evidence for a plate at a place; siteKm is 1σ of the site. What
-// the rules compare with is looked up as they ask.
+// gather starts the evidence for a plate at a place. What the rules compare is looked
+// up as they ask, but for the slabs.
 func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) {
 	e.look, e.place, e.plate, e.sights = l, p, plate, &a.sights
 	e.near, e.leastKm = boundary.Hit{}, 0
@@ -89,7 +89,7 @@ func (l *Lookup) gather(p boundary.Place, plate string, a *Answer, e *evidence) 
 	}
 	e.limit = baseLimits
 	e.flank.known, e.trench.known = false, false
-	e.watch.on, e.watch.siteKm = false, a.Site.sigmaKm()
+	e.watch = watch{siteKm: a.Site.sigmaKm()}
 	e.zone = NoKind
 	if a.Zone != nil {
 		e.zone = a.Zone.Kind

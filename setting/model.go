@@ -41,19 +41,15 @@ type Contents struct {
 
 // Model is one edition of everything that an answer rests on.
 type Model struct {
-	c         Contents
-	network   *boundary.Network
-	plates    map[string]*Plate
-	motions   map[string]*motion.Model
-	junctions []Junction
-	hotspots  []sphere.Vec
-	// slabGroups holds, for each slab, the boundaries it goes down from, slabCollides
-	// whether one of them is continental convergence; slabOf says of which boundaries
-	// there is a slab.
-	slabGroups   []*boundary.Group
-	slabCollides []bool
-	slabOf       map[string]bool
-	maxSigmaKm   [boundary.NumTypes]float64 // the largest σ of a boundary of each type
+	c          Contents
+	network    *boundary.Network
+	plates     map[string]*Plate
+	motions    map[string]*motion.Model
+	junctions  []Junction
+	hotspots   []sphere.Vec
+	slabTies   []slabTie                  // of each slab
+	slabOf     map[string]bool            // of which boundaries there is a slab
+	maxSigmaKm [boundary.NumTypes]float64 // the largest σ of a boundary of each type
 }
 
 // NewModel checks that the parts fit together and builds a model from them.
@@ -79,6 +75,9 @@ func NewModel(c Contents) (*Model, error) {
 	var err error
 	if m.network, err = boundary.NewNetwork(c.Boundaries); err != nil {
 		return nil, err
+	}
+	for _, b := range m.network.Boundaries() {
+		m.maxSigmaKm[b.Type()] = max(m.maxSigmaKm[b.Type()], b.SigmaKm())
 	}
 	for _, code := range m.network.Plates() {
 		if m.plates[code] == nil {
@@ -109,12 +108,15 @@ func NewModel(c Contents) (*Model, error) {
 	return m, nil
 }
 
+// slabTie is what ties a slab to the network.
+type slabTie struct {
+	group    *boundary.Group // the boundaries that it goes down from
+	collides bool            // one of them is continental convergence
+}
+
 // tieSlabs ties each slab to its boundaries and plates.
 func (m *Model) tieSlabs() error {
 	m.slabOf = map[string]bool{}
-	for _, b := range m.network.Boundaries() {
-		m.maxSigmaKm[b.Type()] = max(m.maxSigmaKm[b.Type()], b.SigmaKm())
-	}
 	ids := map[string]bool{}
 	for _, s := range m.c.Slabs {
 		if ids[s.ID] {
@@ -130,14 +132,13 @@ func (m *Model) tieSlabs() error {
 		if err != nil {
 			return fmt.Errorf("slab %q: boundary_ids: %w", s.ID, err)
 		}
-		m.slabGroups = append(m.slabGroups, g)
-		m.slabCollides = append(m.slabCollides, slices.ContainsFunc(s.BoundaryIDs, func(id string) bool {
-			b, _ := m.network.Boundary(id)
-			return b.Type() == boundary.ContinentalConvergent
-		}))
+		tie := slabTie{group: g}
 		for _, id := range s.BoundaryIDs {
 			m.slabOf[id] = true
+			b, _ := m.network.Boundary(id) // the group has it
+			tie.collides = tie.collides || b.Type() == boundary.ContinentalConvergent
 		}
+		m.slabTies = append(m.slabTies, tie)
 	}
 	return nil
 }

@@ -233,7 +233,7 @@ func (e *evidence) nearOwnTrench() bool {
 // collides reports whether a slab goes down from continental convergence near the
 // site: it is as well a collision zone.
 func (e *evidence) collides(i int) bool {
-	return e.look.m.slabCollides[e.slabs[i].index] && e.trenchWithin(i, limitCollisionUpper) && e.slabs[i].trench.Boundary.Type() == boundary.ContinentalConvergent
+	return e.look.m.slabTies[e.slabs[i].index].collides && e.trenchWithin(i, limitCollisionUpper) && e.slabs[i].trench.Boundary.Type() == boundary.ContinentalConvergent
 }
 
 // minTrenchSquare is the sine of the smallest angle between a trench and the line

@@ -88,7 +88,7 @@ func (m *Model) slabIndex(s *slab.Slab) int {
 }
 
 func (l *Lookup) newCut(p boundary.Place, index int, outKm, dipDeg float64) *cut {
-	c := &cut{slab: l.m.c.Slabs[index], network: l.m.network, group: l.m.slabGroups[index], place: p, outKm: outKm, dipDeg: dipDeg}
+	c := &cut{slab: l.m.c.Slabs[index], network: l.m.network, group: l.m.slabTies[index].group, place: p, outKm: outKm, dipDeg: dipDeg}
 	for _, id := range c.slab.BoundaryIDs {
 		if b, ok := l.m.network.Boundary(id); ok {
 			c.lines = append(c.lines, b)

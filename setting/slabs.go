@@ -66,7 +66,7 @@ func (e *evidence) slabTrench(i int) float64 {
 	s := &e.slabs[i]
 	if !s.looked {
 		s.looked = true
-		if h, ok := e.look.m.slabGroups[s.index].NearestWith(e.place, slabTrenchReachKm, e.sights); ok {
+		if h, ok := e.look.m.slabTies[s.index].group.NearestWith(e.place, slabTrenchReachKm, e.sights); ok {
 			s.trench, s.trenchKm = h, h.DistanceKm
 		}
 	}

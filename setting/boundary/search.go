@@ -59,17 +59,16 @@ func (f filter) passes(l *leg) bool {
 	return true
 }
 
-// skips reports whether no leg below a branch passes, as far as its plates tell.
+// skips reports whether no leg below a branch passes, as far as the branch tells: of
+// the plates at trenches. What else bounds a plate stands in a tree of its own.
 func (f filter) skips(b *branch) bool {
 	switch f.role {
-	case AnyRole:
-		return false
 	case Overriding:
 		return b.over&plateBit(f.plate) == 0
 	case Subducting:
 		return b.sink&plateBit(f.plate) == 0
 	}
-	return b.plates&plateBit(f.plate) == 0
+	return false
 }
 
 // plateBit is the bit of a plate in the plates of a branch. Where a network has

@@ -20,12 +20,10 @@ type tree struct {
 	cells    *cells   // nil on a tree that has none
 }
 
-// branch is a leaf or has two children. It fills 64 bytes, a line of the
-// processor's cache.
+// branch is a leaf or has two children.
 type branch struct {
 	capsule
-	plates     uint64 // that bound the legs below, see plateBit
-	over, sink uint64 // of them, those at trenches whose other plate goes down, and that go down
+	over, sink uint64 // the plates at trenches below whose other plate goes down, and that go down; see plateBit
 	at         int32  // the first of its legs, or the first of its two children
 	legs       int32  // in a leaf how many, else 0
 }
@@ -115,14 +113,13 @@ func (b *builder) build(at int, from, to int) {
 	b.build(child, from, mid)
 	b.build(child+1, mid, to)
 	for _, c := range b.branches[child : child+2] {
-		out.plates, out.over, out.sink = out.plates|c.plates, out.over|c.over, out.sink|c.sink
+		out.over, out.sink = out.over|c.over, out.sink|c.sink
 	}
 	b.branches[at] = out
 }
 
-// addPlates notes the plates of a run, which are those of any of its legs.
+// addPlates notes the plates at the trench of a run, which are those of any of its legs.
 func (b *branch) addPlates(l *leg) {
-	b.plates = plateBit(l.left) | plateBit(l.right)
 	switch l.sinks {
 	case noPlate:
 	case l.left:
