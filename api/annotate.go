@@ -60,6 +60,7 @@ func (s *Server) annotate(c echo.Context) error {
 		DepthUnit: q.text("depth_unit"), DepthDatum: q.text("depth_datum"), ElevationColumn: q.text("elevation_column"),
 		Prefix: q.text("prefix"),
 	})
+	patience := fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime)
 	s.metrics.batch(string(format), st)
 	c.Set(keyRows, st)
 	switch {
@@ -70,7 +71,7 @@ func (s *Server) annotate(c echo.Context) error {
 		// net/http takes the deadline for the client's leaving; the client is there
 		s.metrics.cut.WithLabelValues(cutSlowSender).Inc()
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
+		return bodyProblem(in.err, limits.BodyBytes, patience)
 	case c.Response().Committed || ctx.Err() != nil:
 		// The status is out, or nobody is left to read it. A broken body is the one
 		// way left to tell the reader that the answer is not whole.
@@ -82,7 +83,7 @@ func (s *Server) annotate(c echo.Context) error {
 		panic(http.ErrAbortHandler)
 	case in.err != nil:
 		c.Response().Header().Set(echo.HeaderConnection, "close")
-		return bodyProblem(in.err, limits.BodyBytes, fmt.Sprintf("%d bytes have %v to arrive", progressBytes, limits.StallTime))
+		return bodyProblem(in.err, limits.BodyBytes, patience)
 	}
 	return err
 }

@@ -1,6 +1,7 @@
 package api
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"time"
@@ -52,7 +53,7 @@ func (l Limits) Validate() error {
 	}
 	within("max-body-bytes", l.BodyBytes, 1<<10, 256<<20, " bytes")
 	within("max-row-bytes", int64(l.RowBytes), 1<<10, 64<<20, " bytes")
-	within("max-header-bytes", int64(l.HeaderBytes), 4<<10, 1<<20, "")
+	within("max-header-bytes", int64(l.HeaderBytes), 4<<10, 1<<20, " bytes")
 	within("read-timeout", int64(l.ReadTime/time.Second), 1, 3600, " s")
 	within("max-batches", int64(l.Batches), 1, 1000, "")
 	within("max-areas", int64(l.Areas), 1, 1000, "")
@@ -64,28 +65,10 @@ func (l Limits) Validate() error {
 // fill puts the defaults in place of zeros.
 func (l *Limits) fill() {
 	d := DefaultLimits
-	if l.BodyBytes == 0 {
-		l.BodyBytes = d.BodyBytes
-	}
-	if l.RowBytes == 0 {
-		l.RowBytes = d.RowBytes
-	}
-	if l.Batches == 0 {
-		l.Batches = d.Batches
-	}
-	if l.Areas == 0 {
-		l.Areas = d.Areas
-	}
-	if l.BatchTime == 0 {
-		l.BatchTime = d.BatchTime
-	}
-	if l.StallTime == 0 {
-		l.StallTime = d.StallTime
-	}
-	if l.HeaderBytes == 0 {
-		l.HeaderBytes = d.HeaderBytes
-	}
-	if l.ReadTime == 0 {
-		l.ReadTime = d.ReadTime
+	*l = Limits{
+		BodyBytes: cmp.Or(l.BodyBytes, d.BodyBytes), RowBytes: cmp.Or(l.RowBytes, d.RowBytes),
+		Batches: cmp.Or(l.Batches, d.Batches), Areas: cmp.Or(l.Areas, d.Areas),
+		BatchTime: cmp.Or(l.BatchTime, d.BatchTime), StallTime: cmp.Or(l.StallTime, d.StallTime),
+		HeaderBytes: cmp.Or(l.HeaderBytes, d.HeaderBytes), ReadTime: cmp.Or(l.ReadTime, d.ReadTime),
 	}
 }

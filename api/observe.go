@@ -91,8 +91,7 @@ func (s *Server) record(c echo.Context, whole bool, took time.Duration) {
 		status = statusAborted
 	}
 	s.metrics.request(route, c.Request().Method, status, took)
-	id, _ := c.Get(keyRequestID).(string)
-	attrs := append(make([]slog.Attr, 0, 12), slog.String("request_id", id), slog.String("method", c.Request().Method),
+	attrs := append(make([]slog.Attr, 0, 12), slog.String("request_id", requestIDOf(c)), slog.String("method", c.Request().Method),
 		slog.String("route", route), slog.String("status", status), slog.String("client", c.RealIP()),
 		slog.Int64("bytes", c.Response().Size), slog.Float64("ms", float64(took.Microseconds())/1000))
 	if id := s.traceID(c); id != "" {

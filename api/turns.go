@@ -8,6 +8,8 @@ import (
 	"time"
 
 	"github.com/labstack/echo/v4"
+
+	"nearmargin/api/access"
 )
 
 // newSlots lets as many goroutines of batches and areas compute at once as there are
@@ -31,13 +33,11 @@ func newReserve(slots chan struct{}) *reserve { return &reserve{slots: slots, be
 // keepFree is how long the place is kept after a request.
 const keepFree = time.Second
 
-// heavy are the routes whose requests take turns themselves.
-var heavy = map[string]bool{"/v1/annotate": true, "/v1/area": true}
-
-// note keeps a place free for a while after each request that takes no turn.
+// note keeps a place free for a while after each look-up that takes no turn itself. Pages,
+// probes and scrapes do not count: they come all the time, and can wait.
 func (r *reserve) note(next echo.HandlerFunc) echo.HandlerFunc {
 	return func(c echo.Context) error {
-		if cap(r.slots) > 1 && !heavy[c.Path()] {
+		if cap(r.slots) > 1 && scopes[c.Path()] == access.Query && c.Path() != "/v1/area" {
 			r.asked.Store(int64(time.Since(r.began)))
 			if r.kept.CompareAndSwap(false, true) {
 				go r.keep()

@@ -95,7 +95,7 @@ func TestAreasAtOnce(t *testing.T) {
 }
 
 // TestOneTurnIsKept: given a request for a place, expect one turn to be taken from
-// batches, and given back when none has followed for a while.
+// batches, and given back when none has followed for a while; given a probe, none.
 func TestOneTurnIsKept(t *testing.T) {
 	r := newRig(t)
 	if cap(r.slots) < 2 {
@@ -103,6 +103,12 @@ func TestOneTurnIsKept(t *testing.T) {
 	}
 	if w := r.ask(http.MethodPost, "/v1/annotate", "text/csv", "lon,lat\n1,2\n"); w.Code != http.StatusOK || len(r.slots) != 0 {
 		t.Errorf("a batch alone: status %d, %d turns kept", w.Code, len(r.slots))
+	}
+	r.get("/healthz")
+	r.get("/metrics")
+	time.Sleep(50 * time.Millisecond)
+	if len(r.slots) != 0 {
+		t.Error("a probe keeps a turn")
 	}
 	for range 3 {
 		r.get("/v1/point?lon=1&lat=2")

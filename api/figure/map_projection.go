@@ -32,8 +32,9 @@ func (a *azimuthal) at(p sphere.LonLat) (x, y float64, ok bool) {
 	return k * a.east.Dot(v), k * a.north.Dot(v), true
 }
 
-// equalEarth is the Equal Earth projection of a sphere about a meridian (Savric, Patterson and Jenny 2019, The Equal Earth map projection, Int. J. Geogr.
-// Inf. Sci. 33, 454-465, eqs. 7 to 9).
+// equalEarth is the Equal Earth projection of a sphere about a meridian (Savric,
+// Patterson and Jenny 2019, The Equal Earth map projection, Int. J. Geogr. Inf. Sci. 33,
+// 454-465, eqs. 7 to 9).
 //
 // Places run on past the edges half a turn away from the meridian; seen brings them back.
 type equalEarth struct{ middle float64 }

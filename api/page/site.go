@@ -43,9 +43,9 @@ type File struct {
 	ContentType string
 	ETag        string
 	Plain       []byte
-	// Gzip returns the packed form, nil where that gains nothing. It is made when it is
-	// first asked for: packing all files would take half of the program's start.
-	Gzip func() []byte
+	// packed returns the body in gzip's form, nil where that gains nothing. It is made when
+	// it is first asked for: packing all files would take half of the program's start.
+	packed func() []byte
 }
 
 // newFile prepares a file. The name's ending gives its type.
@@ -56,12 +56,12 @@ func newFile(name string, body []byte) (*File, error) {
 	}
 	sum := sha256.Sum256(body)
 	f := &File{ContentType: kind, ETag: `"` + hex.EncodeToString(sum[:12]) + `"`, Plain: body}
-	f.Gzip = sync.OnceValue(func() []byte { return packed(body) })
+	f.packed = sync.OnceValue(func() []byte { return pack(body) })
 	return f, nil
 }
 
-// packed returns a text in gzip's form, nil where that gains nothing.
-func packed(body []byte) []byte {
+// pack returns a body in gzip's form, nil where that gains nothing.
+func pack(body []byte) []byte {
 	var b bytes.Buffer
 	z, _ := gzip.NewWriterLevel(&b, gzip.BestCompression) // the level is a constant and valid
 	_, _ = z.Write(body)                                  // a buffer takes everything
@@ -125,7 +125,7 @@ func (s *Site) Weight(paths ...string) (plain, sent int) {
 		f := s.files[p]
 		plain += len(f.Plain)
 		sent += len(f.Plain)
-		if z := f.Gzip(); z != nil {
+		if z := f.packed(); z != nil {
 			sent += len(z) - len(f.Plain)
 		}
 	}
@@ -147,7 +147,7 @@ func (f *File) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 	}
 	body := f.Plain
 	if TakesGzip(r.Header.Get("Accept-Encoding")) {
-		if z := f.Gzip(); z != nil {
+		if z := f.packed(); z != nil {
 			body = z
 			h.Set("Content-Encoding", "gzip")
 		}

@@ -52,6 +52,33 @@ func fill(t *testing.T, dir string) (ballast string) {
 	return ballast
 }
 
+// logsTo starts a service whose log goes to a file, and that is killed when the test ends.
+func logsTo(t *testing.T, log *os.File) (address string, c *exec.Cmd) {
+	t.Helper()
+	address = freeAddress(t)
+	c = programCommand(t, "serve", "--listen", address)
+	c.Stderr = log
+	if err := c.Start(); err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() {
+		c.Process.Kill()
+		c.Wait()
+	})
+	return address, c
+}
+
+// endOrderly has a service end, and fails where it does not end well.
+func endOrderly(t *testing.T, c *exec.Cmd) {
+	t.Helper()
+	if err := c.Process.Signal(syscall.SIGTERM); err != nil {
+		t.Fatal(err)
+	}
+	if err := c.Wait(); err != nil {
+		t.Error(err)
+	}
+}
+
 // TestLogOnAFullDisk serves with a log that cannot be written any more, and can again
 // later.
 func TestLogOnAFullDisk(t *testing.T) {
@@ -61,16 +88,7 @@ func TestLogOnAFullDisk(t *testing.T) {
 		t.Fatal(err)
 	}
 	defer log.Close()
-	address := freeAddress(t)
-	c := programCommand(t, "serve", "--listen", address)
-	c.Stderr = log
-	if err := c.Start(); err != nil {
-		t.Fatal(err)
-	}
-	t.Cleanup(func() {
-		c.Process.Kill()
-		c.Wait()
-	})
+	address, c := logsTo(t, log)
 	waitFor(t, "the service to listen", func() bool {
 		res, err := http.Get("http://" + address + "/readyz")
 		if err == nil {
@@ -100,12 +118,7 @@ func TestLogOnAFullDisk(t *testing.T) {
 		t.Fatal(err)
 	}
 	ask(3)
-	if err := c.Process.Signal(syscall.SIGTERM); err != nil {
-		t.Fatal(err)
-	}
-	if err := c.Wait(); err != nil {
-		t.Error(err)
-	}
+	endOrderly(t, c)
 	raw, err := os.ReadFile(log.Name())
 	if err != nil {
 		t.Fatal(err)
@@ -144,17 +157,8 @@ func TestLogReaderThatStandsStill(t *testing.T) {
 		t.Fatal(err)
 	}
 	defer r.Close()
-	address := freeAddress(t)
-	c := programCommand(t, "serve", "--listen", address)
-	c.Stderr = w
-	if err := c.Start(); err != nil {
-		t.Fatal(err)
-	}
+	address, c := logsTo(t, w)
 	w.Close()
-	t.Cleanup(func() {
-		c.Process.Kill()
-		c.Wait()
-	})
 	log := bufio.NewReader(r)
 	if _, err := log.ReadString('\n'); err != nil { // it says that it listens
 		t.Fatal(err)
@@ -174,12 +178,7 @@ func TestLogReaderThatStandsStill(t *testing.T) {
 	for range 3 {
 		status(t, "http://"+address+"/v1/point?lon=1&lat=2")
 	}
-	if err := c.Process.Signal(syscall.SIGTERM); err != nil {
-		t.Fatal(err)
-	}
-	if err := c.Wait(); err != nil {
-		t.Error(err)
-	}
+	endOrderly(t, c)
 	account(t, <-rest, unread+3)
 }
 
@@ -189,17 +188,8 @@ func TestLogWithoutAReader(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	address := freeAddress(t)
-	c := programCommand(t, "serve", "--listen", address)
-	c.Stderr = w
-	if err := c.Start(); err != nil {
-		t.Fatal(err)
-	}
+	address, c := logsTo(t, w)
 	w.Close()
-	t.Cleanup(func() {
-		c.Process.Kill()
-		c.Wait()
-	})
 	if _, err := bufio.NewReader(r).ReadString('\n'); err != nil { // it says that it listens
 		t.Fatal(err)
 	}

@@ -14,10 +14,10 @@ const (
 	logFlush  = time.Second           // that the last lines have at the end
 )
 
-// logWriter writes the log, a line a call, without holding up whoever logs: lines that
-// come close together are written at once. A full
-// disk, and a reader of the log that stands still or is gone, stop no answer: lines that
-// cannot be written are counted, and their number is told when it can be.
+// logWriter writes the log without holding up whoever logs: lines that come close
+// together are written at once. A full disk, and a reader of the log that stands still or
+// is gone, stop no answer: lines that cannot be written are counted, and their number is
+// told when it can be.
 type logWriter struct {
 	w     io.Writer
 	lines chan []byte

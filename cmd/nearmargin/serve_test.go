@@ -178,7 +178,7 @@ func TestCheckConfig(t *testing.T) {
 		{"tokens are not shown", nil, []string{"--tokens", "a query " + sum}, 0, []string{"# NEARMARGIN_TOKENS is given and not shown\n"}},
 		{"a file of tokens", nil, []string{"--tokens-file", file("t", "# x\na query,batch "+sum+"\n")}, 0, nil},
 		{"every fault at once", nil, []string{"--max-batches", "0", "--rate", "-1", "--header-timeout", "2m", "--base-path", "x/", "--pprof", "--cors-origins", "maps", "--trusted-proxies", "0.0.0.0/0", "--max-header-bytes", "1", "--idle-timeout", "0s"}, 2,
-			[]string{"--max-batches is 0; want 1 to 1000", "--rate is -1", "--header-timeout is 2m0s and --read-timeout 1m0s", `base path "x/"`, "--pprof needs --private-listen", `origin "maps"`, "proxy 0.0.0.0/0 would believe every client", "--max-header-bytes is 1; want", "--idle-timeout is 0s; want 1s to 1h0m0s"}},
+			[]string{"--max-batches is 0; want 1 to 1000", "--rate is -1", "--header-timeout is 2m0s and --read-timeout 1m0s", `base path "x/"`, "--pprof needs --private-listen", `origin "maps"`, "proxy 0.0.0.0/0 would believe every client", "--max-header-bytes is 1 bytes; want 4096", "--idle-timeout is 0s; want 1s to 1h0m0s"}},
 		{"not a number of the environment", map[string]string{"NEARMARGIN_RATE": "many"}, nil, 2, []string{"NEARMARGIN_RATE"}},
 		{"a file without tokens", nil, []string{"--tokens-file", file("none", "# none yet\n")}, 2, []string{"would let everybody in"}},
 		{"no file of tokens", nil, []string{"--tokens-file", filepath.Join(dir, "absent")}, 2, []string{"--tokens-file"}},
