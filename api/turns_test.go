@@ -2,11 +2,15 @@ package api
 
 import (
 	"context"
+	"errors"
 	"net/http"
 	"net/http/httptest"
 	"strings"
 	"testing"
 	"time"
+
+	"nearmargin/setting"
+	"nearmargin/setting/boundary"
 )
 
 // occupy takes every turn there is, until free is called.
@@ -118,4 +122,25 @@ func TestOneTurnIsKept(t *testing.T) {
 		t.Errorf("a batch beside: status %d", w.Code)
 	}
 	waitFor(t, "it is given back", func() bool { return len(r.slots) == 0 })
+}
+
+// TestAreaOfAClientThatLeaves: given a client that leaves while its area is worked on,
+// expect the work to end with it, and its turn and place to be given back.
+func TestAreaOfAClientThatLeaves(t *testing.T) {
+	r := newRig(t)
+	ctx, leave := context.WithCancel(t.Context())
+	l, err := r.cfg.Models.Active().Lookup(setting.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	body, err := r.answerArea(ctx, l, func() (*setting.Area, error) {
+		leave()
+		return setting.NewBoxArea(boundary.Box{West: -10, South: -10, East: 10, North: 10})
+	})
+	if !errors.Is(err, context.Canceled) || body != nil {
+		t.Errorf("%v, %d bytes; want the context's error and nothing", err, len(body))
+	}
+	if len(r.areas) != 0 || len(r.slots) != 0 {
+		t.Errorf("%d places and %d turns are not given back", len(r.areas), len(r.slots))
+	}
 }

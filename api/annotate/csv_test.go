@@ -4,12 +4,14 @@ import (
 	"bufio"
 	"bytes"
 	"context"
+	"errors"
 	"fmt"
 	"io"
 	"slices"
 	"strings"
 	"testing"
 	"testing/iotest"
+	"time"
 )
 
 // TestTables: given tables as people have them, expect an answer or an error in
@@ -257,9 +259,13 @@ func TestFirstLineIsNotWaitedBeyond(t *testing.T) {
 	for _, head := range []string{"id;lon;lat\n", "\xef\xbb\xbf\r\n\"a\nb\";lon;lat\r\n"} {
 		in, out := io.Pipe()
 		go out.Write([]byte(head))
+		late := time.AfterFunc(10*time.Second, func() { out.CloseWithError(errors.New("it waits for more")) })
 		var j csvJob
 		if _, err := j.sniff(bufio.NewReaderSize(in, 64<<10)); err != nil || j.comma != ';' {
 			t.Errorf("%q: separator %q, %v", head, j.comma, err)
+		}
+		if !late.Stop() {
+			t.Errorf("%q: it waited for more", head)
 		}
 		in.Close()
 	}

@@ -9,6 +9,7 @@ import (
 	"strings"
 	"sync/atomic"
 	"testing"
+	"time"
 )
 
 // numbered reads chunks of one number each, the last of them last, and then gives
@@ -147,4 +148,21 @@ func TestInOrderPanics(t *testing.T) {
 		}
 	}, func([]byte) error { return nil })
 	t.Errorf("no panic, but %v", err)
+}
+
+// TestInOrderWorksInTurn: however many workers there are, no more work at once than
+// there are turns.
+func TestInOrderWorksInTurn(t *testing.T) {
+	o := &Options{Slots: make(chan struct{}, 1)}
+	var reads, atOnce, most atomic.Int64
+	st, err := inOrder(context.Background(), o, numbered(50, nil, &reads), func() func(c *chunk[int]) {
+		return func(c *chunk[int]) {
+			most.Store(max(most.Load(), atOnce.Add(1))) // one at a time, if all is well
+			time.Sleep(time.Millisecond)
+			atOnce.Add(-1)
+		}
+	}, func([]byte) error { return nil })
+	if err != nil || st.Rows != 50 || most.Load() != 1 || len(o.Slots) != 0 {
+		t.Errorf("%v, %+v, %d at once, %d turns taken; want 50 rows, one at a time", err, st, most.Load(), len(o.Slots))
+	}
 }

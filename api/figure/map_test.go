@@ -156,6 +156,9 @@ func TestMapsAreWellFormed(t *testing.T) {
 		if n := bytes.Count(out, []byte(`class="nm-s-subduction"`)); len(sites) > 0 && n != len(sites)+1 {
 			t.Errorf("%s: %d markers for %d sites and the legend", name, n, len(sites))
 		}
+		if n := bytes.Count(out, []byte("A &amp; &lt;B&gt;")); len(sites) > 0 && n != 2*len(sites) { // each with a pale rim below it
+			t.Errorf("%s: %d texts for the names of %d sites", name, n, len(sites))
+		}
 		for _, at := range markerAt.FindAllSubmatch(out, len(sites)) {
 			if x, err := strconv.ParseFloat(string(at[1]), 64); err != nil || x < marginX-0.1 || x > figureW-marginX+0.1 {
 				t.Errorf("%s: a marker stands at %s", name, at[1])
